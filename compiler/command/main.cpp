@@ -1,0 +1,4 @@
+// The isinglass program.
+int main() {
+  return 0;
+}

@@ -1,0 +1,2 @@
+# Generates the parser from the grammar and builds it as a library of its own.
+add_library(grammar INTERFACE)
