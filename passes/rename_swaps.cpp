@@ -1,0 +1,53 @@
+// A swap is no work where the wires can change their names instead.
+//
+//     a --x--A--        a ----B--
+//         |        ==>
+//     b --x--B--        b ----A--       and the ends change places
+//
+// Only in the body: the arms of a branch must bring every qubit back to its wire. (Common practice.)
+#include "passes/rename_swaps.h"
+
+#include <utility>
+
+namespace isinglass {
+
+namespace {
+
+void rename(Circuit& circuit, Operation& op, const std::vector<std::uint32_t>& name) {
+  std::vector<std::uint32_t> operands(circuit.operands(op).begin(), circuit.operands(op).end());
+  for (std::uint32_t& wire : operands) wire = name[wire];
+  circuit.set_operands(op, operands);
+  if (op.kind != Kind::branch) return;
+  for (const Branch::Arm& arm : circuit.branches[op.payload].arms) {
+    for (Operation& inner : circuit.blocks[arm.block]) rename(circuit, inner, name);
+  }
+}
+
+bool is_swap(const Operation& op) {
+  return op.kind == Kind::swap && op.operand_count == 2;
+}
+
+}  // namespace
+
+Circuit rename_swaps(Circuit circuit, const PassContext&) {
+  bool any = false;
+  for (const Operation& op : circuit.body()) any = any || is_swap(op);
+  if (!any) return circuit;
+  std::vector<std::uint32_t> name(circuit.wires);
+  for (std::uint32_t w = 0; w < circuit.wires; ++w) name[w] = w;
+  Block kept;
+  kept.reserve(circuit.body().size());
+  for (Operation op : circuit.body()) {
+    if (is_swap(op)) {
+      std::swap(name[op.operand[0]], name[op.operand[1]]);
+      continue;
+    }
+    rename(circuit, op, name);
+    kept.push_back(op);
+  }
+  circuit.body() = std::move(kept);
+  for (std::uint32_t& wire : circuit.end_wire) wire = name[wire];
+  return circuit;
+}
+
+}  // namespace isinglass
