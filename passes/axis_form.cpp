@@ -109,7 +109,6 @@ class Reader {
       // exp(-i pi/2 A(x)B) is local: A on one wire, B on the other.
       const double halves = std::round(angle.constant / pi);
       angle.constant -= halves * pi;
-      if (angle.constant <= -pi / 2) angle.constant = pi / 2;  // rounding at the boundary
       if (std::fmod(halves, 2.0) != 0) {
         apply(a, rotation(axis_a, pi));
         apply(b, rotation(axis_b, pi));
@@ -167,7 +166,8 @@ class Reader {
     rotate(wire, z_axis, phi);
   }
 
-  /// Controlled exp(-i angle/2 n.sigma) = exp(-i angle/4 n.sigma) exp(+i angle/4 Z(x)n.sigma): one interaction.
+  /// Controlled exp(-i angle/2 n.sigma) = exp(-i angle/4 n.sigma) exp(+i angle/4 Z(x)n.sigma): one
+  /// interaction.
   void controlled_rotation(std::uint32_t control, std::uint32_t target, const Axis& n, Angle angle) {
     const Angle half = form_.shell.forms.scaled(angle, 0.5);
     rotate(target, n, half);
@@ -220,8 +220,8 @@ class Reader {
     const Angle sum = forms.sum(phi, lambda);
     rotate(c, z_axis, forms.scaled(forms.sum(theta, sum), 0.5));
     if (op.has_known_angles()) {
-      const AxisAngle whole = axis_angle(rotation_z(phi.constant) * rotation_y(theta.constant) *
-                                         rotation_z(lambda.constant));
+      const AxisAngle whole =
+          axis_angle(rotation_z(phi.constant) * rotation_y(theta.constant) * rotation_z(lambda.constant));
       return controlled_rotation(c, t, whole.axis, {whole.angle});
     }
     // rz(f) ry(t) rz(l) = [rz(f) ry(t) rz(-f)] rz(f + l): two controlled rotations.
@@ -258,7 +258,7 @@ class Reader {
 /// One thing that a wire's pole must suit: an item's axis, or the end of the stretch.
 struct Need {
   enum class What : std::uint8_t { interaction, rotation, end };
-  Axis axis;  // of the item; at the end the pole itself
+  Axis axis;                // of the item; at the end the pole itself
   std::uint32_t place = 0;  // index into the table of poles that the answer goes to
   What what = What::interaction;
   bool is_free = false;  // an end that takes any pole
@@ -493,9 +493,9 @@ class Writer {
       theta.constant = -theta.constant;
       phi[0] += pi;
     }
-    out_.push_back(circuit_.make(
-        Kind::xx, {item.wire[0], item.wire[1]},
-        {theta, physical(item.wire[0], phi[0]), physical(item.wire[1], phi[1])}, item.origin));
+    out_.push_back(circuit_.make(Kind::xx, {item.wire[0], item.wire[1]},
+                                 {theta, physical(item.wire[0], phi[0]), physical(item.wire[1], phi[1])},
+                                 item.origin));
     state_[item.wire[0]].is_measured = state_[item.wire[1]].is_measured = false;
   }
 

@@ -4,11 +4,12 @@
 //           |            |     ==>   of the one-qubit gates at the end of each stretch
 //     ----- xx -- rz --- xx          (a, A; b, B; theta)  (a, A'; b, B'; theta')  | frames
 //
-// On every wire all one-qubit gates between two fences are pulled to the right, through the interactions, which
-// turns the interactions' axes: an xx after the gates U acts as exp(-i theta/2 (A.sigma)(x)(B.sigma)) before
-// them, with A = U^-1 n. The product of the gates, the frame, stands at the fence that closes the stretch. What
-// commutes is seen at once (parallel axes), a one-qubit gate can no longer hide a pair of inverse interactions,
-// and going back decides anew, and best, where pulses are needed: see "poles" in axis_form.cpp.
+// On every wire all one-qubit gates between two fences are pulled to the right, through the interactions,
+// which turns the interactions' axes: an xx after the gates U acts as exp(-i theta/2 (A.sigma)(x)(B.sigma))
+// before them, with A = U^-1 n. The product of the gates, the frame, stands at the fence that closes the
+// stretch. What commutes is seen at once (parallel axes), a one-qubit gate can no longer hide a pair of
+// inverse interactions, and going back decides anew, and best, where pulses are needed: see "poles" in
+// axis_form.cpp.
 //
 // Rotations by angles that depend on inputs stay as items of one wire. Everything that is not unitary is a
 // fence: nothing moves across it on its wires.
@@ -44,7 +45,8 @@ struct Item {
   int wire_count() const { return what == What::fence ? 0 : what == What::rotation ? 1 : 2; }
 };
 
-/// An operation that is not unitary. Wire wires[i] carries frames[i] right before it, and a new stretch begins.
+/// An operation that is not unitary. Wire wires[i] carries frames[i] right before it, and a new stretch
+/// begins.
 struct Fence {
   Operation operation;
   std::vector<std::uint32_t> wires;  // the operands, or all wires where control may leave the block
@@ -64,7 +66,7 @@ struct AxisForm {
 };
 
 /// Any circuit whose unitary operations touch at most two wires (controls included); throws std::logic_error
-/// for one that touches more. Interaction angles that are known come out in (-pi/2, pi/2]; those below
+/// for one that touches more. Interaction angles that are known come out in [-pi/2, pi/2]; those below
 /// 1e-13 are dropped. Global phases are dropped.
 AxisForm axis_form(const Circuit& circuit);
 

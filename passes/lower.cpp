@@ -4,9 +4,9 @@
 //       |      ==>           |
 //     --X--            ----- xx --r---
 //
-// A controlled one-qubit gate is a controlled rotation about some axis, hence one interaction of half its angle
-// and rotations; the axis form takes gates in and gives pulses out, and this pass is no more than the way there
-// and back. (Common practice; the poles that make the pulses few stand in axis_form.cpp.)
+// A controlled one-qubit gate is a controlled rotation about some axis, hence one interaction of half its
+// angle and rotations; the axis form takes gates in and gives pulses out, and this pass is no more than the
+// way there and back. (Common practice; the poles that make the pulses few stand in axis_form.cpp.)
 #include "passes/lower.h"
 
 #include "passes/axis_form.h"

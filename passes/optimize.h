@@ -1,4 +1,5 @@
-// The whole way from a source circuit to the machine's gates: orders of passes that compete, and what they say.
+// The whole way from a source circuit to the machine's gates: orders of passes that compete, and what they
+// say.
 #pragma once
 
 #include <string>
@@ -16,7 +17,7 @@ struct TraceRow {
   std::string pass;
   Tally before;  // of the circuit lowered plainly, where it still holds source gates: see is_lowered
   Tally after;
-  bool is_lowered = true;  // false: the pass worked on source gates, whose tally is not known yet
+  bool is_lowered = true;        // false: the pass worked on source gates, whose tally is not known yet
   std::size_t gates_before = 0;  // operations of all blocks
   std::size_t gates_after = 0;
   double seconds = 0;
@@ -42,7 +43,8 @@ struct Trace {
 /// 0 < theta <= pi/2; known phases in (-pi, pi]; rz only where the promise keeps it (before a branch, at the
 /// end). Swaps are renamed: see Circuit::end_wire. Symbolic angles stay symbolic and have no range.
 /// Several orders of passes run, each to a fixed point or the deadline; the one with the lowest estimated
-/// error under context.cost wins. The same seed gives the same circuit as long as the deadline does not cut in.
+/// error under context.cost wins. The same seed gives the same circuit as long as the deadline does not cut
+/// in.
 Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace = nullptr);
 
 }  // namespace isinglass
