@@ -1,0 +1,26 @@
+// The compiled program as OpenQASM 3 that any reader can run.
+#pragma once
+
+#include <ostream>
+#include <string>
+
+#include "targets/place.h"
+
+namespace isinglass {
+
+/// What stands in the first comment lines of the file.
+struct NativeHeading {
+  std::string source;  // name of the source file
+  std::string target;  // name of the machine
+};
+
+/// Writes the program: r and xx defined in standard gates, `qubit[N] ion`, the classical variables, where
+/// each source qubit starts and ends (pragmas), then the sequence. Angles in full precision (they read back
+/// to the same number), with inputs as expressions. Throws std::logic_error on an operation that is not
+/// native.
+void write_native(std::ostream& out, const Placed& placed, const NativeHeading& heading);
+
+/// The same as a text.
+std::string native_program(const Placed& placed, const NativeHeading& heading);
+
+}  // namespace isinglass
