@@ -1,0 +1,224 @@
+// Placement: good pairs are found, nothing changes the meaning, what is impossible is said.
+#include <doctest/doctest.h>
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <numeric>
+
+#include "circuit/message.h"
+#include "support/random_circuits.h"
+#include "support/simulator.h"
+#include "targets/place.h"
+
+using namespace isinglass;
+using support::Random;
+
+namespace {
+
+/// The placed circuit on wires of its own: source qubit q starts on wire q again.
+Circuit on_source_wires(const Placed& placed) {
+  Circuit circuit = placed.circuit;
+  std::vector<std::uint32_t> wire_of(circuit.wires, 0xffffffffu);
+  for (std::uint32_t q = 0; q < placed.start.size(); ++q) wire_of[placed.start[q]] = q;
+  auto next = static_cast<std::uint32_t>(placed.start.size());
+  for (std::uint32_t& wire : wire_of) {
+    if (wire == 0xffffffffu) wire = next++;
+  }
+  for (Block& block : circuit.blocks) {
+    for (Operation& op : block) {
+      const auto ions = circuit.operands(op);
+      std::vector<std::uint32_t> wires;
+      for (const std::uint32_t ion : ions) wires.push_back(wire_of[ion]);
+      circuit.set_operands(op, wires);
+    }
+  }
+  for (std::uint32_t& wire : circuit.end_wire) wire = wire_of[wire];
+  return circuit;
+}
+
+void reach_only_neighbours(Target& target) {
+  for (std::uint32_t a = 0; a < target.ions; ++a) {
+    for (std::uint32_t b = a + 2; b < target.ions; ++b) target.pair(a, b).reachable = false;
+  }
+}
+
+bool all_reachable(const Placed& placed, const Target& target) {
+  for (const Block& block : placed.circuit.blocks) {
+    for (const Operation& op : block) {
+      if (op.kind == Kind::xx && !target.pair(op.operand[0], op.operand[1]).reachable) return false;
+    }
+  }
+  return true;
+}
+
+std::string refusal(const Circuit& circuit, const Target& target) {
+  try {
+    place(circuit, target);
+  } catch (const Failure& failure) {
+    CHECK(failure.exit == Exit::target_cannot);
+    return failure.messages.front().text;
+  }
+  return {};
+}
+
+}  // namespace
+
+TEST_CASE("on a uniform machine everybody stays where the source put him") {
+  Random random(1);
+  const Circuit circuit = support::random_circuit(random, {4, 30, 0, support::Family::native});
+  const Placed placed = place(circuit, typical(6));
+  CHECK(placed.start == std::vector<std::uint32_t>{0, 1, 2, 3});
+  CHECK(placed.circuit.wires == 6);
+  CHECK(placed.in_use == std::vector<bool>{true, true, true, true, false, false});
+}
+
+TEST_CASE("the pair that interacts most gets the best pair") {
+  Target target = typical(6);
+  target.pair(2, 4).slope.value = 1e-3;
+  Circuit circuit;
+  add_register(circuit, "q", 3);
+  for (int i = 0; i < 10; ++i) circuit.body().push_back(circuit.make(Kind::xx, {0, 2}, {{0.3}, {0}, {0}}));
+  circuit.body().push_back(circuit.make(Kind::xx, {0, 1}, {{0.3}, {0}, {0}}));
+  const Placed placed = place(circuit, target);
+  CHECK(std::min(placed.start[0], placed.start[2]) == 2);
+  CHECK(std::max(placed.start[0], placed.start[2]) == 4);
+  // The same when the good pair lies far out and everything begins elsewhere.
+  Target far = typical(20);
+  far.pair(17, 3).floor.value = 1e-5;
+  const Placed second = place(circuit, far);
+  CHECK(std::min(second.start[0], second.start[2]) == 3);
+  CHECK(std::max(second.start[0], second.start[2]) == 17);
+}
+
+TEST_CASE("placement is as good as the best of all, on small machines") {
+  Random random(7);
+  for (int round = 0; round < 20; ++round) {
+    Target target = typical(5);
+    for (PairFigures& pair : target.pairs) pair.slope.value = random.real(1e-3, 1e-2);
+    for (IonFigures& ion : target.ion) ion.pulse_error.value = random.real(1e-4, 1e-3);
+    const Circuit circuit = support::random_circuit(random, {4, 30, 0, support::Family::native});
+    const auto cost = [&](const std::vector<std::uint32_t>& ion_of) {
+      double sum = 0;
+      for (const Operation& op : circuit.body()) {
+        if (op.kind == Kind::r) sum += target.ion[ion_of[op.operand[0]]].pulse_error.value;
+        if (op.kind == Kind::xx)
+          sum += target.pair(ion_of[op.operand[0]], ion_of[op.operand[1]]).error(op.value[0]);
+      }
+      return sum;
+    };
+    std::vector<std::uint32_t> ions(5);
+    std::iota(ions.begin(), ions.end(), 0u);
+    double best = 1e9;
+    do {
+      best = std::min(best, cost(ions));
+    } while (std::next_permutation(ions.begin(), ions.end()));
+    CHECK(cost(place(circuit, target).start) == doctest::Approx(best).epsilon(1e-9));
+  }
+}
+
+TEST_CASE("movement keeps the meaning and uses reachable pairs only") {
+  Random random(3);
+  for (int round = 0; round < 60; ++round) {
+    const int qubits = random.between(2, 4);
+    const auto ions = static_cast<std::uint32_t>(random.between(qubits, 5));
+    Target target = typical(ions);
+    reach_only_neighbours(target);
+    const Circuit circuit = support::random_circuit(random, {qubits, 20, 0, support::Family::native});
+    PlaceOptions options;
+    options.seed = random.bits();
+    const Placed placed = place(circuit, target, options);
+    CHECK_NOTHROW(check_invariants(placed.circuit));
+    CHECK(all_reachable(placed, target));
+    CHECK(support::distance(circuit, on_source_wires(placed)) < 1e-9);
+  }
+}
+
+TEST_CASE("movement within a branch is undone at its end") {
+  Target target = typical(4);
+  reach_only_neighbours(target);
+  Circuit circuit;
+  add_register(circuit, "q", 4);
+  add_bits(circuit, "c", 1);
+  circuit.blocks.resize(2);
+  for (const std::uint32_t other : {1u, 2u, 3u}) {
+    circuit.blocks[1].push_back(circuit.make(Kind::xx, {0, other}, {{0.3 * other}, {0.1}, {0.2}}));
+  }
+  circuit.branches.push_back({});
+  circuit.branches[0].arms = {{{}, 1}};
+  circuit.body() = {
+      circuit.make(Kind::xx, {0, 2}, {{0.4}, {0}, {0}}), circuit.make(Kind::xx, {0, 3}, {{0.4}, {0}, {0}}),
+      circuit.make(Kind::branch, {0, 1, 2, 3}), circuit.make(Kind::xx, {1, 3}, {{0.4}, {0}, {0}})};
+  const Placed placed = place(circuit, target);
+  CHECK_NOTHROW(check_invariants(placed.circuit));
+  CHECK(placed.moves > 0);
+  CHECK(all_reachable(placed, target));
+  // Straight line: the arm in place of the branch.
+  const auto straight = [](Circuit c) {
+    Block body;
+    for (const Operation& op : c.body()) {
+      if (op.kind == Kind::branch) {
+        body.insert(body.end(), c.blocks[1].begin(), c.blocks[1].end());
+      } else {
+        body.push_back(op);
+      }
+    }
+    c.blocks = {body};
+    c.branches.clear();
+    return c;
+  };
+  CHECK(support::distance(straight(circuit), straight(on_source_wires(placed))) < 1e-9);
+  // And without the arm.
+  const auto skipped = [](Circuit c) {
+    std::erase_if(c.blocks[0], [](const Operation& op) { return op.kind == Kind::branch; });
+    c.blocks.resize(1);
+    c.branches.clear();
+    return c;
+  };
+  CHECK(support::distance(skipped(circuit), skipped(on_source_wires(placed))) < 1e-9);
+}
+
+TEST_CASE("the same seed gives the same placement") {
+  Random random(11);
+  Target target = typical(12);
+  for (PairFigures& pair : target.pairs) pair.slope.value = random.real(1e-3, 1e-2);
+  const Circuit circuit = support::random_circuit(random, {9, 100, 0, support::Family::native});
+  CHECK(place(circuit, target).start == place(circuit, target).start);
+}
+
+TEST_CASE("what a machine cannot do is refused by name") {
+  Circuit circuit;
+  add_register(circuit, "q", 4);
+  circuit.body().push_back(circuit.make(Kind::xx, {0, 3}, {{0.4}, {0}, {0}}, Origins::line(7)));
+  CHECK(refusal(circuit, typical(3)) == "the program needs 4 ions, the machine typical-3 has 3");
+
+  Target dark = typical(5);
+  dark.ion[0].addressed = dark.ion[4].addressed = false;
+  CHECK(refusal(circuit, dark) == "the program needs 4 ions, the machine typical-5 has 3 that light reaches");
+
+  Target cut = typical(4);
+  for (PairFigures& pair : cut.pairs) pair.reachable = false;
+  CHECK(refusal(circuit, cut) ==
+        "the machine typical-4 cannot bring ions 0 and 3 together (q[0] and q[3], line 7 of the source): no "
+        "chain of reachable pairs joins them");
+
+  Target plain = typical(4);
+  plain.has_reset = false;
+  circuit.body() = {circuit.make(Kind::reset, {2}, {}, Origins::line(9))};
+  CHECK(refusal(circuit, plain) ==
+        "the program needs reset (line 9 of the source), which the machine typical-4 lacks");
+}
+
+TEST_CASE("two islands: what fits on one of them is put there") {
+  Target target = typical(6);
+  for (std::uint32_t a = 0; a < 6; ++a) {
+    for (std::uint32_t b = a + 1; b < 6; ++b) target.pair(a, b).reachable = (a < 3) == (b < 3);
+  }
+  Circuit circuit;
+  add_register(circuit, "q", 6);
+  for (const auto& [a, b] : {std::pair(0u, 3u), std::pair(3u, 5u), std::pair(1u, 4u), std::pair(4u, 2u)}) {
+    circuit.body().push_back(circuit.make(Kind::xx, {a, b}, {{0.4}, {0}, {0}}));
+  }
+  const Placed placed = place(circuit, target);
+  CHECK(placed.moves == 0);
+  CHECK(all_reachable(placed, target));
+}
