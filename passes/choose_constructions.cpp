@@ -3,9 +3,10 @@
 //   before   c-c-c-x q0 q1 q2 q3            (a wire q4 still in |0>)
 //   after    q4 ^= q0 q1 up to phases (3 interactions), c-c-x q4 q2 q3 (5), q4 ^= q0 q1 undone (3)
 //
-// Idea. The constructions (constructions.cpp) differ in the wires they may borrow. Here the idle wires are found: clean
-// are the target's spare ions and, in a program that starts in |0...0>, wires that nothing has touched yet;
-// dirty are all other wires of the program. Inside a branch only the branch's own wires are borrowed.
+// Idea. The constructions (constructions.cpp) differ in the wires they may borrow. Here the idle wires are
+// found: clean are the target's spare ions and, in a program that starts in |0...0>, wires that nothing has
+// touched yet; dirty are all other wires of the program. Inside a branch only the branch's own wires are
+// borrowed.
 #include <algorithm>
 #include <limits>
 
@@ -18,10 +19,7 @@ namespace {
 constexpr std::size_t never = std::numeric_limits<std::size_t>::max();
 
 bool needs_construction(const Operation& op) {
-  if (!op.is_unitary()) return false;
-  const int controls = op.control_count();
-  return controls >= 2 || (controls == 1 && target_count(op.kind) == 2) ||
-         (controls == 1 && op.kind == Kind::u && !op.has_known_angles());
+  return op.is_unitary() && op.operand_count > 2;
 }
 
 /// Position of the first operation of the program's body on each wire.

@@ -5,24 +5,26 @@
 //            (each bracket one controlled rotation: one xx of angle x; sin^2 x = sin(pi/4))
 //
 // Idea. A commutator A B A^-1 B^-1 of rotations vanishes unless both are there, so controlling A by one wire
-// and B by another makes a doubly controlled rotation from four interactions whose angle is free. Its angle phi
-// obeys sin(phi/4) = sin(A/2) sin(B/2) sin(angle between the axes); the three are best equal. One more
-// control goes into the axis of A, which a controlled rotation tilts. Beyond that the rotation is split between
-// two flips of its sign, which may leave phases; these flips are the relative-phase Toffoli and its kin.
-// A multi-controlled phase is a rotation and a phase on the controls, by recursion. Clean wires hold the AND of
-// some controls; with a dirty wire d a flip is the commutator of a Toffoli from d and a flip of d.
+// and B by another makes a doubly controlled rotation from four interactions whose angle is free. Its angle
+// phi obeys sin(phi/4) = sin(A/2) sin(B/2) sin(angle between the axes); the three are best equal. One more
+// control goes into the axis of A, which a controlled rotation tilts. Beyond that the rotation is split
+// between two flips of its sign, which may leave phases; these flips are the relative-phase Toffoli and its
+// kin. A multi-controlled phase is a rotation and a phase on the controls, by recursion. Clean wires hold the
+// AND of some controls; with a dirty wire d a flip is the commutator of a Toffoli from d and a flip of d.
 //
 // Papers: Barenco et al., "Elementary gates for quantum computation", PRA 52, 3457 (splitting, dirty wires);
-// Song, Klappenecker, quant-ph/0312225 (relative-phase Toffoli); Iten et al., PRA 93, 032318 (relative phases in
-// chains of dirty wires); Smolin, DiVincenzo, PRA 53, 2855 (controlled swap). The commutator's closed form was
-// derived for this program.
+// Song, Klappenecker, quant-ph/0312225 (relative-phase Toffoli); Iten et al., PRA 93, 032318 (relative phases
+// in chains of dirty wires); Smolin, DiVincenzo, PRA 53, 2855 (controlled swap). The commutator's closed form
+// was derived for this program.
 #include "passes/constructions.h"
 
 #include <algorithm>
 #include <cmath>
 #include <limits>
 #include <map>
-#include <tuple>
+#include <utility>
+
+#include "algebra/su2.h"
 
 namespace isinglass {
 
@@ -30,54 +32,18 @@ namespace {
 
 using Wires = std::vector<std::uint32_t>;
 
-// ---- rotations of one qubit ---------------------------------------------------------------------------------
+// ---- rotations of one qubit
+// ---------------------------------------------------------------------------------
 
-/// w - i (x X + y Y + z Z), a rotation of SU(2).
-struct Rotation {
-  double w = 1, x = 0, y = 0, z = 0;
-
-  Rotation operator*(const Rotation& b) const {
-    return {w * b.w - x * b.x - y * b.y - z * b.z, w * b.x + x * b.w + y * b.z - z * b.y,
-            w * b.y + y * b.w + z * b.x - x * b.z, w * b.z + z * b.w + x * b.y - y * b.x};
-  }
-  Rotation inverse() const { return {w, -x, -y, -z}; }
-};
-
-Rotation about_x(double angle) {
-  return {std::cos(angle / 2), std::sin(angle / 2), 0, 0};
-}
-Rotation about_y(double angle) {
-  return {std::cos(angle / 2), 0, std::sin(angle / 2), 0};
-}
-Rotation about_z(double angle) {
-  return {std::cos(angle / 2), 0, 0, std::sin(angle / 2)};
+/// The angles (theta, phi) of the r that turns the z axis onto the axis of `q`.
+std::pair<double, double> tilt_onto_axis(const Su2& q) {
+  const double across = std::hypot(q.x(), q.y());
+  if (across == 0) return {q.z() < 0 ? pi : 0.0, 0.0};
+  return {std::atan2(across, q.z()), std::atan2(q.x(), -q.y())};
 }
 
-/// The angles (theta, phi) of the r that turns the z axis onto the axis of `rotation`.
-std::pair<double, double> tilt_onto_axis(const Rotation& rotation) {
-  const double across = std::hypot(rotation.x, rotation.y);
-  if (across == 0) return {rotation.z < 0 ? pi : 0.0, 0.0};
-  return {std::atan2(across, rotation.z), std::atan2(rotation.x, -rotation.y)};
-}
-
-/// A one-qubit unitary as e^{i phase} exp(-i angle/2 n.sigma), angle in [0, pi].
-struct PhaseAndRotation {
-  double phase = 0;
-  double angle = 0;
-  Rotation rotation;
-};
-
-PhaseAndRotation split(const std::vector<std::complex<double>>& m) {
-  const double phase = std::arg(m[0] * m[3] - m[1] * m[2]) / 2;
-  const std::complex<double> back = std::polar(1.0, -phase);
-  Rotation q{(back * (m[0] + m[3])).real() / 2, -(back * (m[1] + m[2])).imag() / 2,
-             (back * (m[2] - m[1])).real() / 2, (back * (m[3] - m[0])).imag() / 2};
-  double turned = phase;
-  if (q.w < 0) {
-    q = {-q.w, -q.x, -q.y, -q.z};
-    turned += pi;
-  }
-  return {turned, 2 * std::atan2(std::sqrt(q.x * q.x + q.y * q.y + q.z * q.z), q.w), q};
+Su2 commutator_of(const Su2& a, const Su2& b) {
+  return a * b * a.conjugate() * b.conjugate();
 }
 
 /// The same rotation of period 4 pi with angle in (-2 pi, 2 pi].
@@ -85,12 +51,14 @@ double wrapped_rotation(double angle) {
   return 2 * wrapped(angle / 2);
 }
 
-// ---- how many interactions each construction takes ----------------------------------------------------------
+// ---- how many interactions each construction takes
+// ----------------------------------------------------------
 
 constexpr int many = std::numeric_limits<int>::max() / 8;
 
 /// Counts of the constructions by number of controls, to choose without building. `dirty` wires come back
-/// to their state within the construction; `garbage` wires may be left flipped by a flip that is undone later.
+/// to their state within the construction; `garbage` wires may be left flipped by a flip that is undone
+/// later.
 class Counts {
  public:
   /// X on the target up to phases.
@@ -118,8 +86,7 @@ class Counts {
     if (!is_new) return entry->second;
     int best = 1;
     for (const int b : {1, 2, 3, controls / 2}) {
-      if (b <= controls / 2 &&
-          split_rotation(controls, dirty, b) < split_rotation(controls, dirty, best)) {
+      if (b <= controls / 2 && split_rotation(controls, dirty, b) < split_rotation(controls, dirty, best)) {
         best = b;
       }
     }
@@ -162,7 +129,8 @@ class Counts {
   std::map<std::pair<int, int>, int> split_;
 };
 
-// ---- writing them -------------------------------------------------------------------------------------------
+// ---- writing them
+// -------------------------------------------------------------------------------------------
 
 int count(const Wires& wires) {
   return static_cast<int>(wires.size());
@@ -184,7 +152,8 @@ class Writer {
   Writer(Circuit& circuit, Origin origin, const Cost& cost, Block& out)
       : circuit_(circuit), origin_(origin), cost_(cost), out_(out) {}
 
-  void add(Kind kind, std::initializer_list<std::uint32_t> operands, std::initializer_list<Angle> angles = {}) {
+  void add(Kind kind, std::initializer_list<std::uint32_t> operands,
+           std::initializer_list<Angle> angles = {}) {
     out_.push_back(circuit_.make(kind, operands, angles, origin_));
   }
   void turn(std::uint32_t wire, double theta, double phi) {
@@ -293,9 +262,7 @@ class Writer {
   /// `second`; 0 < |angle| <= 2 pi.
   void commutator(std::uint32_t first, std::uint32_t second, std::uint32_t target, double angle) {
     const double x = std::asin(std::sqrt(std::sin(std::abs(angle) / 4)));
-    const Rotation a = about_x(2 * x);
-    const Rotation b = about_y(2 * x);
-    const auto [theta, phi] = tilt_onto_axis(a * b * a.inverse() * b.inverse());
+    const auto [theta, phi] = tilt_onto_axis(commutator_of(rotation_x(2 * x), rotation_y(2 * x)));
     turn(target, theta, phi);
     if (angle > 0) {
       controlled_y_turn(first, target, -2 * x);
@@ -352,10 +319,9 @@ class Writer {
   /// controls[0] whose axis controls[1] tilts; where it is not tilted, the two commute.
   void triple_commutator(const Wires& controls, std::uint32_t target, double angle) {
     const double x = commutator_angle(3, angle);
-    const Rotation tilt = about_y(x);
-    const Rotation a = tilt * about_z(2 * x) * tilt.inverse();
-    const Rotation b = about_z(2 * x);
-    const auto [theta, phi] = tilt_onto_axis(a * b * a.inverse() * b.inverse());
+    const Su2 along = isinglass::rotation_z(2 * x);
+    const Su2 across = rotation_y(x) * along * rotation_y(-x);
+    const auto [theta, phi] = tilt_onto_axis(commutator_of(across, along));
     const auto tilted = [&](double turned) {
       controlled_y_turn(controls[1], target, -x);
       add(Kind::rz, {controls[0], target}, {{turned}});
@@ -391,17 +357,15 @@ class Writer {
     undo(from, to);
   }
 
-  /// -1 where all wires are 1, four wires or more: with the dirty wire d, the commutator of a CCZ on d and two
-  /// of the wires and a flip of d by the others. The rotation by the wire that the flip does not
-  /// touch is last in the one CCZ and first in the other, and cancels: 4 interactions each.
+  /// -1 where all wires are 1, four wires or more: with the dirty wire d, the commutator of a CCZ on d and
+  /// two of the wires and a flip of d by the others. The rotation by the wire that the flip does not touch is
+  /// last in the one CCZ and first in the other, and cancels: 4 interactions each.
   void sign_with_dirty(const Wires& wires, const Wires& dirty) {
     const std::uint32_t borrowed = dirty[0];
     const std::uint32_t target = wires[0];
     const std::uint32_t control = wires[1];
     const double x = commutator_angle(2, pi);
-    const Rotation a = about_x(2 * x);
-    const Rotation b = about_y(2 * x);
-    const auto [theta, phi] = tilt_onto_axis(a * b * a.inverse() * b.inverse());
+    const auto [theta, phi] = tilt_onto_axis(commutator_of(rotation_x(2 * x), rotation_y(2 * x)));
     // Half a CCZ: the commutator b^-1 a^-1 b a (first to last, b by `borrowed`) without its last rotation.
     const std::size_t half = mark();
     turn(target, theta, phi);
@@ -480,9 +444,9 @@ class Simplifier {
       case Kind::swap:
         return controlled_swap();
       case Kind::zz:
-        return coupling();
+        return parity_rotation();
       case Kind::xx:
-        return coupling_between_equators();
+        return coupling();
       default:
         out_.push_back(op_);
     }
@@ -509,10 +473,15 @@ class Simplifier {
   }
 
   void known_unitary() {
-    const PhaseAndRotation parts = split(matrix_of(op_));
-    const auto [theta, phi] = tilt_onto_axis(parts.rotation);
+    const auto m = isinglass::matrix_of(op_);
+    PhasedSu2 parts = su2_of((Matrix2() << m[0], m[1], m[2], m[3]).finished());
+    if (parts.q.w() < 0) {  // the smaller angle
+      parts.q.coeffs() *= -1;
+      parts.phase += pi;
+    }
+    const auto [theta, phi] = tilt_onto_axis(parts.q);
     write_.turn(targets_[0], -theta, phi);
-    write_.rotation_z(controls_, targets_[0], {parts.angle}, idle_);
+    write_.rotation_z(controls_, targets_[0], {axis_angle(parts.q).angle}, idle_);
     write_.turn(targets_[0], theta, phi);
     write_.phase(controls_, {parts.phase}, idle_);
   }
@@ -544,10 +513,6 @@ class Simplifier {
   void controlled_swap() {
     const std::uint32_t a = targets_[0];
     const std::uint32_t b = targets_[1];
-    if (controls_.empty()) {
-      out_.push_back(op_);
-      return;
-    }
     if (controls_.size() == 1) {
       const std::uint32_t c = controls_[0];
       write_.controlled_y_turn(b, a, -pi);  // X, then Z: ZX = iY
@@ -565,23 +530,12 @@ class Simplifier {
     write_.add(Kind::x, {b, a});
   }
 
-  void coupling() {
-    if (controls_.empty()) {
-      out_.push_back(op_);
-      return;
-    }
-    parity_rotation();
-  }
   void parity_rotation() {
     write_.add(Kind::x, {targets_[0], targets_[1]});
     write_.rotation_z(controls_, targets_[1], op_.angle(0), idle_);
     write_.add(Kind::x, {targets_[0], targets_[1]});
   }
-  void coupling_between_equators() {
-    if (controls_.empty()) {
-      out_.push_back(op_);
-      return;
-    }
+  void coupling() {
     onto_equator(targets_[0], op_.angle(1), true);
     onto_equator(targets_[1], op_.angle(2), true);
     parity_rotation();
@@ -601,145 +555,11 @@ class Simplifier {
 }  // namespace
 
 void simplify(Circuit& circuit, const Operation& op, const IdleWires& idle, const Cost& cost, Block& out) {
-  const bool is_single = op.control_count() <= 1 && target_count(op.kind) == 1 &&
-                         !(op.control_count() == 1 && op.kind == Kind::u && !op.has_known_angles());
-  if (is_single) {
+  if (op.operand_count <= 2) {
     out.push_back(op);
     return;
   }
   Simplifier(circuit, op, idle, cost, out).run();
-}
-
-namespace {
-
-/// Native operations for one controlled one.
-class SingleLowering {
- public:
-  SingleLowering(Circuit& circuit, const Operation& op, Block& out)
-      : circuit_(circuit), op_(op), out_(out), control_(op.operand[0]), target_(op.operand[1]) {}
-
-  void run() {
-    Forms& forms = circuit_.forms;
-    switch (op_.kind) {
-      case Kind::z:
-        return phase({pi});
-      case Kind::p:
-        return phase(op_.angle(0));
-      case Kind::rz:
-        return rotation_z(op_.angle(0));
-      case Kind::x:
-        rotation_about_equator({pi}, {0});
-        return frame(control_, {pi / 2});
-      case Kind::y:
-        rotation_about_equator({pi}, {pi / 2});
-        return frame(control_, {pi / 2});
-      case Kind::h:
-        add(Kind::r, {target_}, {{-pi / 4}, {pi / 2}});
-        phase({pi});
-        return add(Kind::r, {target_}, {{pi / 4}, {pi / 2}});
-      case Kind::r:
-        return rotation_about_equator(op_.angle(0), op_.angle(1));
-      default: {
-        const PhaseAndRotation parts = split(matrix_of(op_));
-        const auto [theta, phi] = tilt_onto_axis(parts.rotation);
-        frame(target_, {-phi});
-        add(Kind::r, {target_}, {{-theta}, {0}});
-        rotation_z({parts.angle});
-        add(Kind::r, {target_}, {{theta}, {0}});
-        frame(target_, {phi});
-        return frame(control_, forms.sum({parts.phase}, {0}));
-      }
-    }
-  }
-
- private:
-  void add(Kind kind, std::initializer_list<std::uint32_t> operands, std::initializer_list<Angle> angles) {
-    out_.push_back(circuit_.make(kind, operands, angles, op_.origin));
-  }
-  void frame(std::uint32_t wire, Angle angle) {
-    if (angle != Angle{}) add(Kind::rz, {wire}, {angle});
-  }
-
-  /// e^{i angle} on |11>: the two rz and exp(+i angle/4 ZZ).
-  void phase(Angle angle) {
-    rotation_z(angle);
-    frame(control_, circuit_.forms.scaled(angle, 0.5));
-  }
-  /// exp(-i angle/4 (1 - Zc) Zt).
-  void rotation_z(Angle angle) {
-    onto_x(target_, true);
-    rotation_about_equator(angle, {0});
-    onto_x(target_, false);
-  }
-  /// exp(-i theta/4 (1 - Zc) (cos phi X + sin phi Y)): half of it on the target alone, and a coupling of -theta/2.
-  void rotation_about_equator(Angle theta, Angle phi) {
-    if (theta.is_known()) {
-      const double known = wrapped_rotation(theta.constant);
-      theta.constant = wrapped(known);
-      // a whole turn is a sign on the control; the coupling stays within pi/2
-      if (std::abs(known - theta.constant) > 1) frame(control_, {pi});
-    }
-    Forms& forms = circuit_.forms;
-    add(Kind::r, {target_}, {forms.scaled(theta, 0.5), phi});
-    onto_x(control_, true);
-    add(Kind::xx, {control_, target_}, {forms.scaled(theta, -0.5), {0}, phi});
-    onto_x(control_, false);
-  }
-  /// Between the two, X acts as Z.
-  void onto_x(std::uint32_t wire, bool is_before) {
-    add(Kind::r, {wire}, {{is_before ? pi / 2 : -pi / 2}, {pi / 2}});
-  }
-
-  Circuit& circuit_;
-  const Operation op_;
-  Block& out_;
-  std::uint32_t control_;
-  std::uint32_t target_;
-};
-
-void lower_uncontrolled(Circuit& circuit, const Operation& op, Block& out) {
-  Forms& forms = circuit.forms;
-  const std::uint32_t wire = op.operand[0];
-  const auto add = [&](Kind kind, std::initializer_list<Angle> angles) {
-    out.push_back(circuit.make(kind, {wire}, angles, op.origin));
-  };
-  switch (op.kind) {
-    case Kind::phase:
-      return;
-    case Kind::x:
-      return add(Kind::r, {{pi}, {0}});
-    case Kind::y:
-      return add(Kind::r, {{pi}, {pi / 2}});
-    case Kind::z:
-      return add(Kind::rz, {{pi}});
-    case Kind::p:
-      return add(Kind::rz, {op.angle(0)});
-    case Kind::h:  // Ry(pi/2) Z
-      add(Kind::rz, {{pi}});
-      return add(Kind::r, {{pi / 2}, {pi / 2}});
-    case Kind::u:  // Rz(f) Ry(t) Rz(l)
-      add(Kind::rz, {forms.sum(op.angle(1), op.angle(2))});
-      return add(Kind::r, {op.angle(0), forms.sum(op.angle(1), {pi / 2})});
-    default:
-      out.push_back(op);
-  }
-}
-
-}  // namespace
-
-void lower_single(Circuit& circuit, const Operation& op, Block& out) {
-  if (op.control_count() == 0) return lower_uncontrolled(circuit, op, out);
-  if (op.kind == Kind::phase) {  // a controlled phase is a phase of its control
-    out.push_back(circuit.make(Kind::rz, {op.operand[0]}, {op.angle(0)}, op.origin));
-    return;
-  }
-  SingleLowering(circuit, op, out).run();
-}
-
-void construct(Circuit& circuit, const Operation& op, const IdleWires& idle, const Cost& cost, Block& out) {
-  Block simple;
-  simplify(circuit, op, idle, cost, simple);
-  for (const Operation& single : simple) lower_single(circuit, single, out);
 }
 
 }  // namespace isinglass

@@ -1,7 +1,6 @@
 // Multi-controlled operations written with the fewest interactions: the constructions the passes choose from.
 //
-// Two steps, usable apart. simplify() turns any controlled source operation into operations with at most one
-// control and one target (each worth one interaction); lower_single() turns one of those into r, xx and rz.
+// The result is made of operations on at most two wires, which the lowering turns into one xx each.
 #pragma once
 
 #include <cstdint>
@@ -19,22 +18,16 @@ struct IdleWires {
   std::vector<std::uint32_t> dirty;  // in any state, and in the same state afterwards
 };
 
-/// Appends to `out` operations with the same effect as the unitary `op` up to a global phase: with one control
-/// x, z, p, rz, r, h, y, u; without a control any one-target kind. Operations with two targets and no control
-/// are passed on as they are. Known angles take the closed forms, symbolic ones the constructions that are
-/// affine in the angle; a u with symbolic angles becomes rz and r.
+/// Appends to `out` operations on at most two wires, controls included, with the same effect as the unitary
+/// `op` up to a global phase; each with a control is worth one interaction, swaps and a u with a control and
+/// symbolic angles apart. An `op` on at most two wires is passed on as it is. Known angles take the closed
+/// forms, symbolic ones the constructions that are affine in the angle. Where two constructions of equal
+/// count differ in their angles, the cost decides.
 void simplify(Circuit& circuit, const Operation& op, const IdleWires& idle, const Cost& cost, Block& out);
 
-/// Appends r, xx and rz with the same effect as `op` up to a global phase. `op` has at most one control, and one
-/// target (or is a `phase`): one xx if it has a control, in any angle range (|theta| <= pi/2 if known).
-void lower_single(Circuit& circuit, const Operation& op, Block& out);
-
-/// Both steps: appends r, xx and rz with the same effect as the controlled `op` up to a global phase.
-void construct(Circuit& circuit, const Operation& op, const IdleWires& idle, const Cost& cost, Block& out);
-
-/// The pass that replaces every operation with two or more controls, and every controlled one with two targets,
-/// by simplify(), borrowing the wires that are idle where it stands: clean ones are wires that are still in
-/// the |0> of the start and the target's spare ions, dirty ones all others.
+/// The pass that replaces every operation on three or more wires by simplify(), borrowing the wires that are
+/// idle where it stands: clean ones are wires that are still in the |0> of the start and the target's spare
+/// ions, dirty ones all others.
 Circuit choose_constructions(Circuit circuit, const PassContext& context);
 
 /// How a Toffoli is written. The phases are those the form leaves besides the Toffoli itself.
