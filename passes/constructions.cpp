@@ -22,6 +22,7 @@
 #include <cmath>
 #include <limits>
 #include <map>
+#include <tuple>
 #include <utility>
 
 #include "algebra/su2.h"
@@ -64,7 +65,11 @@ class Counts {
   /// X on the target up to phases.
   int flip(int controls, int garbage, int dirty) {
     if (controls <= 2) return controls == 0 ? 0 : controls == 1 ? 1 : 3;
-    return std::min(flip_by_rotation(controls, garbage, dirty), flip_by_garbage(controls, garbage, dirty));
+    const std::tuple key(controls, std::min(garbage, controls), std::min(dirty, controls));
+    if (const auto known = flips_.find(key); known != flips_.end()) return known->second;
+    const int best =
+        std::min(flip_by_rotation(controls, garbage, dirty), flip_by_garbage(controls, garbage, dirty));
+    return flips_[key] = best;
   }
   int flip_by_rotation(int controls, int garbage, int dirty) {
     return 2 + rotation(controls - 1, garbage + dirty);
@@ -74,24 +79,9 @@ class Counts {
   }
 
   /// Any rotation of the target, exactly.
-  int rotation(int controls, int dirty) {
-    constexpr int closed_form[] = {0, 1, 4, 8};
-    if (controls <= 3) return closed_form[controls];
-    return split_rotation(controls, dirty, best_split(controls, dirty));
-  }
-  /// How many of the controls should go with the rotation, the others with the flips.
-  int best_split(int controls, int dirty) {
-    dirty = std::min(dirty, controls);
-    const auto [entry, is_new] = split_.try_emplace({controls, dirty}, 1);
-    if (!is_new) return entry->second;
-    int best = 1;
-    for (const int b : {1, 2, 3, controls / 2}) {
-      if (b <= controls / 2 && split_rotation(controls, dirty, b) < split_rotation(controls, dirty, best)) {
-        best = b;
-      }
-    }
-    return split_[{controls, dirty}] = best;
-  }
+  int rotation(int controls, int dirty) { return split_rotation(controls, dirty).count; }
+  /// How many of four or more controls should go with the rotation, the others with the flips.
+  int best_split(int controls, int dirty) { return split_rotation(controls, dirty).with_rotation; }
 
   /// A phase on `wires` wires; `is_pi`: of -1, which dirty wires help.
   int phase(int wires, int clean, int dirty, bool is_pi) {
@@ -120,13 +110,28 @@ class Counts {
                      rotation_by_clean(controls, clean, dirty, 3)});
   }
 
-  int split_rotation(int controls, int dirty, int with_rotation) {
-    return 2 * flip(controls - with_rotation, dirty, with_rotation) +
-           2 * rotation(with_rotation, controls - with_rotation);
+ private:
+  struct Split {
+    int count;
+    int with_rotation;
+  };
+  Split split_rotation(int controls, int dirty) {
+    constexpr int closed_form[] = {0, 1, 4, 8};
+    if (controls <= 3) return {closed_form[controls], 1};
+    const std::pair key(controls, std::min(dirty, controls));
+    if (const auto known = splits_.find(key); known != splits_.end()) return known->second;
+    Split best{many, 1};
+    for (const int b : {1, 2, 3, controls / 2}) {
+      if (b > controls / 2) continue;
+      const int count = 2 * flip(controls - b, dirty, b) + 2 * rotation(b, controls - b);
+      if (count < best.count) best = {count, b};
+    }
+    splits_[key] = best;
+    return best;
   }
 
- private:
-  std::map<std::pair<int, int>, int> split_;
+  std::map<std::tuple<int, int, int>, int> flips_;
+  std::map<std::pair<int, int>, Split> splits_;
 };
 
 // ---- writing them
