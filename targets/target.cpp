@@ -172,7 +172,7 @@ Target typical(std::uint32_t ions) {
 void apply_figures(MachineFile& file, Target& target, bool complete) {
   Section machine(file, "machine");
   if (complete) machine.node("ions");  // read before: the target has its ions
-  machine.whole("beams", target.beams, 1, most_ions);
+  machine.whole("beams", target.beams, target.ions > 1 ? 2 : 1, most_ions);
   bool is_steered = true;
   machine.flag("beams_steered", is_steered);
   machine.whole("interactions_at_once", target.interactions_at_once, 1, most_ions / 2);

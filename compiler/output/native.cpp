@@ -1,0 +1,219 @@
+// The native program; see native.h.
+#include "output/native.h"
+
+#include <sstream>
+#include <stdexcept>
+
+#include "output/text.h"
+
+namespace isinglass {
+
+namespace {
+
+// exp(-i theta/2 (cos phi X + sin phi Y)) = rz(phi) rx(theta) rz(-phi), and the interaction is exp(-i theta/2
+// ZZ) turned onto the two axes; both exact, global phase included.
+constexpr std::string_view definitions = R"(
+gate r(theta, phi) a {
+  rz(-phi) a;
+  rx(theta) a;
+  rz(phi) a;
+}
+gate xx(theta, phi_a, phi_b) a, b {
+  rz(-phi_a) a;
+  rz(-phi_b) b;
+  h a;
+  h b;
+  cx a, b;
+  rz(theta) b;
+  cx a, b;
+  h a;
+  h b;
+  rz(phi_a) a;
+  rz(phi_b) b;
+}
+
+)";
+
+/// Names in comments and strings stay on their line.
+std::string one_line(std::string text) {
+  for (char& byte : text) {
+    if (static_cast<unsigned char>(byte) < 0x20) byte = ' ';
+  }
+  return text;
+}
+
+class NativeWriter {
+ public:
+  NativeWriter(std::ostream& out, const Placed& placed)
+      : out_(out), placed_(placed), circuit_(placed.circuit), bits_(bit_names(placed.circuit)) {
+    for (std::uint32_t i = 0; i < circuit_.wires; ++i) ions_.push_back(fmt::format("ion[{}]", i));
+  }
+
+  void write(const NativeHeading& heading) {
+    out_.add("OPENQASM ", uses_switch() ? "3.1" : "3.0", ";\n");
+    out_.add("// ", one_line(heading.source), " compiled for ", one_line(heading.target), " by isinglass ",
+             ISINGLASS_VERSION, ".\n");
+    out_.add(
+        "// Angles in radians. r(theta, phi) = exp(-i theta/2 (cos phi X + sin phi Y)), 0 < theta <= pi;\n");
+    out_.add(
+        "// xx(theta, phi_a, phi_b) = exp(-i theta/2 (cos phi_a X + sin phi_a Y) (x) (cos phi_b X + sin "
+        "phi_b "
+        "Y)), 0 < theta <= pi/2;\n");
+    out_.add("// rz is a change of frame: no pulse, no time, no error.\n");
+    out_.add("include \"stdgates.inc\";\n", definitions);
+    placement();
+    for (const std::string& pragma : circuit_.pragmas) out_.add(pragma, "\n");
+    declarations();
+    block(0, "");
+  }
+
+ private:
+  bool uses_switch() const {
+    for (const Branch& branch : circuit_.branches) {
+      if (branch.kind == Branch::Kind::switch_case) return true;
+    }
+    return false;
+  }
+
+  void placement() {
+    for (std::uint32_t q = 0; q < placed_.start.size(); ++q) {
+      out_.add("pragma isinglass start ", circuit_.wire_name(q), " ", ions_[placed_.start[q]], "\n");
+    }
+    for (std::uint32_t q = 0; q < circuit_.end_wire.size(); ++q) {
+      out_.add("pragma isinglass end ", circuit_.wire_name(q), " ", ions_[circuit_.end_wire[q]], "\n");
+    }
+    for (const Variable& variable : circuit_.variables) {
+      if (variable.source.empty() || variable.source == variable.name) continue;
+      out_.add("pragma isinglass name ", variable.source, " ", variable.name, "\n");
+    }
+  }
+
+  void declarations() {
+    out_.add("\n");
+    for (const Input& input : circuit_.inputs) {
+      if (!input.is_derived) out_.add("input ", input.type, " ", input.name, ";\n");
+    }
+    std::vector<bool> counts_rounds(circuit_.variables.size(), false);  // declared by its loop
+    for (const Branch& branch : circuit_.branches) {
+      if (branch.kind == Branch::Kind::for_loop) counts_rounds[branch.variable] = true;
+    }
+    for (std::size_t i = 0; i < circuit_.variables.size(); ++i) {
+      const Variable& variable = circuit_.variables[i];
+      if (counts_rounds[i]) continue;
+      out_.add(variable.is_output ? "output " : "", variable.type, " ", variable.name, ";\n");
+    }
+    out_.add("qubit[", std::uint64_t{circuit_.wires}, "] ion;\n\n");
+  }
+
+  void angle(const Operation& op, int which) {
+    if (op.form[which] == 0) {
+      out_.add(op.value[which]);
+    } else {
+      out_.add(angle_text(op.angle(which), circuit_));
+    }
+  }
+
+  void block(std::uint32_t index, const std::string& indent) {
+    for (const Operation& op : circuit_.blocks[index]) operation(op, indent);
+  }
+
+  void operation(const Operation& op, const std::string& indent) {
+    out_.add(indent);
+    if (op.is_unitary() && !op.is_native()) {
+      throw std::logic_error(fmt::format("{} is no operation of the machine", name(op.kind)));
+    }
+    switch (op.kind) {
+      case Kind::r:
+        out_.add("r(");
+        angle(op, 0);
+        out_.add(", ");
+        angle(op, 1);
+        out_.add(") ", ions_[op.operand[0]], ";\n");
+        break;
+      case Kind::xx:
+        out_.add("xx(");
+        angle(op, 0);
+        out_.add(", ");
+        angle(op, 1);
+        out_.add(", ");
+        angle(op, 2);
+        out_.add(") ", ions_[op.operand[0]], ", ", ions_[op.operand[1]], ";\n");
+        break;
+      case Kind::rz:
+        out_.add("rz(");
+        angle(op, 0);
+        out_.add(") ", ions_[op.operand[0]], ";\n");
+        break;
+      case Kind::measure:
+        if (op.payload != no_bit) out_.add(bits_[op.payload], " = ");
+        out_.add("measure ", ions_[op.operand[0]], ";\n");
+        break;
+      case Kind::reset:
+        out_.add("reset ", ions_[op.operand[0]], ";\n");
+        break;
+      case Kind::barrier:
+      case Kind::delay:
+        if (op.kind == Kind::barrier) {
+          out_.add("barrier");
+        } else {
+          out_.add("delay[", op.value[0], "us]");
+        }
+        operands(op);
+        break;
+      case Kind::classical:
+        out_.add(statement_text(circuit_.statements[op.payload], circuit_), "\n");
+        break;
+      case Kind::branch:
+        branch(circuit_.branches[op.payload], indent);
+        break;
+      default:
+        break;
+    }
+  }
+
+  void operands(const Operation& op) {
+    std::string_view separator = " ";
+    for (const std::uint32_t ion : circuit_.operands(op)) {
+      out_.add(separator, ions_[ion]);
+      separator = ", ";
+    }
+    out_.add(";\n");
+  }
+
+  void branch(const Branch& b, const std::string& indent) {
+    out_.add(branch_text(b, circuit_), " {\n");
+    if (b.kind == Branch::Kind::switch_case) {
+      for (std::size_t i = 0; i < b.arms.size(); ++i) {
+        out_.add(indent, "  ", arm_text(b, i, circuit_), " {\n");
+        block(b.arms[i].block, indent + "    ");
+        out_.add(indent, "  }\n");
+      }
+    } else {
+      for (std::size_t i = 0; i < b.arms.size(); ++i) {
+        if (i > 0) out_.add(indent, "} ", arm_text(b, i, circuit_), " {\n");
+        block(b.arms[i].block, indent + "  ");
+      }
+    }
+    out_.add(indent, "}\n");
+  }
+
+  TextWriter out_;
+  const Placed& placed_;
+  const Circuit& circuit_;
+  std::vector<std::string> ions_;
+  std::vector<std::string> bits_;
+};
+
+}  // namespace
+
+void write_native(std::ostream& out, const Placed& placed, const NativeHeading& heading) {
+  NativeWriter(out, placed).write(heading);
+}
+
+std::string native_program(const Placed& placed, const NativeHeading& heading) {
+  std::ostringstream text;
+  write_native(text, placed, heading);
+  return std::move(text).str();
+}
+
+}  // namespace isinglass
