@@ -264,13 +264,6 @@ struct Need {
   bool is_free = false;  // an end that takes any pole
 };
 
-bool are_parallel(const Axis& a, const Axis& b) {
-  return a.cross(b).squaredNorm() < rounding * rounding;
-}
-bool are_perpendicular(const Axis& a, const Axis& b) {
-  return std::abs(a.dot(b)) < rounding;
-}
-
 /// Chooses the poles of one stretch of one wire: poles[need.place] is what need finds. Greedy over runs.
 class PoleWalk {
  public:
@@ -584,6 +577,14 @@ Circuit shell_of(const Circuit& circuit) {
 }
 
 }  // namespace
+
+bool are_parallel(const Axis& a, const Axis& b) {
+  return a.cross(b).squaredNorm() < rounding * rounding;
+}
+
+bool are_perpendicular(const Axis& a, const Axis& b) {
+  return std::abs(a.dot(b)) < rounding;
+}
 
 AxisForm axis_form(const Circuit& circuit) {
   AxisForm form;

@@ -27,6 +27,10 @@ namespace isinglass {
 /// Angles and angles between axes below this are rounding.
 inline constexpr double rounding = 1e-11;
 
+/// Whether two unit vectors lie on one line, or span a right angle, up to rounding.
+bool are_parallel(const Axis& a, const Axis& b);
+bool are_perpendicular(const Axis& a, const Axis& b);
+
 struct Item {
   enum class What : std::uint8_t {
     interaction,  // exp(-i angle/2 (axis[0].sigma)(x)(axis[1].sigma)) on wire[0], wire[1]

@@ -1,0 +1,123 @@
+// Interactions about the same axes add their angles; those that add up to nothing are gone.
+//
+//     --xx(s)--*--xx(t)--        --xx(s+t)--*--
+//       |      |  |        ==>     |        |
+//     --xx-----|--xx-----        --xx-------|--
+//     ---------Z---------        -----------Z--
+//
+// On each wire the axis form shows runs of items with parallel axes, which commute. Two interactions that lie in
+// the same run on both their wires meet, whatever else lies in these runs. One sweep with a table of (run, run);
+// a sweep in which something vanished is followed by another, because runs may have joined. Symbolic angles add
+// like numbers. (Common practice.)
+#include "passes/merge_rotations.h"
+
+#include <algorithm>
+#include <unordered_map>
+
+#include "passes/stretches.h"
+
+namespace isinglass {
+
+namespace {
+
+class Merger {
+ public:
+  explicit Merger(AxisForm& form) : form_(form) {}
+
+  /// Returns whether anything vanished.
+  bool sweep(AxisBlock& block) {
+    run_.assign(form_.shell.wires, {});
+    home_.clear();
+    Pusher pusher(form_.shell.wires);
+    std::vector<Item> out;
+    out.reserve(block.items.size());
+    for (Item item : block.items) {
+      if (item.what == Item::What::fence) {
+        Fence& fence = block.fences[item.fence];
+        pusher.arrive(fence, form_);
+        for (const std::uint32_t wire : fence.wires) run_[wire] = {};
+        out.push_back(item);
+        continue;
+      }
+      pusher.arrive(item);
+      const auto [place, is_first] = home_.try_emplace(key_of(item), out.size());
+      if (is_first) {
+        out.push_back(item);
+      } else {
+        add(out[place->second], item, pusher);
+      }
+    }
+    pusher.finish(block, form_);
+    const std::size_t before = out.size();
+    std::erase_if(out, [](const Item& item) {
+      return item.what != Item::What::fence && item.angle.is_known() &&
+             std::abs(item.angle.constant) < 1e-13;
+    });
+    const bool any_vanished = out.size() < before;
+    block.items = std::move(out);
+    return any_vanished;
+  }
+
+ private:
+  struct Run {
+    std::uint32_t number = 0;  // 0: none yet
+    Axis axis;
+  };
+
+  /// The number of the run that the axis belongs to; opens one where it must.
+  std::uint32_t run_of(std::uint32_t wire, const Axis& axis) {
+    Run& run = run_[wire];
+    if (run.number == 0 || !are_parallel(run.axis, axis)) run = {++runs_, axis};
+    return run.number;
+  }
+
+  /// Equal for items that may meet: run numbers are unique over wires and stretches.
+  std::uint64_t key_of(const Item& item) {
+    std::uint64_t low = run_of(item.wire[0], item.axis[0]);
+    std::uint64_t high = item.is_interaction() ? run_of(item.wire[1], item.axis[1]) : 0;
+    if (low > high) std::swap(low, high);
+    return high << 32 | low;
+  }
+
+  void add(Item& home, const Item& item, Pusher& pusher) {
+    const bool is_crossed = home.wire[0] != item.wire[0];
+    double sign = 1;
+    for (int side = 0; side < item.wire_count(); ++side) {
+      if (home.axis[is_crossed ? 1 - side : side].dot(item.axis[side]) < 0) sign = -sign;
+    }
+    const Angle more = sign > 0 ? item.angle : form_.shell.forms.negated(item.angle);
+    home.angle = form_.shell.forms.sum(home.angle, more);
+    home.origin = form_.shell.origins.merged(home.origin, item.origin);
+    if (!home.angle.is_known()) return;
+    if (!home.is_interaction()) {  // the inputs cancelled: what is left is a gate as any other
+      pusher.push(home.wire[0], rotation(home.axis[0], home.angle.constant));
+      home.angle = {};
+      return;
+    }
+    // Beyond a quarter turn the local half turns are cheaper taken out; all in between is parallel to them.
+    const double halves = std::round(home.angle.constant / pi);
+    home.angle.constant -= halves * pi;
+    if (std::fmod(halves, 2.0) == 0) return;
+    for (int side = 0; side < 2; ++side) pusher.push(home.wire[side], rotation(home.axis[side], pi));
+  }
+
+  AxisForm& form_;
+  std::vector<Run> run_;
+  std::unordered_map<std::uint64_t, std::size_t> home_;
+  std::uint32_t runs_ = 0;
+};
+
+}  // namespace
+
+Circuit merge_rotations(Circuit circuit, const PassContext& context) {
+  AxisForm form = axis_form(circuit);
+  Merger merger(form);
+  const int most_sweeps = context.effort == Effort::quick ? 1 : 20;
+  for (AxisBlock& block : form.blocks) {
+    for (int sweep = 0; sweep < most_sweeps && merger.sweep(block); ++sweep) {
+    }
+  }
+  return native_form(form, context.promise);
+}
+
+}  // namespace isinglass
