@@ -10,6 +10,7 @@
 
 #include <fmt/format.h>
 
+#include <algorithm>
 #include <cmath>
 #include <optional>
 #include <stdexcept>
@@ -57,9 +58,12 @@ bool may_leave(const Circuit& circuit, const Operation& op) {
 /// Reads one block of gates into items.
 class Reader {
  public:
-  Reader(AxisForm& form, AxisBlock& block) : form_(form), block_(block), frame_(form.shell.wires) {
-    for (Su2& q : frame_) q = Su2::Identity();
-  }
+  Reader(AxisForm& form, AxisBlock& block)
+      : form_(form),
+        block_(block),
+        frame_(form.shell.wires, Su2::Identity()),
+        phase_(form.shell.wires, 0),
+        phase_origin_(form.shell.wires) {}
 
   void read(const Circuit& circuit, const Operation& op) {
     origin_ = op.origin;
@@ -78,27 +82,51 @@ class Reader {
     }
   }
 
-  void finish() { block_.end_frames = frame_; }
+  void finish() {
+    for (std::uint32_t w = 0; w < frame_.size(); ++w) settle(w);
+    block_.end_frames = frame_;
+  }
 
  private:
-  void apply(std::uint32_t wire, const Su2& q) { frame_[wire] = q * frame_[wire]; }
+  void apply(std::uint32_t wire, const Su2& q) {
+    if (!(q.x() == 0 && q.y() == 0)) settle(wire);
+    frame_[wire] = q * frame_[wire];
+  }
 
   /// exp(-i angle/2 axis.sigma) with the axis as the gate sees it.
   void rotate(std::uint32_t wire, const Axis& axis, Angle angle) {
-    if (angle.is_known()) {
-      apply(wire, rotation(axis, angle.constant));
+    if (angle.is_known()) return apply(wire, rotation(axis, angle.constant));
+    if (axis == z_axis) {
+      apply(wire, rotation_z(angle.constant));
+      phase_[wire] = form_.shell.forms.sum(phase_[wire], angle.form);
+      phase_origin_[wire] = origin_;
       return;
     }
+    settle(wire);
+    symbolic(wire, axis, angle, origin_);
+  }
+
+  void symbolic(std::uint32_t wire, const Axis& axis, Angle angle, Origin origin) {
     Item item;
     item.what = Item::What::rotation;
     item.wire[0] = wire;
     item.axis[0] = frame_[wire].conjugate() * axis;
     item.angle = angle;
-    item.origin = origin_;
+    item.origin = origin;
     block_.items.push_back(item);
   }
 
+  /// Writes the symbolic rotation about z that has gathered on the wire: the next gate does not commute with
+  /// it.
+  void settle(std::uint32_t wire) {
+    if (phase_[wire] == 0) return;
+    symbolic(wire, z_axis, {0, phase_[wire]}, phase_origin_[wire]);
+    phase_[wire] = 0;
+  }
+
   void interact(std::uint32_t a, const Axis& axis_a, std::uint32_t b, const Axis& axis_b, Angle angle) {
+    if (axis_a != z_axis) settle(a);
+    if (axis_b != z_axis) settle(b);
     Item item;
     item.wire[0] = a;
     item.wire[1] = b;
@@ -106,8 +134,7 @@ class Reader {
     item.axis[1] = frame_[b].conjugate() * axis_b;
     item.origin = origin_;
     if (angle.is_known()) {
-      // exp(-i pi/2 A(x)B) is local: A on one wire, B on the other.
-      const double halves = std::round(angle.constant / pi);
+      const double halves = half_turns(angle.constant);
       angle.constant -= halves * pi;
       if (std::fmod(halves, 2.0) != 0) {
         apply(a, rotation(axis_a, pi));
@@ -239,6 +266,7 @@ class Reader {
       fence.wires.assign(operands.begin(), operands.end());
     }
     for (const std::uint32_t w : fence.wires) {
+      settle(w);
       fence.frames.push_back(frame_[w]);
       frame_[w] = Su2::Identity();
     }
@@ -251,7 +279,9 @@ class Reader {
 
   AxisForm& form_;
   AxisBlock& block_;
-  std::vector<Su2> frame_;  // product of the one-qubit gates since the wire's last fence
+  std::vector<Su2> frame_;            // product of the one-qubit gates since the wire's last fence
+  std::vector<std::uint32_t> phase_;  // linear form of an rz after the frame that is not written yet
+  std::vector<Origin> phase_origin_;
   Origin origin_;
 };
 
@@ -319,7 +349,12 @@ class PoleWalk {
       offer(need.is_free ? old : need.axis);
       return *best;
     }
-    if (need.what == Need::What::rotation) offer(nearer(need.axis, old));
+    // Of two opposite poles the nearer is taken unless only the other is what the end wants.
+    const auto offer_both = [&](const Axis& axis) {
+      offer(axis.dot(old) < 0 ? Axis(-axis) : axis);
+      offer(axis.dot(old) < 0 ? axis : Axis(-axis));
+    };
+    if (need.what == Need::What::rotation) offer_both(need.axis);
     // The first need that is not parallel to this one spans a plane with it, or fixes the pole itself.
     std::size_t other = first + 1;
     while (other < needs_.size() && needs_[other].what != Need::What::end &&
@@ -329,16 +364,13 @@ class PoleWalk {
     if (other < needs_.size() && !needs_[other].is_free) {
       const Axis& axis = needs_[other].axis;
       if (needs_[other].what != Need::What::interaction) {
-        offer(needs_[other].what == Need::What::end ? axis : nearer(axis, old));
+        needs_[other].what == Need::What::end ? offer(axis) : offer_both(axis);
       }
-      if (needs_[other].what != Need::What::end) offer(nearer(need.axis.cross(axis).normalized(), old));
+      if (needs_[other].what != Need::What::end) offer_both(need.axis.cross(axis).normalized());
     }
     offer(nearest_perpendicular(need.axis, old));
     return *best;
   }
-
-  /// +-axis, whichever a smaller pulse reaches.
-  static Axis nearer(const Axis& axis, const Axis& old) { return axis.dot(old) < 0 ? Axis(-axis) : axis; }
 
   static Axis nearest_perpendicular(const Axis& axis, const Axis& old) {
     const Axis flat = old - axis * axis.dot(old);
@@ -486,6 +518,7 @@ class Writer {
       theta.constant = -theta.constant;
       phi[0] += pi;
     }
+    if (theta.is_known()) theta.constant = std::min(theta.constant, pi / 2);  // sums round beyond it
     out_.push_back(circuit_.make(Kind::xx, {item.wire[0], item.wire[1]},
                                  {theta, physical(item.wire[0], phi[0]), physical(item.wire[1], phi[1])},
                                  item.origin));
@@ -578,6 +611,10 @@ Circuit shell_of(const Circuit& circuit) {
 
 }  // namespace
 
+double half_turns(double angle) {
+  return std::abs(angle) <= pi / 2 + rounding ? 0.0 : std::round(angle / pi);
+}
+
 bool are_parallel(const Axis& a, const Axis& b) {
   return a.cross(b).squaredNorm() < rounding * rounding;
 }
@@ -608,6 +645,10 @@ Circuit native_form(const AxisForm& form, const Promise& promise) {
     Writer(form.blocks[b], circuit, circuit.blocks[b], promise).write();
   }
   return circuit;
+}
+
+Circuit better_of(Circuit circuit, Circuit changed, const Cost& cost) {
+  return tally_of(changed, cost).error < tally_of(circuit, cost).error ? changed : circuit;
 }
 
 namespace {
@@ -662,7 +703,7 @@ void Pusher::push(std::uint32_t wire, const Su2& u) {
 }
 
 void Pusher::exchange(std::uint32_t a, std::uint32_t b) {
-  // pushed_ acts on present wires before the exchange: what it would have done to a it does to what a became.
+  // With P pushed so far: P SWAP = SWAP P', where P' has its wires exchanged.
   std::swap(pushed_[a], pushed_[b]);
   for (std::uint32_t& name : name_) {
     if (name == a) {

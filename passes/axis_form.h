@@ -27,6 +27,11 @@ namespace isinglass {
 /// Angles and angles between axes below this are rounding.
 inline constexpr double rounding = 1e-11;
 
+/// How many times pi must be taken from an interaction's angle to leave at most pi/2 either way. Each is a
+/// half turn of both wires about the interaction's axes: exp(-i pi/2 A(x)B) = -i A(x)B. Stays 0 at +-pi/2
+/// itself.
+double half_turns(double angle);
+
 /// Whether two unit vectors lie on one line, or span a right angle, up to rounding.
 bool are_parallel(const Axis& a, const Axis& b);
 bool are_perpendicular(const Axis& a, const Axis& b);
@@ -78,6 +83,9 @@ AxisForm axis_form(const Circuit& circuit);
 /// one between two other operations of a wire. Frames that the promise does not keep are dropped.
 Circuit native_form(const AxisForm& form, const Promise& promise);
 
+/// `changed` where its estimated error is lower than that of `circuit`, else `circuit`: no pass makes worse.
+Circuit better_of(Circuit circuit, Circuit changed, const Cost& cost);
+
 /// Rewrites a block from left to right while one-qubit unitaries and renamings made on the way are pushed to
 /// the end: give every item to arrive() in order, use what it has become, push what is left over.
 class Pusher {
@@ -91,7 +99,8 @@ class Pusher {
   void arrive(Fence& fence, AxisForm& form);
   /// U on `wire` (its present name), after all that has arrived, in the coordinates of the stretch's start.
   void push(std::uint32_t wire, const Su2& u);
-  /// From here on the two wires have exchanged names: what came for a goes to b.
+  /// A SWAP after all that has arrived; what came for a goes to b from here on. Where the same step also
+  /// pushes unitaries that come before the SWAP, exchange first.
   void exchange(std::uint32_t a, std::uint32_t b);
   /// Takes what is left into the end frames and, in the body, the renaming into the shell's end_wire.
   void finish(AxisBlock& block, AxisForm& form);

@@ -5,10 +5,10 @@
 //     --xx-----|--xx-----        --xx-------|--
 //     ---------Z---------        -----------Z--
 //
-// On each wire the axis form shows runs of items with parallel axes, which commute. Two interactions that lie in
-// the same run on both their wires meet, whatever else lies in these runs. One sweep with a table of (run, run);
-// a sweep in which something vanished is followed by another, because runs may have joined. Symbolic angles add
-// like numbers. (Common practice.)
+// On each wire the axis form shows runs of items with parallel axes, which commute. Two interactions that lie
+// in the same run on both their wires meet, whatever else lies in these runs. One sweep with a table of (run,
+// run); a sweep in which something vanished is followed by another, because runs may have joined. Symbolic
+// angles add like numbers. (Common practice.)
 #include "passes/merge_rotations.h"
 
 #include <algorithm>
@@ -35,7 +35,7 @@ class Merger {
       if (item.what == Item::What::fence) {
         Fence& fence = block.fences[item.fence];
         pusher.arrive(fence, form_);
-        for (const std::uint32_t wire : fence.wires) run_[wire] = {};
+        for (const std::uint32_t wire : fence.wires) run_[wire].number = 0;
         out.push_back(item);
         continue;
       }
@@ -50,8 +50,7 @@ class Merger {
     pusher.finish(block, form_);
     const std::size_t before = out.size();
     std::erase_if(out, [](const Item& item) {
-      return item.what != Item::What::fence && item.angle.is_known() &&
-             std::abs(item.angle.constant) < 1e-13;
+      return item.what != Item::What::fence && item.angle.is_known() && std::abs(item.angle.constant) < 1e-13;
     });
     const bool any_vanished = out.size() < before;
     block.items = std::move(out);
@@ -61,7 +60,7 @@ class Merger {
  private:
   struct Run {
     std::uint32_t number = 0;  // 0: none yet
-    Axis axis;
+    Axis axis = Axis::Zero();
   };
 
   /// The number of the run that the axis belongs to; opens one where it must.
@@ -95,7 +94,7 @@ class Merger {
       return;
     }
     // Beyond a quarter turn the local half turns are cheaper taken out; all in between is parallel to them.
-    const double halves = std::round(home.angle.constant / pi);
+    const double halves = half_turns(home.angle.constant);
     home.angle.constant -= halves * pi;
     if (std::fmod(halves, 2.0) == 0) return;
     for (int side = 0; side < 2; ++side) pusher.push(home.wire[side], rotation(home.axis[side], pi));
@@ -117,7 +116,7 @@ Circuit merge_rotations(Circuit circuit, const PassContext& context) {
     for (int sweep = 0; sweep < most_sweeps && merger.sweep(block); ++sweep) {
     }
   }
-  return native_form(form, context.promise);
+  return better_of(std::move(circuit), native_form(form, context.promise), context.cost);
 }
 
 }  // namespace isinglass

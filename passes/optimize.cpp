@@ -1,17 +1,40 @@
 // Orders of passes, and the competition between them; see optimize.h.
 #include "passes/optimize.h"
 
+#include <algorithm>
+#include <atomic>
 #include <chrono>
-
-#include "passes/expand_controls.h"
-#include "passes/lower.h"
-#include "passes/rename_swaps.h"
+#include <stdexcept>
+#include <thread>
 
 namespace isinglass {
 
 namespace {
 
 using Clock = std::chrono::steady_clock;
+using Names = std::vector<std::string_view>;
+
+/// A candidate: passes on source gates, then "lower", then passes on the machine's gates round and round
+/// until a round gains nothing, then "lower" once more for the normal form.
+struct Order {
+  std::string_view name;
+  Names on_source;
+  Names on_native;
+};
+
+// All candidates begin by making every gate a gate on two wires, each in its own way.
+const Order quick_order = {"quick", {"rename-swaps", "expand-controls"}, {"merge-rotations"}};
+const std::vector<Order>& steady_orders() {
+  static const std::vector<Order> orders = {
+      {"blocks",
+       {"rename-swaps", "expand-controls"},
+       {"merge-rotations", "two-qubit-stretches", "mirrored-stretches"}},
+      {"distant",
+       {"rename-swaps", "expand-controls", "merge-distant"},
+       {"merge-rotations", "two-qubit-stretches", "mirrored-stretches", "merge-distant"}},
+  };
+  return orders;
+}
 
 double seconds_since(Clock::time_point start) {
   return std::chrono::duration<double>(Clock::now() - start).count();
@@ -23,50 +46,120 @@ std::size_t size_of(const Circuit& circuit) {
   return size;
 }
 
-/// Runs passes one after the other and writes the trace.
-class Runner {
- public:
-  Runner(std::string order, const PassContext& context, std::vector<TraceRow>& rows)
-      : order_(std::move(order)), context_(context), rows_(rows) {}
+const Pass& pass_named(std::string_view name) {
+  for (const Pass& pass : all_passes()) {
+    if (pass.name == name) return pass;
+  }
+  throw std::logic_error("no pass named " + std::string(name));
+}
 
-  Circuit run(std::string_view pass_name, Circuit circuit, bool is_lowered) {
-    const Pass* pass = nullptr;
-    for (const Pass& candidate : all_passes()) {
-      if (candidate.name == pass_name) pass = &candidate;
+/// Runs one order and writes down what each pass did.
+class Candidate {
+ public:
+  Candidate(const Order& order, const PassContext& context) : order_(order), context_(context) {
+    context_.threads = 1;
+  }
+
+  void run(Circuit circuit) {
+    const auto start = Clock::now();
+    for (const std::string_view name : order_.on_source) step(name, circuit, false);
+    step("lower", circuit, false);
+    result_.is_complete = improve(circuit);
+    step("lower", circuit, true);  // the normal form, whatever the last pass left
+    result_.order = order_.name;
+    result_.tally = tally_of(circuit, context_.cost);
+    result_.seconds = seconds_since(start);
+    circuit_ = std::move(circuit);
+  }
+
+  const TraceResult& result() const { return result_; }
+  std::vector<TraceRow>& rows() { return rows_; }
+  Circuit& circuit() { return circuit_; }
+
+ private:
+  static constexpr int most_rounds = 20;
+
+  /// Returns false where time ran out first.
+  bool improve(Circuit& circuit) {
+    double error = tally_of(circuit, context_.cost).error;
+    for (int round = 0; round < most_rounds; ++round) {
+      for (const std::string_view name : order_.on_native) {
+        if (context_.out_of_time()) return false;
+        step(name, circuit, true);
+      }
+      const double now = tally_of(circuit, context_.cost).error;
+      if (now >= error * (1 - 1e-9) || context_.effort == Effort::quick) return true;
+      error = now;
     }
+    return true;
+  }
+
+  void step(std::string_view name, Circuit& circuit, bool is_lowered) {
     TraceRow row;
-    row.order = order_;
-    row.pass = pass_name;
+    row.order = order_.name;
+    row.pass = name;
     row.is_lowered = is_lowered;
     row.gates_before = size_of(circuit);
     if (is_lowered) row.before = tally_of(circuit, context_.cost);
     const auto start = Clock::now();
-    circuit = pass->run(std::move(circuit), context_);
+    circuit = pass_named(name).run(std::move(circuit), context_);
     row.seconds = seconds_since(start);
     row.gates_after = size_of(circuit);
-    if (is_lowered) row.after = tally_of(circuit, context_.cost);
+    if (is_lowered || name == "lower") row.after = tally_of(circuit, context_.cost);
     rows_.push_back(std::move(row));
-    return circuit;
   }
 
- private:
-  std::string order_;
-  const PassContext& context_;
-  std::vector<TraceRow>& rows_;
+  const Order& order_;
+  PassContext context_;
+  Circuit circuit_;
+  std::vector<TraceRow> rows_;
+  TraceResult result_;
 };
+
+/// Runs all candidates on up to `threads` threads. An exception of one is thrown on when all have ended.
+void run_all(std::vector<Candidate>& candidates, const Circuit& source, unsigned threads) {
+  std::atomic<std::size_t> next = 0;
+  std::vector<std::exception_ptr> failures(candidates.size());
+  const auto work = [&] {
+    for (std::size_t i = next++; i < candidates.size(); i = next++) {
+      try {
+        candidates[i].run(source);
+      } catch (...) {
+        failures[i] = std::current_exception();
+      }
+    }
+  };
+  std::vector<std::jthread> helpers;
+  for (unsigned t = 1; t < std::min<std::size_t>(threads, candidates.size()); ++t) helpers.emplace_back(work);
+  work();
+  helpers.clear();  // joins
+  for (const std::exception_ptr& failure : failures) {
+    if (failure) std::rethrow_exception(failure);
+  }
+}
 
 }  // namespace
 
 Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace) {
-  Trace ignored;
-  Trace& told = trace ? *trace : ignored;
-  const auto start = Clock::now();
-  Runner runner("plain", context, told.rows);
-  Circuit circuit = runner.run("rename-swaps", source, false);
-  circuit = runner.run("expand-controls", std::move(circuit), false);
-  circuit = runner.run("lower", std::move(circuit), false);
-  told.results.push_back({"plain", tally_of(circuit, context.cost), seconds_since(start), true, true});
-  return circuit;
+  std::vector<Candidate> candidates;
+  if (context.effort == Effort::quick) {
+    candidates.emplace_back(quick_order, context);
+  } else {
+    for (const Order& order : steady_orders()) candidates.emplace_back(order, context);
+  }
+  run_all(candidates, source, context.threads);
+  // The first of equals wins, so that the outcome does not hang on which thread was faster.
+  const auto best = std::min_element(candidates.begin(), candidates.end(), [](auto& a, auto& b) {
+    return a.result().tally.error < b.result().tally.error;
+  });
+  if (trace) {
+    for (Candidate& candidate : candidates) {
+      for (TraceRow& row : candidate.rows()) trace->rows.push_back(std::move(row));
+      trace->results.push_back(candidate.result());
+      trace->results.back().is_winner = &candidate == &*best;
+    }
+  }
+  return std::move(best->circuit());
 }
 
 }  // namespace isinglass

@@ -2,8 +2,11 @@
 #include "passes/constructions.h"
 #include "passes/expand_controls.h"
 #include "passes/lower.h"
+#include "passes/merge_distant.h"
+#include "passes/merge_rotations.h"
 #include "passes/pass.h"
 #include "passes/rename_swaps.h"
+#include "passes/two_qubit_stretches.h"
 
 namespace isinglass {
 
@@ -17,6 +20,14 @@ constexpr Pass table[] = {
      choose_constructions},
     // To the machine's gates.
     {"lower", "gates on two wires become r, xx and rz with the fewest pulses", lower},
+    // On the machine's gates.
+    {"merge-rotations", "interactions about the same axes add up through what shares their axes",
+     merge_rotations},
+    {"merge-distant", "rotations about the same Pauli string add up through all that commutes with it",
+     merge_distant_rotations},
+    {"two-qubit-stretches", "what happens on one pair is done with the fewest interactions and least angle",
+     two_qubit_stretches},
+    {"mirrored-stretches", "the same, where a swap of the wires' names makes it cheaper", mirrored_stretches},
 };
 
 }  // namespace

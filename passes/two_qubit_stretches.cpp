@@ -7,8 +7,8 @@
 // Stretches are gathered through what they commute with, multiplied out and written anew from the canonical
 // decomposition: 2x, 2y, 2|z| are the least angles (Vidal, Hammerer, Cirac, PRL 88, 237902) and their number,
 // zeros left out, is least (compare Peterson, Crooks, Smith, arXiv:1904.10541). Counts are decided on the
-// coordinates themselves, so small angles are never taken for nothing. Where the unitary times SWAP is cheaper
-// and the wires may change names, it is taken (Cross et al., PRA 100, 032328).
+// coordinates themselves, so small angles are never taken for nothing. Where the unitary times SWAP is
+// cheaper and the wires may change names, it is taken (Cross et al., PRA 100, 032328).
 #include "passes/two_qubit_stretches.h"
 
 #include "passes/stretches.h"
@@ -75,8 +75,8 @@ class Resynthesis {
     Origin origin;
     for (const Item& item : old) origin = form_.shell.origins.merged(origin, item.origin);
     out.resize(start);
-    write_canonical(best, wire, origin, out, pusher);
     if (is_mirrored) pusher.exchange(wire[0], wire[1]);
+    write_canonical(best, wire, origin, out, pusher);
   }
 
   AxisForm& form_;
@@ -84,7 +84,7 @@ class Resynthesis {
   bool may_rename_;
 };
 
-Circuit resynthesized(const Circuit& circuit, const PassContext& context, bool may_rename) {
+Circuit resynthesized(Circuit circuit, const PassContext& context, bool may_rename) {
   AxisForm form = axis_form(circuit);
   Resynthesis resynthesis(form, context.cost, may_rename);
   for (AxisBlock& block : form.blocks) {
@@ -92,17 +92,17 @@ Circuit resynthesized(const Circuit& circuit, const PassContext& context, bool m
       resynthesis.run(block, direction);
     }
   }
-  return native_form(form, context.promise);
+  return better_of(std::move(circuit), native_form(form, context.promise), context.cost);
 }
 
 }  // namespace
 
 Circuit two_qubit_stretches(Circuit circuit, const PassContext& context) {
-  return resynthesized(circuit, context, false);
+  return resynthesized(std::move(circuit), context, false);
 }
 
 Circuit mirrored_stretches(Circuit circuit, const PassContext& context) {
-  return resynthesized(circuit, context, true);
+  return resynthesized(std::move(circuit), context, true);
 }
 
 }  // namespace isinglass
