@@ -32,6 +32,9 @@ const std::vector<Order>& steady_orders() {
       {"distant",
        {"rename-swaps", "expand-controls", "merge-distant"},
        {"merge-rotations", "two-qubit-stretches", "mirrored-stretches", "merge-distant"}},
+      {"networks",
+       {"rename-swaps", "expand-controls", "merge-distant", "rotation-networks"},
+       {"merge-rotations", "two-qubit-stretches", "mirrored-stretches"}},
   };
   return orders;
 }

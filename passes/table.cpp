@@ -6,6 +6,7 @@
 #include "passes/merge_rotations.h"
 #include "passes/pass.h"
 #include "passes/rename_swaps.h"
+#include "passes/rotation_networks.h"
 #include "passes/two_qubit_stretches.h"
 
 namespace isinglass {
@@ -18,6 +19,9 @@ constexpr Pass table[] = {
     {"expand-controls", "gates with several controls become gates on two wires", expand_controls},
     {"choose-constructions", "gates with several controls get their cheapest construction, with idle wires",
      choose_constructions},
+    // On gates with up to one control; what it rewrites comes out as r, xx and rz.
+    {"rotation-networks", "Pauli rotations are synthesized anew with shared basis changes",
+     synthesize_rotation_networks},
     // To the machine's gates.
     {"lower", "gates on two wires become r, xx and rz with the fewest pulses", lower},
     // On the machine's gates.
