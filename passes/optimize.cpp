@@ -23,14 +23,14 @@ struct Order {
 };
 
 // All candidates begin by making every gate a gate on two wires, each in its own way.
-const Order quick_order = {"quick", {"rename-swaps", "expand-controls"}, {"merge-rotations"}};
+const Order quick_order = {"quick", {"rename-swaps", "choose-constructions"}, {"merge-rotations"}};
 const std::vector<Order>& steady_orders() {
   static const std::vector<Order> orders = {
       {"blocks",
-       {"rename-swaps", "expand-controls"},
+       {"rename-swaps", "pair-toffolis", "choose-constructions"},
        {"merge-rotations", "two-qubit-stretches", "mirrored-stretches"}},
       {"distant",
-       {"rename-swaps", "expand-controls", "merge-distant"},
+       {"rename-swaps", "pair-toffolis", "choose-constructions", "merge-distant"},
        {"merge-rotations", "two-qubit-stretches", "mirrored-stretches", "merge-distant"}},
       {"networks",
        {"rename-swaps", "expand-controls", "merge-distant", "rotation-networks"},

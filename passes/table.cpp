@@ -4,6 +4,7 @@
 #include "passes/lower.h"
 #include "passes/merge_distant.h"
 #include "passes/merge_rotations.h"
+#include "passes/pair_toffolis.h"
 #include "passes/pass.h"
 #include "passes/rename_swaps.h"
 #include "passes/rotation_networks.h"
@@ -17,6 +18,8 @@ constexpr Pass table[] = {
     // On source gates.
     {"rename-swaps", "swaps of the program's body become new names of the wires", rename_swaps},
     {"expand-controls", "gates with several controls become gates on two wires", expand_controls},
+    {"pair-toffolis", "Toffolis whose phases cancel against each other take fewer interactions",
+     pair_toffolis},
     {"choose-constructions", "gates with several controls get their cheapest construction, with idle wires",
      choose_constructions},
     // On gates with up to one control; what it rewrites comes out as r, xx and rz.

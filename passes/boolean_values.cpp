@@ -1,0 +1,80 @@
+// Polynomials over GF(2); see boolean_values.h.
+#include "passes/boolean_values.h"
+
+#include <algorithm>
+#include <iterator>
+
+namespace isinglass {
+
+namespace {
+
+constexpr std::size_t longest = 64;          // monomials of any value
+constexpr std::size_t highest = 12;          // variables of a monomial
+constexpr std::ptrdiff_t most_products = 3;  // monomials of two variables or more in a sum
+
+}  // namespace
+
+BooleanValues::BooleanValues() {
+  intern({});
+  intern({Monomial{}});
+}
+
+BooleanValues::Value BooleanValues::intern(Polynomial polynomial) {
+  const auto [entry, is_new] = index_.try_emplace(std::move(polynomial), static_cast<Value>(table_.size()));
+  if (is_new) table_.push_back(entry->first);
+  return entry->second;
+}
+
+bool BooleanValues::is_short(const Polynomial& polynomial) {
+  const auto is_low = [](const Monomial& m) { return m.size() <= highest; };
+  return polynomial.size() <= longest && std::all_of(polynomial.begin(), polynomial.end(), is_low);
+}
+
+bool BooleanValues::is_nearly_linear(const Polynomial& polynomial) {
+  const auto is_product = [](const Monomial& m) { return m.size() > 1; };
+  return std::count_if(polynomial.begin(), polynomial.end(), is_product) <= most_products;
+}
+
+BooleanValues::Value BooleanValues::fresh() {
+  return intern({Monomial{variables_++}});
+}
+
+BooleanValues::Value BooleanValues::sum(Value a, Value b) {
+  if (a > b) std::swap(a, b);
+  if (const auto known = sums_.find({a, b}); known != sums_.end()) return known->second;
+  Polynomial result;
+  std::set_symmetric_difference(table_[a].begin(), table_[a].end(), table_[b].begin(), table_[b].end(),
+                                std::back_inserter(result));
+  if (is_short(result) && is_nearly_linear(result)) return sums_[{a, b}] = intern(std::move(result));
+  // A name of its own, so that a carry's polynomial does not grow with its place; taking back what was added
+  // gives the old value again.
+  const Value named = fresh();
+  sums_[std::minmax(named, a)] = b;
+  sums_[std::minmax(named, b)] = a;
+  return sums_[{a, b}] = named;
+}
+
+BooleanValues::Value BooleanValues::product(Value a, Value b) {
+  if (a > b) std::swap(a, b);
+  if (const auto known = products_.find({a, b}); known != products_.end()) return known->second;
+  Polynomial terms;
+  for (const Monomial& left : table_[a]) {
+    for (const Monomial& right : table_[b]) {
+      Monomial both;
+      std::set_union(left.begin(), left.end(), right.begin(), right.end(), std::back_inserter(both));
+      terms.push_back(std::move(both));
+    }
+  }
+  std::sort(terms.begin(), terms.end());
+  Polynomial result;  // equal monomials cancel in pairs
+  for (Monomial& term : terms) {
+    if (!result.empty() && result.back() == term) {
+      result.pop_back();
+    } else {
+      result.push_back(std::move(term));
+    }
+  }
+  return products_[{a, b}] = is_short(result) ? intern(std::move(result)) : fresh();
+}
+
+}  // namespace isinglass
