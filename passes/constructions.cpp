@@ -491,26 +491,13 @@ class Simplifier {
     write_.phase(controls_, {parts.phase}, idle_);
   }
 
-  /// U(t, f, l) = e^{i(t+f+l)/2} Rz(f) Ry(t) Rz(l): with s = (f+l)/2 and d = (f-l)/2,
-  /// Rz(d) [Rz(s) Ry(t) Rz(s)] Rz(-d), and only the bracket needs the controls.
+  /// U(t, f, l) = e^{i(t+f+l)/2} [Rz(f) Ry(t) Rz(-f)] Rz(f+l), the bracket a rotation about the equator.
   void symbolic_unitary() {
     Forms& forms = circuit_.forms;
-    const std::uint32_t target = targets_[0];
-    const Angle t = op_.angle(0);
-    const Angle sum = forms.scaled(forms.sum(op_.angle(1), op_.angle(2)), 0.5);
-    const Angle difference = forms.scaled(forms.difference(op_.angle(1), op_.angle(2)), 0.5);
-    const bool turns = !(t.is_known() && is_multiple(t.constant, 4 * pi, 0));
-    if (!turns) {
-      write_.rotation_z(controls_, target, forms.scaled(sum, 2), idle_);
-    } else {
-      write_.add(Kind::rz, {target}, {forms.negated(difference)});
-      const bool frames = !(sum.is_known() && is_multiple(sum.constant, 4 * pi, 0));
-      if (frames) write_.rotation_z(controls_, target, sum, idle_);
-      rotation_about_equator(target, t, {pi / 2});
-      if (frames) write_.rotation_z(controls_, target, sum, idle_);
-      write_.add(Kind::rz, {target}, {difference});
-    }
-    write_.phase(controls_, forms.sum(forms.scaled(t, 0.5), sum), idle_);
+    const Angle sum = forms.sum(op_.angle(1), op_.angle(2));
+    write_.rotation_z(controls_, targets_[0], sum, idle_);
+    rotation_about_equator(targets_[0], op_.angle(0), forms.sum(op_.angle(1), {pi / 2}));
+    write_.phase(controls_, forms.scaled(forms.sum(op_.angle(0), sum), 0.5), idle_);
   }
 
   /// Controlled swap = CX(b, a) CCX(c, a; b) CX(b, a). With one control the first CX joins the CZ(a, b) that
