@@ -84,7 +84,8 @@ class JsonRows {
       out_.add(", \"bits\": [", json_text(bits_[row.op->payload]), "]");
     }
     if (entry.kind == TimedKind::compute) {
-      out_.add(", \"statement\": ", json_text(statement_text(circuit_.statements[row.op->payload], circuit_)));
+      out_.add(", \"statement\": ",
+               json_text(statement_text(circuit_.statements[row.op->payload], circuit_)));
     }
     if (entry.kind == TimedKind::decide) {
       out_.add(", \"condition\": ", json_text(branch_text(circuit_.branches[row.op->payload], circuit_)));
