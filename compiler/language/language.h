@@ -1,8 +1,8 @@
 // The one door of this room: the text of an OpenQASM program in, a Circuit or messages out.
 //
-// What is known while compiling is evaluated, loops are unrolled and calls inlined; what depends on an `input`
-// becomes an angle affine in the inputs (or a derived input); what depends on measured bits is kept as
-// classical statements and branches. See README.md in this folder.
+// What is known while compiling is evaluated, loops are unrolled and calls inlined; what depends on an
+// `input` becomes an angle affine in the inputs (or a derived input); what depends on measured bits is kept
+// as classical statements and branches. See README.md in this folder.
 #pragma once
 
 #include <cstddef>
@@ -40,8 +40,8 @@ struct Reading {
 };
 
 /// Reads one whole program. `file_name` is for messages only, and for finding included files: those named by
-/// `include` are sought beside it and then in the current directory; stdgates.inc and qelib1.inc are built in.
-/// Never throws for bad input, whatever the bytes.
+/// `include` are sought beside it and then in the current directory; stdgates.inc and qelib1.inc are built
+/// in. Never throws for bad input, whatever the bytes.
 Reading read(const std::string& file_name, std::string_view text, const ReadOptions& options = {});
 
 }  // namespace isinglass

@@ -49,4 +49,52 @@ struct PlainCall {
   syntax::Span at;                         // the call without its `;`
 };
 
+/// A place in a text: a byte offset, and line and column counted from 1, the column in characters.
+struct Position {
+  std::size_t offset = 0;
+  std::size_t line = 1;
+  std::size_t column = 1;
+};
+
+/// Reads plain calls from one text.
+class PlainReader {
+ public:
+  PlainReader(std::string_view text, std::uint16_t source) : text_(text), source_(source) {}
+
+  /// Moves over blanks, line ends and comments that end with their line.
+  void skip_blanks(Position& position) const;
+
+  /// The plain call that starts at `position`, in language version 2 or 3, or null when what stands there has
+  /// not exactly that form. Never reads beyond the line. `end` is set to the place behind its `;`.
+  const PlainCall* read(const Position& position, int language, Position& end);
+
+  const PlainNames& names() const { return names_; }
+
+ private:
+  /// A number as the language has it: in version 3, integers stay integers until they meet a float.
+  struct Number {
+    double real = 0;
+    std::int64_t integer = 0;
+    bool is_integer = false;
+  };
+
+  bool angles(int language);
+  bool sum(int language, Number& result);
+  bool product(int language, Number& result);
+  bool factor(int language, Number& result);
+  bool operands();
+  std::string_view name();
+  void blanks();
+  bool take(char c);
+  char here() const { return at_ < text_.size() ? text_[at_] : '\0'; }
+
+  std::string_view text_;
+  std::uint16_t source_;
+  PlainNames names_;
+  PlainCall call_;
+  std::vector<double> angles_;
+  std::vector<PlainOperand> operands_;
+  std::size_t at_ = 0;
+};
+
 }  // namespace isinglass
