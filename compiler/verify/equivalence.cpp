@@ -9,6 +9,7 @@
 #include "verify/dense.h"
 #include "verify/memory.h"
 #include "verify/programs.h"
+#include "verify/rotations.h"
 #include "verify/trim.h"
 
 namespace isinglass {
@@ -193,8 +194,14 @@ bool same_bit_numbers(const Job& job, const Shown& shown) {
   return true;
 }
 
+/// Whether both circuits measure the same bits, at the end only or not at all.
+bool is_simple(const Job& job, const Shown& shown) {
+  return measures_only_at_end(job.source) && measures_only_at_end(job.compiled) &&
+         measured_bits(job.source) == measured_bits(job.compiled) && same_bit_numbers(job, shown);
+}
+
 /// The method that decides most at a bearable cost.
-Verdict compare_densely(const Job& job) {
+Verdict compare_densely(const Job& job, const Shown& shown) {
   const unsigned wires = std::max(job.source.wires, job.compiled.wires);
   const bool are_fragments = is_fragment(job.source) && is_fragment(job.compiled);
   if (are_fragments && !job.promise.keep_bits_only) {
@@ -202,16 +209,36 @@ Verdict compare_densely(const Job& job) {
         !job.promise.zero_start && job.source.source_qubits + wires <= 2 * job.options.most_unitary_wires;
     return whole ? compare_unitaries(job) : compare_states(job);
   }
-  const Shown shown = shown_variables(job.source, job.compiled);
-  if (!shown.missing.empty()) {
-    return different("The compiled program has no variable " + shown.missing + " of the source's type.");
-  }
-  const bool simple = measures_only_at_end(job.source) && measures_only_at_end(job.compiled) &&
-                      measured_bits(job.source) == measured_bits(job.compiled) &&
-                      same_bit_numbers(job, shown);
   const bool small = wires <= 6;  // where references can cover every input at once
-  if (simple && (job.promise.zero_start || !small)) return compare_states(job);
+  if (is_simple(job, shown) && (job.promise.zero_start || !small)) return compare_states(job);
   return compare_programs(job, shown);
+}
+
+/// Without amplitudes: what the Pauli rotations of both show.
+Verdict compare_rotations(const Job& job, const Shown& shown) {
+  if (!is_simple(job, shown)) {
+    return not_shown("The programs are too large for state vectors, and measure on the way.");
+  }
+  RotationResult worst;
+  worst.state = RotationResult::State::cancelled;
+  const int sets = for_each_input_set(job, [&](const InputValues& values) {
+    if (worst.state != RotationResult::State::cancelled) return;
+    const double before = worst.distance;
+    worst = by_rotations(job, values);
+    worst.distance = std::max(worst.distance, before);
+  });
+  const std::string both = fmt::format(
+      "Both circuits were written as Pauli rotations ({} in all) and a Clifford part", worst.rotations);
+  if (worst.state == RotationResult::State::stuck) {
+    return not_shown(fmt::format(
+        "{}; {} of them could not be cancelled against each other, which proves nothing.", both, worst.left));
+  }
+  const Deviation deviation{worst.distance, worst.distance * worst.distance, 0};
+  const std::string words =
+      worst.state == RotationResult::State::cancelled
+          ? both + "; all of them cancel and the Clifford part does nothing: this decides."
+          : both + "; what is left after all cancels is not nothing.";
+  return judged(job, "rotations", deviation, words + for_inputs(job, sets));
 }
 
 }  // namespace
@@ -239,12 +266,13 @@ Verdict compare(const Circuit& source, const Circuit& compiled, const Promise& p
   if (const std::string name = missing_input(job); !name.empty()) {
     return different("The compiled program has no input " + name + ".");
   }
-  const unsigned wires = std::max(left.wires, right.wires);
-  if (wires > options.most_state_wires) {
-    return not_shown(fmt::format("{} qubits are in use: too many for state vectors.", wires));
+  const Shown shown = shown_variables(left, right);
+  if (!shown.missing.empty() && !(is_fragment(left) && is_fragment(right))) {
+    return different("The compiled program has no variable " + shown.missing + " of the source's type.");
   }
+  const bool is_dense = std::max(left.wires, right.wires) <= options.most_state_wires;
   try {
-    return compare_densely(job);
+    return is_dense ? compare_densely(job, shown) : compare_rotations(job, shown);
   } catch (const Unsupported& limit) {
     return not_shown(fmt::format("The comparison ended without a result: {} was beyond it.", limit.what()));
   }
