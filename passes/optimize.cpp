@@ -14,27 +14,35 @@ namespace {
 using Clock = std::chrono::steady_clock;
 using Names = std::vector<std::string_view>;
 
-/// A candidate: passes on source gates, then "lower", then passes on the machine's gates round and round
-/// until a round gains nothing, then "lower" once more for the normal form.
+/// A candidate: passes on source gates, among them one that leaves no gate on three wires; then "lower"; then
+/// passes on the machine's gates round and round until a round gains nothing; then "lower" once more for the
+/// normal form.
 struct Order {
   std::string_view name;
   Names on_source;
   Names on_native;
 };
 
-// All candidates begin by making every gate a gate on two wires, each in its own way.
 const Order quick_order = {"quick", {"rename-swaps", "choose-constructions"}, {"merge-rotations"}};
+
+// What every order but the quick one begins with, on the source's own gates.
+const Names first_of_all = {"rename-swaps", "known-start", "bits-at-end", "merge-gates"};
+// What every order but the quick one comes back to, on the machine's gates.
+const Names rounds = {"merge-rotations", "two-qubit-stretches", "trim-start", "trim-end",
+                      "mirrored-stretches"};
+
+Names operator+(Names names, const Names& more) {
+  names.insert(names.end(), more.begin(), more.end());
+  return names;
+}
+
 const std::vector<Order>& steady_orders() {
   static const std::vector<Order> orders = {
-      {"blocks",
-       {"rename-swaps", "pair-toffolis", "choose-constructions"},
-       {"merge-rotations", "two-qubit-stretches", "mirrored-stretches"}},
-      {"distant",
-       {"rename-swaps", "pair-toffolis", "choose-constructions", "merge-distant"},
-       {"merge-rotations", "two-qubit-stretches", "mirrored-stretches", "merge-distant"}},
-      {"networks",
-       {"rename-swaps", "expand-controls", "merge-distant", "rotation-networks"},
-       {"merge-rotations", "two-qubit-stretches", "mirrored-stretches"}},
+      {"blocks", first_of_all + Names{"pair-toffolis", "choose-constructions"}, rounds},
+      {"distant", first_of_all + Names{"pair-toffolis", "choose-constructions", "merge-distant"},
+       rounds + Names{"merge-distant"}},
+      {"networks", first_of_all + Names{"expand-controls", "merge-distant", "rotation-networks"}, rounds},
+      {"plain", first_of_all + Names{"expand-controls"}, rounds},
   };
   return orders;
 }

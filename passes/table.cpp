@@ -1,13 +1,18 @@
 // The table of all passes: name, sentence, function. To add one: include its header, add its row.
+#include "passes/bits_at_end.h"
 #include "passes/constructions.h"
 #include "passes/expand_controls.h"
+#include "passes/known_start.h"
 #include "passes/lower.h"
 #include "passes/merge_distant.h"
+#include "passes/merge_gates.h"
 #include "passes/merge_rotations.h"
 #include "passes/pair_toffolis.h"
 #include "passes/pass.h"
 #include "passes/rename_swaps.h"
 #include "passes/rotation_networks.h"
+#include "passes/trim_end.h"
+#include "passes/trim_start.h"
 #include "passes/two_qubit_stretches.h"
 
 namespace isinglass {
@@ -17,6 +22,9 @@ namespace {
 constexpr Pass table[] = {
     // On source gates.
     {"rename-swaps", "swaps of the program's body become new names of the wires", rename_swaps},
+    {"known-start", "controls that are known to hold 0 or 1 are resolved", known_start},
+    {"bits-at-end", "NOTs and swaps before the final measurements are done on the bits", bits_at_end},
+    {"merge-gates", "equal gates, controls included, add up or cancel through what commutes", merge_gates},
     {"expand-controls", "gates with several controls become gates on two wires", expand_controls},
     {"pair-toffolis", "Toffolis whose phases cancel against each other take fewer interactions",
      pair_toffolis},
@@ -34,6 +42,8 @@ constexpr Pass table[] = {
      merge_distant_rotations},
     {"two-qubit-stretches", "what happens on one pair is done with the fewest interactions and least angle",
      two_qubit_stretches},
+    {"trim-start", "interactions with known states do no more than the state needs", trim_start},
+    {"trim-end", "interactions that no measurement and no kept state can tell are dropped", trim_end},
     {"mirrored-stretches", "the same, where a swap of the wires' names makes it cheaper", mirrored_stretches},
 };
 

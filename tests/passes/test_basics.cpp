@@ -6,11 +6,17 @@
 #include <vector>
 
 #include "circuit/cost.h"
+#include "measured.h"
+#include "passes/bits_at_end.h"
 #include "passes/expand_controls.h"
+#include "passes/known_start.h"
 #include "passes/lower.h"
+#include "passes/merge_gates.h"
 #include "passes/merge_rotations.h"
 #include "passes/optimize.h"
 #include "passes/rename_swaps.h"
+#include "passes/trim_end.h"
+#include "passes/trim_start.h"
 #include "passes/two_qubit_stretches.h"
 #include "support/random_circuits.h"
 #include "support/simulator.h"
@@ -63,10 +69,15 @@ struct Subject {
 
 constexpr Subject subjects[] = {
     {"rename-swaps", rename_swaps, false},
+    {"known-start", known_start, false},
+    {"bits-at-end", bits_at_end, false},
+    {"merge-gates", merge_gates, false},
     {"expand-controls", expand_controls, false},
     {"merge-rotations", merge_rotations, true},
     {"two-qubit-stretches", two_qubit_stretches, true},
     {"mirrored-stretches", mirrored_stretches, true},
+    {"trim-start", trim_start, true},
+    {"trim-end", trim_end, true},
 };
 
 support::RandomCircuit wanted(support::Random& random, Family family) {
@@ -131,4 +142,77 @@ TEST_CASE("the whole keeps the unitary of random circuits") {
       }
     }
   }
+}
+
+namespace {
+
+/// Measurements at the end of some qubits, after the random ones in between, and now and then a barrier.
+Circuit random_program(support::Random& random, int qubits) {
+  support::RandomCircuit plan;
+  plan.qubits = qubits;
+  plan.gates = random.between(1, 25);
+  plan.most_controls = random.below(3);
+  plan.family = families[static_cast<std::size_t>(random.below(6))];
+  Circuit circuit = random.chance(0.5) ? support::random_measured_circuit(random, plan, qubits)
+                                       : support::random_circuit(random, plan);
+  if (circuit.bits == 0) add_bits(circuit, "c", static_cast<std::uint32_t>(qubits));
+  for (std::uint32_t q = 0; q < static_cast<std::uint32_t>(qubits); ++q) {
+    if (random.chance(0.2)) continue;
+    if (random.chance(0.1)) circuit.body().push_back(circuit.make(Kind::barrier, {q}));
+    Operation op = circuit.make(Kind::measure, {q});
+    op.payload = random.chance(0.05) ? no_bit : q;
+    circuit.body().push_back(op);
+  }
+  return circuit;
+}
+
+support::State random_start(support::Random& random, const Circuit& source, bool is_zero) {
+  support::State state(source.wires);
+  for (std::uint32_t q = 0; q < source.source_qubits && !is_zero; ++q) {
+    state.apply(support::haar_unitary(random, 1), std::span(&q, 1));
+  }
+  return state;
+}
+
+struct Kept {
+  const char* name;
+  Promise promise;
+};
+
+constexpr Kept promises[] = {{"any start", {false, false}},
+                             {"zero start", {true, false}},
+                             {"zero start, bits only", {true, true}},
+                             {"any start, bits only", {false, true}}};
+
+}  // namespace
+
+TEST_CASE("each pass and the whole keep what a measuring program promises") {
+  support::Random random(14);
+  const auto check = [&](const char* name, auto&& run, bool is_lowered, int trials) {
+    for (const Kept& kept : promises) {
+      PassContext context;
+      context.promise = kept.promise;
+      for (int trial = 0; trial < trials; ++trial) {
+        Circuit source = random_program(random, random.between(2, 4));
+        if (is_lowered) source = lower(expand_controls(source, context), context);
+        const Circuit result = run(source, context);
+        check_invariants(result);
+        const auto looked_at =
+            kept.promise.keep_bits_only ? std::vector<std::uint32_t>{} : support::unmeasured_at_end(source);
+        const support::State start = random_start(random, source, kept.promise.zero_start);
+        CAPTURE(std::string(name));
+        CAPTURE(std::string(kept.name));
+        CAPTURE(listed(source));
+        CAPTURE(listed(result));
+        CHECK(support::distance(support::outcomes_of(source, start, looked_at),
+                                support::outcomes_of(result, start, looked_at)) < 1e-9);
+      }
+    }
+  };
+  check(
+      "lower", [](const Circuit& c, const PassContext& p) { return lower(expand_controls(c, p), p); }, false,
+      60);
+  for (const Subject& subject : subjects) check(subject.name, subject.run, subject.is_lowered, 60);
+  check(
+      "whole", [](const Circuit& c, const PassContext& p) { return optimize(c, p); }, false, 100);
 }
