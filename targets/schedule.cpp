@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <cmath>
 
+#include "targets/leaks.h"
 #include "targets/list_schedule.h"
 
 namespace isinglass {
@@ -167,10 +168,11 @@ class Estimator {
     sums.depends(figure, 1, entry.error);
   }
 
-  void add_crosstalk(TimedOperation& entry, double theta, unsigned neighbours, Sums& sums) {
+  void add_crosstalk(TimedOperation& entry, const Operation& op, double theta, Sums& sums) {
     const double one = bounded(target_.leak_error(theta));
-    if (neighbours == 0 || one == 0) return;
-    entry.crosstalk = 1 - std::pow(1 - one, neighbours);
+    const unsigned count = leaks_of(op, placed_, target_).count;
+    if (count == 0 || one == 0) return;
+    entry.crosstalk = 1 - std::pow(1 - one, count);
     sums.lose(Source::crosstalk, entry.crosstalk);
     entry.error = 1 - (1 - entry.error) * (1 - entry.crosstalk);
   }
@@ -179,10 +181,7 @@ class Estimator {
     const std::uint32_t ion = op.operand[0];
     ++sums.r;
     single(entry, target_.ion[ion].pulse_error, Source::r, sums);
-    unsigned neighbours = 0;  // that hold something
-    if (ion > 0 && placed_.in_use[ion - 1]) ++neighbours;
-    if (ion + 1 < target_.ions && placed_.in_use[ion + 1]) ++neighbours;
-    add_crosstalk(entry, op.form[0] == 0 ? op.value[0] : pi, neighbours, sums);
+    add_crosstalk(entry, op, op.form[0] == 0 ? op.value[0] : pi, sums);
   }
 
   void interaction(TimedOperation& entry, const Operation& op, Sums& sums) {
@@ -200,15 +199,7 @@ class Estimator {
     sums.depends(pair.root, std::sqrt(s), entry.error);
     sums.depends(pair.slope, s, entry.error);
     sums.depends(pair.square, s * s, entry.error);
-    // A neighbour of one ion interacts with the other one, whether it holds something or not.
-    unsigned neighbours = 0;
-    const auto count_beside = [&](std::uint32_t ion, std::uint32_t partner) {
-      if (ion > 0 && ion - 1 != partner) ++neighbours;
-      if (ion + 1 < target_.ions && ion + 1 != partner) ++neighbours;
-    };
-    count_beside(a, b);
-    count_beside(b, a);
-    add_crosstalk(entry, theta, neighbours, sums);
+    add_crosstalk(entry, op, theta, sums);
   }
 
   /// Walks through all arms from the same beginning and goes on with the worst.
