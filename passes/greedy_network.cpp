@@ -6,6 +6,8 @@
 #include <cmath>
 #include <numeric>
 
+#include "passes/clifford_table.h"
+
 namespace isinglass {
 
 namespace {
@@ -124,6 +126,7 @@ class Greedy {
   std::optional<Sequence> run() {
     while (stretches_.interactions() <= limits_.interactions) {
       perform_singles();
+      if (live_ == 0 && taste_.uses_tables && step_by_table()) continue;
       if (live_ == 0 && is_home()) {
         finish();
         if (stretches_.interactions() > limits_.interactions) return std::nullopt;
@@ -474,6 +477,40 @@ class Greedy {
     return true;
   }
 
+  /// Takes the next turn of a shortest way home where only few wires are not yet there.
+  bool step_by_table() {
+    std::vector<unsigned> wires, lines;
+    std::uint64_t taken = 0;
+    for (unsigned k = 0; k < wires_; ++k) {
+      const Row& x = rows_[2 * k].string;
+      const bool is_alone = x.weight() == 1 && rows_[2 * k + 1].string.weight() == 1;
+      if (is_alone && (limits_.may_rename || x.support() == std::uint64_t{1} << k)) {
+        taken |= x.support();
+      } else {
+        lines.push_back(k);
+      }
+    }
+    if (lines.size() < 2 || lines.size() > limits_.tabled_wires) return false;
+    for (unsigned w = 0; w < wires_; ++w) {
+      if ((taken >> w & 1) == 0) wires.push_back(w);
+    }
+    std::vector<Row> rows;
+    for (const unsigned k : lines) {
+      for (unsigned row = 2 * k; row < 2 * k + 2; ++row) {
+        Row part;
+        for (unsigned i = 0; i < wires.size(); ++i) {
+          part.x |= (rows_[row].string.x >> wires[i] & 1) << i;
+          part.z |= (rows_[row].string.z >> wires[i] & 1) << i;
+        }
+        rows.push_back(part);
+      }
+    }
+    const auto step = clifford_step(rows, limits_.may_rename);
+    if (!step) return false;
+    conjugate_all({wires[step->a], wires[step->b], index_of(step->la), index_of(step->lb)});
+    return true;
+  }
+
   void finish() {
     for (unsigned k = 0; k < wires_; ++k) {
       const auto wire = static_cast<unsigned>(std::countr_zero(rows_[2 * k].string.support()));
@@ -522,6 +559,7 @@ Taste random_taste(Dice& dice) {
   taste.gamma = dice.real(0.25, 0.5);
   taste.kappa = std::exp(dice.real(std::log(0.015), std::log(0.2)));
   taste.clifford_power = dice.real(0.6, 1.0);
+  taste.uses_tables = dice.below(4) != 0;
   taste.noise = dice.below(2) == 0 ? 0 : dice.real(0, 0.2);
   return taste;
 }

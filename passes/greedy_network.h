@@ -48,6 +48,7 @@ struct Taste {
   double gamma = 0.4;
   double kappa = 0.05;
   double clifford_power = 1;
+  bool uses_tables = true;    // the last few wires of the Clifford go home the shortest way
   double noise = 0;           // gains are multiplied by up to 1 + noise at random
   unsigned layers = 6;        // deeper layers do not count
   std::size_t active = 1500;  // rotations looked at together
@@ -59,6 +60,7 @@ Taste random_taste(Dice& dice);
 struct Limits {
   int interactions = std::numeric_limits<int>::max();
   bool may_rename = true;
+  unsigned tabled_wires = 3;  // Clifford tables are used up to here; see clifford_table.h
 };
 
 /// A sequence for the network, or nullopt as soon as it takes more interactions than the limit. Without leave

@@ -2,9 +2,11 @@
 #include "passes/rotation_networks.h"
 
 #include <algorithm>
+#include <cmath>
 #include <numeric>
 #include <thread>
 
+#include "passes/clifford_table.h"
 #include "passes/stretch_rotations.h"
 #include "passes/window_search.h"
 
@@ -55,16 +57,18 @@ class PieceSolver {
 
   /// The best sequence found, or nullopt where none is better than the source.
   std::optional<Sequence> run() {
+    const double as_it_stands = error_of_pairs(source_);
     push_local_cliffords(source_, wires_);
     Candidate best{{source_, at_home(wires_)}, {}};
     best.price = price(best.sequence);
     const Price before = best.price;
-    if (before.interactions == 0) return std::nullopt;
     for (Candidate& candidate : candidates(before)) {
       if (candidate.price.error < best.price.error - 1e-12) best = std::move(candidate);
     }
-    search(best);
-    if (best.price.error > before.error - 1e-12) return std::nullopt;
+    search(best, steady_tries(source_.size()));
+    // More effort goes on from there, so that it never ends with more.
+    if (is_deep() && !is_tabled()) search(best, deep_tries(source_.size()));
+    if (best.price.error > as_it_stands - 1e-12) return std::nullopt;
     return std::move(best.sequence);
   }
 
@@ -74,6 +78,17 @@ class PieceSolver {
   }
   bool is_deep() const { return context_.effort == Effort::deep; }
 
+  /// Every pair turn as an interaction of its own.
+  double error_of_pairs(const std::vector<Turn>& turns) const {
+    double error = 0;
+    for (const Turn& turn : turns) {
+      if (!turn.is_pair()) continue;
+      const double angle = turn.angle.is_known() ? std::abs(std::remainder(turn.angle.constant, pi)) : pi / 2;
+      if (angle > least_interaction) error += context_.cost.interaction(angle) + 2 * context_.cost.pulse;
+    }
+    return error;
+  }
+
   // ---- starts
 
   std::vector<Candidate> candidates(const Price& before) {
@@ -81,7 +96,7 @@ class PieceSolver {
     if (!is_promising()) return found;
     const Network network = network_of(source_, wires_);
     const Network backwards = network_of(inverted(source_), wires_);
-    Limits limits{before.interactions, may_rename_};
+    Limits limits{before.interactions, may_rename_, may_rename_ || is_deep() ? 4u : 3u};
     const auto add = [&](std::optional<Sequence> sequence) {
       if (!sequence) return;
       const Price its = price(*sequence);
@@ -94,7 +109,7 @@ class PieceSolver {
     const double work = static_cast<double>(network.exponentials.size()) *
                         static_cast<double>(std::min<std::size_t>(network.exponentials.size(), 1500)) *
                         wires_;
-    const int restarts = static_cast<int>(std::clamp(2e6 / (work + 1), 1.0, 12.0)) * (is_deep() ? 2 : 1);
+    const int restarts = static_cast<int>(std::clamp(2e6 / (work + 1), 1.0, 12.0));
     for (int restart = 0; restart < restarts; ++restart) {
       if (restart > 0 && Clock::now() > begin_ + (deadline_ - begin_) / 8) break;
       const Taste taste = restart == 0 ? Taste() : random_taste(dice);
@@ -144,15 +159,19 @@ class PieceSolver {
 
   // ---- improvement
 
-  std::uint64_t tries(std::size_t turns) const {
-    const std::uint64_t size = turns;
-    if (!is_deep()) return std::min<std::uint64_t>(300 + size, 20 * size);
-    return deadline_ == Clock::time_point::max() ? 20000 + 100 * size
+  /// Windows to try, for a source of that many turns.
+  static std::uint64_t steady_tries(std::uint64_t turns) { return std::min(300 + turns, 20 * turns); }
+  std::uint64_t deep_tries(std::uint64_t turns) const {
+    return deadline_ == Clock::time_point::max() ? 20000 + 100 * turns
                                                  : std::numeric_limits<std::uint64_t>::max();
+  }
+  /// Whether the piece is a Clifford that the table has solved.
+  bool is_tabled() const {
+    return wires_ <= most_tabled_wires && may_rename_ && network_of(source_, wires_).exponentials.empty();
   }
 
   /// Searches windows, in parts where the sequence is long.
-  void search(Candidate& best) {
+  void search(Candidate& best, std::uint64_t tries) {
     std::vector<Turn>& turns = best.sequence.turns;
     const std::size_t parts = (turns.size() + part_length - 1) / part_length;
     Sequence result{{}, at_home(wires_)};
@@ -165,7 +184,7 @@ class PieceSolver {
       if (deadline != Clock::time_point::max()) {
         deadline = begin + (deadline_ - begin) * static_cast<int>(part + 1) / static_cast<int>(parts);
       }
-      search_part(piece, deadline, part);
+      search_part(piece, tries / parts, deadline, part);
       append(result, piece);
     }
     append(result, {{}, best.sequence.home});
@@ -174,9 +193,9 @@ class PieceSolver {
   }
 
   /// As many searches side by side as there are threads; the best of them counts.
-  void search_part(Sequence& piece, Clock::time_point deadline, std::size_t part) {
+  void search_part(Sequence& piece, std::uint64_t tries, Clock::time_point deadline, std::size_t part) {
     if (piece.turns.empty()) return;
-    SearchPlan plan{context_.cost, may_rename_, tries(piece.turns.size()), deadline};
+    SearchPlan plan{context_.cost, may_rename_, tries, deadline};
     std::vector<Sequence> sequences(std::max(1u, context_.threads), piece);
     std::vector<Price> prices(sequences.size());
     const auto work = [&](std::size_t island) {

@@ -143,7 +143,7 @@ class Search {
   std::optional<Sequence> solve(const std::vector<Turn>& cut, unsigned count, int most) {
     const bool backwards = dice_.below(2) == 0;
     const Network network = network_of(backwards ? inverted(cut) : cut, count);
-    auto solved = greedy_sequence(network, random_taste(dice_), {most, plan_.may_rename}, dice_);
+    auto solved = greedy_sequence(network, random_taste(dice_), {most, plan_.may_rename, 3}, dice_);
     if (solved && backwards) solved = inverted(*solved);
     return solved;
   }
