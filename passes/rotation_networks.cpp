@@ -160,7 +160,9 @@ class PieceSolver {
   // ---- improvement
 
   /// Windows to try, for a source of that many turns.
-  static std::uint64_t steady_tries(std::uint64_t turns) { return std::min(300 + turns, 20 * turns); }
+  static std::uint64_t steady_tries(std::uint64_t turns) {
+    return std::min({20 * turns, 300 + turns, 10000 + turns / 3});
+  }
   std::uint64_t deep_tries(std::uint64_t turns) const {
     return deadline_ == Clock::time_point::max() ? 20000 + 100 * turns
                                                  : std::numeric_limits<std::uint64_t>::max();
