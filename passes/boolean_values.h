@@ -29,6 +29,8 @@ class BooleanValues {
   Value sum(Value a, Value b);
   Value product(Value a, Value b);
   Value complement(Value a) { return sum(a, one); }
+  /// Whether the function is 1 where all variables are 0.
+  bool has_constant(Value a) const { return !table_[a].empty() && table_[a].front().empty(); }
 
  private:
   using Monomial = std::vector<std::uint32_t>;  // ascending variables; empty = the constant 1

@@ -9,6 +9,7 @@
 #include "passes/merge_rotations.h"
 #include "passes/pair_toffolis.h"
 #include "passes/pass.h"
+#include "passes/recover_toffolis.h"
 #include "passes/rename_swaps.h"
 #include "passes/rotation_networks.h"
 #include "passes/trim_end.h"
@@ -26,6 +27,8 @@ constexpr Pass table[] = {
     {"bits-at-end", "NOTs and swaps before the final measurements are done on the bits", bits_at_end},
     {"merge-gates", "equal gates, controls included, add up or cancel through what commutes", merge_gates},
     {"expand-controls", "gates with several controls become gates on two wires", expand_controls},
+    {"recover-toffolis", "Toffolis written out as Clifford and T gates become one operation again",
+     recover_toffolis},
     {"pair-toffolis", "Toffolis whose phases cancel against each other take fewer interactions",
      pair_toffolis},
     {"choose-constructions", "gates with several controls get their cheapest construction, with idle wires",
