@@ -162,19 +162,29 @@ class Stretch {
   }
 
   void look_at(std::uint32_t wire, std::size_t position) {
-    constexpr std::size_t look_ahead = 8;  // operations on the wire with others
-    const auto& shared = shared_at_[wire];
+    constexpr std::size_t most = 12;
     std::vector<std::uint32_t> partners;
-    auto next = std::lower_bound(shared.begin(), shared.end(), position);
-    for (std::size_t k = 0; k < look_ahead && next != shared.end(); ++k, ++next) {
-      for (const std::uint32_t other : circuit_.operands(operations_[*next])) {
-        const bool is_new = std::find(partners.begin(), partners.end(), other) == partners.end();
-        if (other != wire && is_new) partners.push_back(other);
-      }
-    }
+    meet(wire, position, 8, partners);
+    const std::vector<std::uint32_t> direct = partners;
+    for (const std::uint32_t partner : direct) meet(partner, position, 4, partners);
+    std::erase(partners, wire);
+    if (partners.size() > most) partners.resize(most);
     for (std::size_t a = 0; a < partners.size(); ++a) {
       for (std::size_t b = a + 1; b < partners.size(); ++b) {
         consider({wire, partners[a], partners[b]}, position);
+      }
+    }
+  }
+
+  /// Adds the wires that share the next few operations with `wire`.
+  void meet(std::uint32_t wire, std::size_t position, std::size_t operations,
+            std::vector<std::uint32_t>& partners) const {
+    const auto& shared = shared_at_[wire];
+    auto next = std::lower_bound(shared.begin(), shared.end(), position);
+    for (std::size_t k = 0; k < operations && next != shared.end(); ++k, ++next) {
+      for (const std::uint32_t other : circuit_.operands(operations_[*next])) {
+        const bool is_new = std::find(partners.begin(), partners.end(), other) == partners.end();
+        if (other != wire && is_new) partners.push_back(other);
       }
     }
   }
@@ -199,9 +209,10 @@ class Stretch {
     std::set<Value> distinct;
     for (const Bit& bit : triple.bits) distinct.insert(bit.value);
     if (distinct.size() < 7 || distinct.count(BooleanValues::zero) > 0) return;
-    // Other wires or times with the same seven sums differ by cz gates: the least that stays wins.
-    const auto [entry, is_new] = triples_.try_emplace(std::move(distinct), triple);
-    if (!is_new && left_over(triple) < left_over(entry->second)) entry->second = triple;
+    // Other wires or times with the same seven sums differ by cz gates.
+    std::vector<Triple>& alike = triples_[std::move(distinct)];
+    constexpr std::size_t most_alike = 16;
+    if (alike.size() < most_alike) alike.push_back(triple);
   }
 
   int left_over(const Triple& triple) const {
@@ -212,25 +223,25 @@ class Stretch {
     }
     return count;
   }
-  /// By how many the odd multiples of pi/4 become fewer.
+  /// How many phases vanish; 0 unless the odd multiples of pi/4 become fewer.
   int gain(const Triple& triple) const {
     int odd = 0;
-    for (const Bit& bit : triple.bits) odd += is_odd_eighth(phase(bit.value)) ? 1 : -1;
-    return odd;
+    int present = 0;
+    for (const Bit& bit : triple.bits) {
+      odd += is_odd_eighth(phase(bit.value)) ? 1 : -1;
+      present += is_multiple(phase(bit.value), 2 * pi, tolerance) ? 0 : 1;
+    }
+    return odd > 0 ? present - left_over(triple) : 0;
   }
 
   /// The triples of largest gain first, until none gains.
   void choose() {
-    std::vector<const Triple*> waiting;
-    for (const auto& [sums, triple] : triples_) waiting.push_back(&triple);
-    std::stable_sort(waiting.begin(), waiting.end(),
-                     [&](const Triple* a, const Triple* b) { return gain(*a) > gain(*b); });
-    for (int round = 0; round < 8; ++round) {
-      const std::size_t before = chosen_.size();
-      for (const Triple* triple : waiting) {
-        if (gain(*triple) >= (round == 0 ? 3 : 1)) take_out(*triple);
+    for (int least = 7; least > 0; --least) {
+      for (const auto& [sums, alike] : triples_) {
+        const auto best = std::max_element(
+            alike.begin(), alike.end(), [&](const Triple& a, const Triple& b) { return gain(a) < gain(b); });
+        if (gain(*best) >= least) take_out(*best);
       }
-      if (round > 0 && chosen_.size() == before) break;
     }
     std::stable_sort(chosen_.begin(), chosen_.end(),
                      [](const Triple& a, const Triple& b) { return a.position < b.position; });
@@ -286,7 +297,7 @@ class Stretch {
   std::vector<std::vector<std::size_t>> shared_at_;                    // by wire: operations with other wires
   std::map<Value, double> phases_;
   std::map<Value, Place> places_;
-  std::map<std::set<Value>, Triple> triples_;  // by their seven sums
+  std::map<std::set<Value>, std::vector<Triple>> triples_;  // by their seven sums
   std::vector<Triple> chosen_;
 };
 
@@ -406,6 +417,15 @@ class BetweenHs {
   Block& block_;
 };
 
+/// Interactions, roughly: 5 a Toffoli, 1 another operation on several wires.
+std::size_t weight(std::span<const Operation> operations) {
+  std::size_t sum = 0;
+  for (const Operation& op : operations) {
+    if (op.is_unitary() && op.operand_count > 1) sum += op.operand_count > 2 ? 5 : 1;
+  }
+  return sum;
+}
+
 void tidy(Circuit& circuit, Block& block) {
   for (std::size_t before = block.size() + 1; block.size() < before;) {
     before = block.size();
@@ -430,8 +450,8 @@ Circuit recover_toffolis(Circuit circuit, const PassContext&) {
       const std::span<const Operation> stretch(block.data() + from, to - from);
       std::optional<Block> better;
       if (!stretch.empty()) better = Stretch(circuit, stretch).rewritten();
-      if (better) {
-        tidy(circuit, *better);
+      if (better) tidy(circuit, *better);
+      if (better && weight(*better) <= weight(stretch)) {
         is_rewritten = true;
         result.insert(result.end(), better->begin(), better->end());
       } else {
