@@ -27,8 +27,6 @@ const Order quick_order = {"quick", {"rename-swaps", "choose-constructions"}, {"
 
 // What every order but the quick one begins with, on the source's own gates.
 const Names first_of_all = {"rename-swaps", "known-start", "bits-at-end", "merge-gates"};
-// Toffolis found and paired: what the orders without this make of them competes.
-const Names paired = {"recover-toffolis", "pair-toffolis"};
 // What every order but the quick one comes back to, on the machine's gates.
 const Names rounds = {"merge-rotations", "two-qubit-stretches", "trim-start", "trim-end",
                       "mirrored-stretches"};
@@ -39,12 +37,12 @@ Names operator+(Names names, const Names& more) {
 }
 
 const std::vector<Order>& steady_orders() {
+  // Toffolis found, before anything blurs them, and paired; the orders without this compete.
+  static const Names paired = Names{"recover-toffolis"} + first_of_all + Names{"pair-toffolis"};
   static const std::vector<Order> orders = {
-      {"blocks", first_of_all + paired + Names{"choose-constructions"}, rounds},
-      {"distant", first_of_all + paired + Names{"choose-constructions", "merge-distant"},
-       rounds + Names{"merge-distant"}},
-      {"paired phases", first_of_all + paired + Names{"expand-controls", "merge-distant"},
-       rounds + Names{"merge-distant"}},
+      {"blocks", paired + Names{"choose-constructions"}, rounds},
+      {"distant", paired + Names{"choose-constructions", "merge-distant"}, rounds + Names{"merge-distant"}},
+      {"paired phases", paired + Names{"expand-controls", "merge-distant"}, rounds + Names{"merge-distant"}},
       {"phases", first_of_all + Names{"expand-controls", "merge-distant"}, rounds + Names{"merge-distant"}},
       {"networks", first_of_all + Names{"expand-controls", "merge-distant", "rotation-networks"}, rounds},
       {"plain", first_of_all + Names{"expand-controls"}, rounds},

@@ -104,7 +104,6 @@ TEST_CASE("counts of the families from Toffolis") {
     const Circuit multiplier = support::gf_multiplier(n);
     const std::size_t toffolis = n * n;
     const std::size_t textbook = multiplier.body().size() + 5 * toffolis;
-    MESSAGE(n << ": " << count(multiplier) << " of " << textbook);
     CHECK(static_cast<double>(count(multiplier)) <= 0.845 * static_cast<double>(textbook));
   }
 }
