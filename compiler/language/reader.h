@@ -1,0 +1,348 @@
+// The reader: takes a program's statements one by one, runs what can be run while compiling, and builds the
+// circuit. Only files of this room include this header; everybody else uses language.h.
+//
+// Every value is in one of three stages (see value.h): known, affine in the inputs, or an expression. Every
+// variable either has a known value here or lives in a native variable of the running program ("runs").
+// Before code whose path depends on running values is entered (an arm, a loop), all variables that it may
+// assign are moved to native variables, so that both paths agree where they meet.
+//
+// The implementation is cut by topic: reader.cpp (statements in, messages), expressions.cpp, variables.cpp,
+// gates.cpp, statements.cpp, flow.cpp, timing.cpp.
+#pragma once
+
+#include <deque>
+#include <map>
+#include <memory>
+#include <optional>
+#include <set>
+#include <string>
+#include <string_view>
+#include <unordered_map>
+#include <vector>
+
+#include "language/language.h"
+#include "language/parser.h"
+#include "language/source.h"
+#include "language/symbols.h"
+#include "language/value.h"
+
+namespace isinglass {
+
+/// An error at a place; caught a statement at a time. With an empty text nothing is reported (the cause was).
+struct Trouble {
+  syntax::Span at;
+  std::string text;
+  std::vector<std::string> notes;
+};
+
+/// A limit was exceeded: reading ends.
+struct Overflow {
+  Trouble trouble;
+};
+
+/// Thrown where a quantum operand or angle depends on a running value of few bits: the statement is run again
+/// once for every value, each in its own arm.
+struct Split {
+  const syntax::Expression* node = nullptr;  // an index: its value is fixed in each arm; or
+  std::uint32_t variable = no_variable;      // a native variable, and
+  std::uint32_t bit = no_bit;                // if it has flat bits: which of them
+  Expression selector;
+  std::uint32_t count = 0;  // values 0 .. count-1
+  Type type;
+  syntax::Span at;
+};
+
+/// How a list of statements ends.
+enum class Ending : std::uint8_t {
+  falls,      // goes on with what follows
+  breaks,     // the rest of it is not reached: a `break` was met
+  continues,  // ... a `continue`
+  returns,    // ... a `return`
+  ends,       // ... an `end`
+};
+
+/// Qubits that an expression names.
+struct Qubits {
+  std::vector<std::uint32_t> wires;
+  bool is_scalar = false;
+};
+
+/// What may be read or assigned: a variable, cells of an array, bits of a register or number.
+struct Location {
+  Symbol* symbol = nullptr;
+  std::vector<Part> parts;  // cells or bits; empty = the whole symbol
+  bool parts_are_bits = false;
+  bool is_one = true;                // a whole scalar, one cell or one bit; else an array, slice or set
+  std::vector<std::uint32_t> shape;  // of an array or a part of one
+  Type type;                         // of the value; of an array its element type
+  std::vector<Expression> running;   // indices that are known only while running, of one cell or bit
+};
+
+class Reader final : public StatementSink {
+ public:
+  explicit Reader(const ReadOptions& options);
+
+  Reading run(const std::string& file_name, std::string_view text);
+
+  int language() const override;
+  bool plain_call(const PlainCall& call, const PlainNames& names) override;
+  void statement(syntax::Statement&& statement) override;
+  void syntax_message(Message message, std::vector<std::string> names) override;
+
+ private:
+  using SyntaxExpression = syntax::Expression;
+  using Statements = std::vector<syntax::Statement>;
+
+  // Messages (reader.cpp).
+  void report(const Trouble& trouble);
+  void warn(syntax::Span at, std::string text, std::vector<std::string> notes = {});
+  [[noreturn]] void fail(syntax::Span at, std::string text, std::vector<std::string> notes = {}) const;
+  /// Runs `action`; a Fault in it becomes a Trouble at this place.
+  template <class Action>
+  auto at_place(syntax::Span at, Action&& action) -> decltype(action()) {
+    try {
+      return action();
+    } catch (const Fault& fault) {
+      throw_fault(at, fault);
+    }
+  }
+  [[noreturn]] void throw_fault(syntax::Span at, const Fault& fault) const;
+  void count_step(syntax::Span at);
+  void note_broken(const syntax::Statement& statement);
+
+  // Files and versions (reader.cpp).
+  void decide_version(int version, syntax::Span at);
+  void take(syntax::Statement&& statement);
+  int version_of(const syntax::Statement& statement) const;
+  void declare_version(const syntax::Version& version, syntax::Span at);
+  void include(const syntax::Include& include, syntax::Span at);
+  void declare_built_ins();
+  void declare_library(Library which, syntax::Span at);
+  void finish();
+
+  // Names (variables.cpp).
+  Symbol& declare(Symbol symbol);
+  Symbol& found(std::string_view name, syntax::Span at, const char* what);
+  std::string native_name(const std::string& wanted, syntax::Span at);
+
+  // Types and constants (expressions.cpp).
+  Type scalar_type(const syntax::Type& type);
+  std::vector<std::uint32_t> array_shape(const syntax::Type& type);
+  std::uint32_t size_of(const SyntaxExpression& expression, std::uint32_t least, const char* what);
+  Value constant(const SyntaxExpression& expression, const char* what);
+
+  // Expressions (expressions.cpp).
+  Value evaluated(const SyntaxExpression& expression);
+  Value evaluated_unchecked(const SyntaxExpression& expression);
+  Value literal_value(const SyntaxExpression& expression);
+  Value call_value(const SyntaxExpression& expression);
+  Value size_value(const SyntaxExpression& expression);
+  Value timing_value(const SyntaxExpression& expression);
+  Value truth(const SyntaxExpression& expression);
+  Angle angle_of(const Value& value, syntax::Span at);
+  Angle angle_of(const SyntaxExpression& expression);
+  [[noreturn]] void split_on(const Expression& expression, syntax::Span at);
+  Angle derived_angle(const Value& value);
+  Angle wrapped_angle(Angle angle);
+  std::int64_t known_int(const SyntaxExpression& expression, const char* what);
+  /// The numbers that an index item selects out of `size`; is_one tells a plain index from a slice.
+  std::vector<std::uint32_t> indices(const SyntaxExpression& item, std::uint32_t size, bool& is_one,
+                                     const char* what);
+  std::vector<std::uint32_t> range_indices(const SyntaxExpression& range, std::uint32_t size, const char* what);
+  Rules rules() { return {forms_, version_ == 20}; }
+
+  // Qubits (expressions.cpp).
+  Qubits qubits_of(const SyntaxExpression& expression);
+  Symbol& hardware_qubit(const SyntaxExpression& expression);
+
+  // Variables (variables.cpp).
+  Location located(const SyntaxExpression& expression);
+  Location whole(Symbol& symbol);
+  Location indexed(const Location& base, const SyntaxExpression& expression);
+  Location indexed_cells(const Location& base, const SyntaxExpression& expression);
+  Location indexed_bits(const Location& base, const SyntaxExpression& item);
+  Value read(const Location& location, syntax::Span at);
+  Value read_symbol(Symbol& symbol, syntax::Span at);
+  Value read_bits(const Location& location, syntax::Span at);
+  void warn_unset(Symbol& symbol, const std::vector<Part>& bits, syntax::Span at);
+  void write(const Location& location, const Value& value, syntax::Span at);
+  void write_parts(const Location& location, const Value& value, syntax::Span at);
+  void mark_set(const Location& location);
+  /// Lets the running program hold the variable. Its value is told to it unless all of it is overwritten next.
+  void move_to_native(Symbol& symbol, bool overwritten = false, syntax::Span at = {});
+  std::uint32_t native_variable(Symbol& symbol);
+  std::uint32_t add_variable(const std::string& name, const std::string& source, Type type,
+                             const std::vector<std::uint32_t>& shape, syntax::Span at);
+  Expression native_cell(const Symbol& symbol, std::uint32_t cell) const;
+  Expression native_target(const Location& location) const;
+  std::optional<Expression> native_bits(const std::vector<Part>& parts) const;
+  std::uint32_t temporary_array(Symbol& symbol, syntax::Span at);
+  std::uint32_t temporary(Type type, const std::string& stem, std::size_t frame);
+  /// The value in a variable of its own, so that it stays what it is.
+  Value kept(const Value& value, const std::string& stem);
+  Value variable_value(std::uint32_t variable, Type type) const;
+  Value bit_value(std::uint32_t variable, std::uint32_t bit) const;
+  void close_scope();
+  void check_writable(const Location& location, syntax::Span at);
+  void write_array(const Location& location, const std::vector<Value>& values, syntax::Span at);
+  std::vector<Value> array_values(const SyntaxExpression& expression, Type type,
+                                  const std::vector<std::uint32_t>& shape);
+  Value assigned_value(const Value& value, Type type, syntax::Span at);
+
+  // Gates (gates.cpp).
+  struct Control {
+    std::uint32_t count = 0;
+    bool negated = false;
+  };
+  void define_gate(const syntax::GateDefinition& definition, syntax::Span at);
+  void declare_gate_arguments(const syntax::GateDefinition& definition);
+  std::vector<Angle> gate_arguments(const Symbol& gate, const std::vector<SyntaxExpression>& angles,
+                                    syntax::Span at);
+  void call_gate(const syntax::GateCall& call, syntax::Span at);
+  void call_old_form(const syntax::GateCall& call, const Symbol& symbol, syntax::Span at);
+  void for_each_call(const syntax::GateCall& call, const std::vector<Qubits>& operands,
+                     const std::function<void(const std::vector<std::uint32_t>&)>& one);
+  std::vector<Control> controls_of(const syntax::GateCall& call);
+  Acts modified(const syntax::GateCall& call, Acts acts, const std::vector<Control>& controls,
+                std::span<const std::uint32_t> wires);
+  Acts power_of(const syntax::Modifier& modifier, Acts acts);
+  void check_distinct(const std::vector<std::uint32_t>& wires, const std::vector<std::size_t>& owner,
+                      const std::vector<SyntaxExpression>& operands);
+  void emit(Kind kind, std::span<const std::uint32_t> wires, std::span<const Angle> angles, syntax::Span at);
+  void emit_template(const GateTemplate& gate, std::span<const Angle> arguments,
+                     std::span<const std::uint32_t> wires, syntax::Span at);
+  void append(Operation&& op, syntax::Span at);
+
+  // Statements (statements.cpp).
+  Ending run_list(const Statements& statements, std::size_t first = 0);
+  Ending run_statement(const syntax::Statement& statement);
+  Ending run_checked(const syntax::Statement& statement);
+  /// Runs `action`; where it needs a running value (see Split), once for every value in an arm of its own.
+  void with_splits(syntax::Span at, const std::set<std::string>& assigned, const std::function<void()>& action);
+  void run_split(const Split& split, const std::set<std::string>& assigned, const std::function<void()>& action);
+  void declare_qubits(const syntax::QubitDeclaration& declaration, syntax::Span at);
+  void declare_variable(const syntax::Declaration& declaration, syntax::Span at);
+  void declare_input(const syntax::Declaration& declaration, Symbol symbol, syntax::Span at);
+  void initialize(Symbol& symbol, const syntax::Declaration& declaration, syntax::Span at);
+  void declare_alias(const syntax::Alias& alias, syntax::Span at);
+  void measure(const syntax::Measurement& measurement, syntax::Span at);
+  void measure_into(const Qubits& qubits, const Location& target, syntax::Span at);
+  Value measured(const SyntaxExpression& expression, std::size_t frame);
+  void reset(const syntax::Reset& reset, syntax::Span at);
+  void barrier(const syntax::Barrier& barrier, syntax::Span at);
+  void assign(const syntax::Assignment& assignment, syntax::Span at);
+  void emit_statement(ClassicalStatement statement, syntax::Span at);
+  void emit_assignment(Expression target, Expression value, syntax::Span at);
+
+  // Timing (timing.cpp).
+  void delay(const syntax::Delay& delay, syntax::Span at);
+  Ending box(const syntax::Box& box, syntax::Span at);
+  Value duration_of(const SyntaxExpression& expression);
+
+  // Control flow (flow.cpp).
+  Ending run_block(const syntax::Body& body);
+  Ending run_if(const syntax::If& choice, syntax::Span at);
+  Ending run_for(const syntax::For& loop, syntax::Span at);
+  Ending run_while(const syntax::While& loop, syntax::Span at);
+  Ending run_running_while(const syntax::While& loop, syntax::Span at);
+  Ending run_running_for(const syntax::For& loop, Expression over, syntax::Span at);
+  Ending run_switch(const syntax::Switch& choice, syntax::Span at);
+  Ending run_round(const syntax::For& loop, Type type, const Value& value);
+  std::vector<Value> loop_values(const syntax::For& loop, Type type, std::optional<Expression>& running);
+  Ending exit_to(Ending ending, syntax::Span at);
+  Value call_subroutine(const Symbol& symbol, const std::vector<const SyntaxExpression*>& arguments,
+                        syntax::Span at);
+  void bind_argument(const syntax::Parameter& parameter, const SyntaxExpression& argument,
+                     std::vector<std::pair<std::string, Symbol*>>& references, std::vector<Symbol>& values,
+                     std::vector<std::uint32_t>& used);
+  void check_subroutine(const syntax::Subroutine& definition);
+  Value call_extern(const Symbol& symbol, const std::vector<const SyntaxExpression*>& arguments, syntax::Span at);
+  void run_return(const syntax::Return& statement, syntax::Span at);
+  std::uint32_t open_arm();
+  void close_arm();
+  void append_branch(Branch branch, syntax::Span at);
+  void move_assigned(const Statements& statements);
+  void move_assigned(const std::set<std::string>& names);
+  void collect_assigned(const syntax::Statement& statement, std::set<std::string>& names) const;
+  void collect_assigned(const SyntaxExpression& expression, std::set<std::string>& names) const;
+
+  /// Where `break`, `continue` or `return` lead. Targets are nested; the innermost is last.
+  struct Target {
+    enum class Kind : std::uint8_t { unrolled_loop, native_loop, subroutine };
+    Kind kind = Kind::unrolled_loop;
+    std::uint32_t block = 0;       // the block in which it began
+    std::size_t position = 0;      // in that block: where its flag is cleared
+    std::uint32_t flag = no_variable;           // left or returned
+    std::uint32_t continue_flag = no_variable;  // of the running round
+    std::size_t round_position = 0;
+    std::uint32_t round_block = 0;
+    // Of a subroutine.
+    Type result;
+    std::optional<Value> value;
+    std::uint32_t result_variable = no_variable;
+    std::size_t frame = 0;  // of temporaries, where the result may stay
+  };
+  std::uint32_t flag_of(Target& target, bool of_round, syntax::Span at);
+  void insert_clear(std::uint32_t block, std::size_t position, std::uint32_t flag);
+  /// Flags that may be set at this point and guard what follows.
+  std::vector<std::uint32_t> pending_;
+
+  const ReadOptions options_;
+  Sources sources_;
+  std::vector<Message> messages_;
+  std::set<std::string> reported_;
+  std::size_t errors_ = 0;
+
+  Circuit circuit_;
+  int version_ = 0;  // 0 = not known yet
+  bool version_given_ = false;
+  bool any_statement_ = false;
+  std::vector<syntax::Statement> waiting_;  // until the version is known
+  std::deque<syntax::Statement> kept_;      // definitions, whose syntax lives on
+  std::vector<std::string> include_stack_;
+
+  Scopes scopes_;
+  std::vector<std::unique_ptr<Symbol>> hardware_;  // `$0`, `$1`, ...: not declared, seen everywhere
+  Forms* forms_ = &circuit_.forms;
+  Acts* capture_ = nullptr;            // the body of a gate goes here
+  std::vector<Expression>* gate_derived_ = nullptr;  // and its derived parameters there
+  std::uint32_t gate_parameters_ = 0;
+  std::deque<GateTemplate> templates_;
+
+  std::uint32_t block_ = 0;  // that operations are appended to
+  std::vector<Angle> phase_ = std::vector<Angle>(1);  // of every block, not appended yet
+  std::vector<Target> targets_;
+  std::size_t call_depth_ = 0;
+  std::size_t steps_ = 0;
+  std::size_t operations_ = 0;
+  bool read_variable_ = false;  // an evaluation met something that is not constant
+
+  std::map<const syntax::Expression*, Value> fixed_;           // by splits
+  std::map<std::uint32_t, Value> fixed_variables_;             // native variables
+  std::map<std::uint32_t, bool> fixed_bits_;                   // flat bits
+  std::set<std::string> native_names_;
+  /// Native variables whose source variable is gone, by declaration and type, for the next of its kind.
+  std::map<std::pair<const void*, std::string>, std::vector<std::uint32_t>> free_variables_;
+  /// Temporary variables of the statements being run, outermost first; free again when theirs is done.
+  std::vector<std::vector<std::uint32_t>> temporaries_ = std::vector<std::vector<std::uint32_t>>(1);
+  std::map<std::string, std::uint32_t> derived_;  // by printed expression
+
+  bool has_ended_ = false;
+  std::size_t emitted_ = 0;  // operations, statements and phases so far
+  std::string gate_name_;    // of the gate being defined
+  std::vector<std::uint32_t> operand_buffer_;
+  bool pi_is_hidden_ = false;
+  std::uint64_t generation_ = 0;  // grows with every global declaration
+
+  struct PlainSymbol {
+    const Symbol* symbol = nullptr;
+    bool is_known = false;
+  };
+  const PlainNames* plain_names_ = nullptr;
+  std::uint64_t plain_generation_ = 0;
+  std::vector<PlainSymbol> plain_symbols_;
+  std::vector<std::uint32_t> plain_wires_;
+  std::vector<Angle> plain_angles_;
+};
+
+}  // namespace isinglass
