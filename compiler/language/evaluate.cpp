@@ -32,13 +32,15 @@ Value literal_value(const std::string& text) {
 std::size_t index_of(const Value& value, std::size_t size) {
   const auto index = value.integer.small();
   const auto limit = static_cast<std::int64_t>(size);
-  if (!value.is_known() || !index || *index < -limit || *index >= limit) throw Fault{"an index is out of range", {}};
+  if (!value.is_known() || !index || *index < -limit || *index >= limit)
+    throw Fault{"an index is out of range", {}};
   return static_cast<std::size_t>(*index < 0 ? *index + limit : *index);
 }
 
 }  // namespace
 
-Value evaluate(const Expression& expression, const std::function<Value(const Expression&)>& leaf, const Rules& rules) {
+Value evaluate(const Expression& expression, const std::function<Value(const Expression&)>& leaf,
+               const Rules& rules) {
   using K = Expression::Kind;
   const auto argument = [&](std::size_t i) { return evaluate(expression.arguments[i], leaf, rules); };
   switch (expression.kind) {

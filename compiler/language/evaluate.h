@@ -9,6 +9,7 @@ namespace isinglass {
 
 /// The value of an expression whose leaves (inputs, variables) `leaf` gives: it is called with nodes of kind
 /// input and variable. Throws Fault where the language's rules are broken.
-Value evaluate(const Expression& expression, const std::function<Value(const Expression&)>& leaf, const Rules& rules);
+Value evaluate(const Expression& expression, const std::function<Value(const Expression&)>& leaf,
+               const Rules& rules);
 
 }  // namespace isinglass

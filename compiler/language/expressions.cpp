@@ -35,7 +35,8 @@ double real_of(std::string_view text) {
 /// The variables' bits that a run-time expression depends on, one of them at a time.
 const Expression* first_variable(const Expression& expression) {
   if (expression.kind == Expression::Kind::variable) return &expression;
-  if (expression.kind == Expression::Kind::index && expression.arguments[0].kind == Expression::Kind::variable) {
+  if (expression.kind == Expression::Kind::index &&
+      expression.arguments[0].kind == Expression::Kind::variable) {
     const bool literal_index =
         expression.arguments.size() == 2 && expression.arguments[1].kind == Expression::Kind::literal;
     if (literal_index) return &expression;
@@ -76,7 +77,8 @@ std::uint32_t Reader::size_of(const SyntaxExpression& expression, std::uint32_t 
     fail(expression.at, fmt::format("{} of {} is too large", what, value.integer.to_string()));
   }
   if (*small < least) {
-    fail(expression.at, fmt::format("{} must be at least {}, not {}", what, least, value.integer.to_string()));
+    fail(expression.at,
+         fmt::format("{} must be at least {}, not {}", what, least, value.integer.to_string()));
   }
   return static_cast<std::uint32_t>(*small);
 }
@@ -267,7 +269,8 @@ Value Reader::size_value(const SyntaxExpression& expression) {
     dimension = given.value_or(-1);
   }
   if (dimension < 0 || dimension >= static_cast<std::int64_t>(shape.size())) {
-    fail(expression.at, fmt::format("this array has {} dimension{}", shape.size(), shape.size() == 1 ? "" : "s"));
+    fail(expression.at,
+         fmt::format("this array has {} dimension{}", shape.size(), shape.size() == 1 ? "" : "s"));
   }
   read_variable_ = before;
   return of_int(Integer(shape[static_cast<std::size_t>(dimension)]), {Base::natural, 0});
@@ -378,8 +381,8 @@ Angle Reader::angle_of(const Value& value, syntax::Span at) {
   if (value.is_known()) return at_place(at, [&] { return Angle{radians_of(value), 0}; });
   if (value.is_affine()) return {value.real, value.form};
   const Base base = value.type.base;
-  const bool is_angle = base == Base::real || base == Base::angle || base == Base::integer || base == Base::natural ||
-                        base == Base::boolean || base == Base::bit;
+  const bool is_angle = base == Base::real || base == Base::angle || base == Base::integer ||
+                        base == Base::natural || base == Base::boolean || base == Base::bit;
   if (!is_angle) fail(at, fmt::format("an angle is expected here, not {}", text_of(value.type)));
   if (!value.runs) {
     if (value.expression->kind == Expression::Kind::input) {
@@ -417,16 +420,18 @@ void Reader::split_on(const Expression& expression, syntax::Span at) {
     const bool is_truth = split.type.base == Base::boolean;
     if (native.type.starts_with("array") || (!is_small && !is_truth) || split.type.base == Base::real) {
       fail(at,
-           fmt::format("an angle that depends on `{}`, a {} known only while running, cannot be compiled", native.name,
-                       native.type),
-           {fmt::format("help: give it a type of at most {} bits, such as uint[4], or branch on it", most_split_bits)});
+           fmt::format("an angle that depends on `{}`, a {} known only while running, cannot be compiled",
+                       native.name, native.type),
+           {fmt::format("help: give it a type of at most {} bits, such as uint[4], or branch on it",
+                        most_split_bits)});
     }
     split.count = is_truth ? 2 : 1u << split.type.width;
     split.selector = *node;
     if (is_index) split.selector = node->arguments[0];
   }
   if (fixed_bits_.size() + fixed_variables_.size() >= most_split_bits) {
-    fail(at, fmt::format("this depends on more than {} running bits; it would need too many branches", most_split_bits));
+    fail(at, fmt::format("this depends on more than {} running bits; it would need too many branches",
+                         most_split_bits));
   }
   throw split;
 }
@@ -468,7 +473,8 @@ std::vector<std::uint32_t> Reader::range_indices(const SyntaxExpression& range, 
   if (step > 0 ? first > last : first < last) return result;
   for (std::int64_t i = first; step > 0 ? i <= last : i >= last;) {
     if (i < -limit || i >= limit) {
-      fail(range.at, fmt::format("index {} is out of range: the {} has {} element{}", i, what, size, size == 1 ? "" : "s"));
+      fail(range.at, fmt::format("index {} is out of range: the {} has {} element{}", i, what, size,
+                                 size == 1 ? "" : "s"));
     }
     result.push_back(static_cast<std::uint32_t>(i < 0 ? i + limit : i));
     if (__builtin_add_overflow(i, step, &i)) break;
@@ -498,8 +504,8 @@ std::vector<std::uint32_t> Reader::indices(const SyntaxExpression& item, std::ui
     const std::int64_t index = known_int(expression, "an index");
     const auto limit = static_cast<std::int64_t>(size);
     if (index < -limit || index >= limit) {
-      fail(expression.at,
-           fmt::format("index {} is out of range: the {} has {} element{}", index, what, size, size == 1 ? "" : "s"));
+      fail(expression.at, fmt::format("index {} is out of range: the {} has {} element{}", index, what, size,
+                                      size == 1 ? "" : "s"));
     }
     return static_cast<std::uint32_t>(index < 0 ? index + limit : index);
   };
@@ -560,7 +566,8 @@ Qubits Reader::qubits_of(const SyntaxExpression& expression) {
       is_scalar = copied.is_scalar;
     }
     if (is_scalar) {
-      fail(expression.at, capture_ != nullptr ? "the qubits of a gate have no index" : "a single qubit has no index");
+      fail(expression.at,
+           capture_ != nullptr ? "the qubits of a gate have no index" : "a single qubit has no index");
     }
     bool is_one = true;
     const auto chosen = indices(item, static_cast<std::uint32_t>(wires->size()), is_one, "register");

@@ -40,7 +40,7 @@ bool mentions(const syntax::Expression& expression, const std::set<std::string>&
 
 /// What can be told about a loop's body without running it.
 struct LoopFacts {
-  std::set<std::string> measured;  // names that get measurement results, directly or by way of others
+  std::set<std::string> measured;   // names that get measurement results, directly or by way of others
   bool leaves_on_measured = false;  // a break, return or end under a condition on such a name
 };
 
@@ -48,30 +48,44 @@ void inspect(const std::vector<syntax::Statement>& statements, LoopFacts& facts,
 
 void inspect(const syntax::Statement& statement, LoopFacts& facts, bool on_measured) {
   using namespace syntax;
-  const auto is_measured = [&](const Expression& value) {
-    return value.kind == Expression::Kind::measure || value.kind == Expression::Kind::call ||
+  const auto is_measured = [&](const syntax::Expression& value) {
+    return value.kind == syntax::Expression::Kind::measure || value.kind == syntax::Expression::Kind::call ||
            mentions(value, facts.measured);
   };
   if (const auto* s = std::get_if<Measurement>(&statement.what)) {
     if (const std::string* name = s->target ? base_name(*s->target) : nullptr) facts.measured.insert(*name);
-  } else if (const auto* s = std::get_if<Declaration>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Declaration>(&statement.what)) {
     if (s->value && is_measured(*s->value)) facts.measured.insert(s->name.text);
-  } else if (const auto* s = std::get_if<Assignment>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Assignment>(&statement.what)) {
     const std::string* name = base_name(s->target);
     if (name != nullptr && is_measured(s->value)) facts.measured.insert(*name);
-  } else if (const auto* s = std::get_if<If>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<If>(&statement.what)) {
     const bool inner = on_measured || mentions(s->condition, facts.measured);
     inspect(s->then.statements, facts, inner);
     if (s->otherwise) inspect(s->otherwise->statements, facts, inner);
-  } else if (const auto* s = std::get_if<Switch>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Switch>(&statement.what)) {
     const bool inner = on_measured || mentions(s->selector, facts.measured);
     for (const auto& arm : s->cases) inspect(arm.body.statements, facts, inner);
-  } else if (const auto* s = std::get_if<Body>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Body>(&statement.what)) {
     inspect(s->statements, facts, on_measured);
-  } else if (const auto* s = std::get_if<Box>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Box>(&statement.what)) {
     inspect(s->body.statements, facts, on_measured);
-  } else if (std::holds_alternative<Break>(statement.what) || std::holds_alternative<Return>(statement.what) ||
-             std::holds_alternative<End>(statement.what)) {
+    return;
+  }
+  if (std::holds_alternative<Break>(statement.what) ||
+             std::holds_alternative<Return>(statement.what) || std::holds_alternative<End>(statement.what)) {
     facts.leaves_on_measured = facts.leaves_on_measured || on_measured;
   }
 }
@@ -105,35 +119,57 @@ void Reader::collect_assigned(const syntax::Statement& statement, std::set<std::
   if (const auto* s = std::get_if<Assignment>(&statement.what)) {
     target(s->target);
     collect_assigned(s->value, names);
-  } else if (const auto* s = std::get_if<Measurement>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Measurement>(&statement.what)) {
     if (s->target) target(*s->target);
-  } else if (const auto* s = std::get_if<Declaration>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Declaration>(&statement.what)) {
     if (s->value) collect_assigned(*s->value, names);
-  } else if (const auto* s = std::get_if<ExpressionStatement>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<ExpressionStatement>(&statement.what)) {
     collect_assigned(s->value, names);
-  } else if (const auto* s = std::get_if<GateCall>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<GateCall>(&statement.what)) {
     for (const SyntaxExpression& angle : s->angles) {
       collect_assigned(angle, names);
       target(angle);
     }
-  } else if (const auto* s = std::get_if<Return>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Return>(&statement.what)) {
     if (s->value) collect_assigned(*s->value, names);
-  } else if (const auto* s = std::get_if<If>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<If>(&statement.what)) {
     collect_assigned(s->condition, names);
     all(s->then.statements);
     if (s->otherwise) all(s->otherwise->statements);
-  } else if (const auto* s = std::get_if<For>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<For>(&statement.what)) {
     collect_assigned(s->over, names);
     all(s->body.statements);
-  } else if (const auto* s = std::get_if<While>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<While>(&statement.what)) {
     collect_assigned(s->condition, names);
     all(s->body.statements);
-  } else if (const auto* s = std::get_if<Switch>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Switch>(&statement.what)) {
     collect_assigned(s->selector, names);
     for (const Switch::Case& arm : s->cases) all(arm.body.statements);
-  } else if (const auto* s = std::get_if<Body>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Body>(&statement.what)) {
     all(s->statements);
-  } else if (const auto* s = std::get_if<Box>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Box>(&statement.what)) {
     all(s->body.statements);
   }
 }
@@ -198,7 +234,8 @@ Ending Reader::run_guarded(const std::function<Ending()>& rest, const std::set<s
   move_assigned(assigned);
   std::vector<std::uint32_t> flags = std::exchange(pending_, {});
   Expression any = variable_of(flags[0]);
-  for (std::size_t i = 1; i < flags.size(); ++i) any = operation("||", {std::move(any), variable_of(flags[i])});
+  for (std::size_t i = 1; i < flags.size(); ++i)
+    any = operation("||", {std::move(any), variable_of(flags[i])});
   Branch branch;
   branch.condition = operation("!", {std::move(any)});
   branch.arms.push_back({{}, open_arm()});
@@ -263,7 +300,8 @@ Ending Reader::exit_to(Ending ending, syntax::Span at) {
       continue;
     }
     if (target.kind == Target::Kind::native_loop) {
-      native(ending == Ending::breaks ? ClassicalStatement::Kind::leave_loop : ClassicalStatement::Kind::next_round);
+      native(ending == Ending::breaks ? ClassicalStatement::Kind::leave_loop
+                                      : ClassicalStatement::Kind::next_round);
       return ending;
     }
     if (ending == Ending::continues ? block_ == target.round_block : block_ == target.block) return ending;
@@ -447,7 +485,8 @@ Ending Reader::run_for(const syntax::For& loop, syntax::Span at) {
   return result;
 }
 
-Reader::LoopValues Reader::loop_values(const syntax::For& loop, Type type, std::optional<Expression>& running) {
+Reader::LoopValues Reader::loop_values(const syntax::For& loop, Type type,
+                                       std::optional<Expression>& running) {
   const SyntaxExpression& over = loop.over;
   LoopValues values;
   if (over.kind == SyntaxExpression::Kind::range) {
@@ -457,12 +496,14 @@ Reader::LoopValues Reader::loop_values(const syntax::For& loop, Type type, std::
       }
     }
     Value first = evaluated(over.arguments[0]);
-    Value step = over.arguments[1].kind == SyntaxExpression::Kind::absent ? of_int(1) : evaluated(over.arguments[1]);
+    Value step =
+        over.arguments[1].kind == SyntaxExpression::Kind::absent ? of_int(1) : evaluated(over.arguments[1]);
     Value last = evaluated(over.arguments[2]);
     if (!first.is_known() || !step.is_known() || !last.is_known()) {
       Expression range;
       range.kind = Expression::Kind::range;
-      range.arguments = {expression_of(first, rules()), expression_of(step, rules()), expression_of(last, rules())};
+      range.arguments = {expression_of(first, rules()), expression_of(step, rules()),
+                         expression_of(last, rules())};
       running = std::move(range);
       return values;
     }
@@ -693,7 +734,8 @@ void Reader::define_subroutine(const syntax::Subroutine& definition, syntax::Spa
 }
 
 void Reader::define_extern(const syntax::Extern& definition, syntax::Span at) {
-  if (scopes_.depth() != 1 || block_ != 0) fail(at, "external functions are declared at the outermost level only");
+  if (scopes_.depth() != 1 || block_ != 0)
+    fail(at, "external functions are declared at the outermost level only");
   Symbol symbol;
   symbol.kind = Symbol::Kind::external;
   symbol.name = definition.name.text;
@@ -713,7 +755,8 @@ Value Reader::call_extern(const Symbol& symbol, const std::vector<const SyntaxEx
   const syntax::Extern& definition = *symbol.extern_definition;
   const bool is_statement = std::exchange(is_statement_call_, false);
   if (arguments.size() != definition.parameters.size()) {
-    fail(at, fmt::format("`{}` takes {} arguments, not {}", symbol.name, definition.parameters.size(), arguments.size()));
+    fail(at, fmt::format("`{}` takes {} arguments, not {}", symbol.name, definition.parameters.size(),
+                         arguments.size()));
   }
   if (capture_ != nullptr) fail(at, "a gate cannot call an external function");
   Expression call;
@@ -753,7 +796,8 @@ void Reader::bind_qubits(const syntax::Parameter& parameter, const SyntaxExpress
   if (!symbol.is_scalar) {
     const std::uint32_t size = size_of(parameter.type.width[0], 0, "the size of a register");
     if (size != qubits.wires.size()) {
-      fail(argument.at, fmt::format("a register of {} qubits is expected here, not of {}", size, qubits.wires.size()));
+      fail(argument.at,
+           fmt::format("a register of {} qubits is expected here, not of {}", size, qubits.wires.size()));
     }
   }
   for (const std::uint32_t wire : qubits.wires) {
@@ -771,12 +815,14 @@ void Reader::bind_array(const syntax::Parameter& parameter, const SyntaxExpressi
   const Location location = located(argument);
   if (location.shape.empty()) fail(argument.at, "an array is expected here");
   if (location.type != type) {
-    fail(argument.at, fmt::format("an array of {} is expected here, not of {}", text_of(type), text_of(location.type)));
+    fail(argument.at,
+         fmt::format("an array of {} is expected here, not of {}", text_of(type), text_of(location.type)));
   }
   if (!parameter.type.dimension_count.empty()) {
     const std::uint32_t count = size_of(parameter.type.dimension_count[0], 1, "the number of dimensions");
     if (count != location.shape.size()) {
-      fail(argument.at, fmt::format("an array of {} dimensions is expected here, not of {}", count, location.shape.size()));
+      fail(argument.at, fmt::format("an array of {} dimensions is expected here, not of {}", count,
+                                    location.shape.size()));
     }
   } else if (const auto shape = array_shape(parameter.type); shape != location.shape) {
     fail(argument.at, fmt::format("an array of shape [{}] is expected here, not [{}]", fmt::join(shape, ", "),
@@ -820,8 +866,10 @@ Value Reader::call_subroutine(const Symbol& symbol, const std::vector<const Synt
                          definition.parameters.size() == 1 ? "" : "s", arguments.size()));
   }
   if (call_depth_ >= options_.most_depth) {
-    throw Overflow{{at, fmt::format("calls nest deeper than {}", options_.most_depth),
-                    {"note: subroutines are inlined; a recursion must end by what is known while compiling"}}};
+    throw Overflow{
+        {at,
+         fmt::format("calls nest deeper than {}", options_.most_depth),
+         {"note: subroutines are inlined; a recursion must end by what is known while compiling"}}};
   }
   count_step(at);
   Bound bound;

@@ -31,7 +31,8 @@ void Reader::append(Operation&& op, syntax::Span at) {
   circuit_.blocks[block_].push_back(op);
 }
 
-void Reader::emit(Kind kind, std::span<const std::uint32_t> wires, std::span<const Angle> angles, syntax::Span at) {
+void Reader::emit(Kind kind, std::span<const std::uint32_t> wires, std::span<const Angle> angles,
+                  syntax::Span at) {
   if (capture_ != nullptr) {
     Act act;
     act.kind = kind;
@@ -39,7 +40,8 @@ void Reader::emit(Kind kind, std::span<const std::uint32_t> wires, std::span<con
     act.wires.assign(wires.begin(), wires.end());
     capture_->push_back(std::move(act));
     if (capture_->size() > options_.most_operations) {
-      throw Overflow{{at, fmt::format("the gate unrolls to more than {} operations", options_.most_operations), {}}};
+      throw Overflow{
+          {at, fmt::format("the gate unrolls to more than {} operations", options_.most_operations), {}}};
     }
     return;
   }
@@ -271,7 +273,8 @@ void Reader::call_gate(const syntax::GateCall& call, syntax::Span at) {
   if (symbol->kind == Symbol::Kind::subroutine || symbol->kind == Symbol::Kind::external) {
     return call_old_form(call, *symbol, at);
   }
-  if (symbol->kind != Symbol::Kind::gate) fail(call.name.at, fmt::format("`{}` is not a gate", call.name.text));
+  if (symbol->kind != Symbol::Kind::gate)
+    fail(call.name.at, fmt::format("`{}` is not a gate", call.name.text));
   if (symbol->is_opaque) {
     fail(call.name.at, fmt::format("`{}` is opaque: nothing says what it does", call.name.text),
          {"help: define it as a gate"});
@@ -291,8 +294,9 @@ void Reader::call_gate(const syntax::GateCall& call, syntax::Span at) {
   std::vector<Qubits> operands;
   for (const SyntaxExpression& operand : call.operands) operands.push_back(qubits_of(operand));
   if (call.modifiers.empty()) {
-    for_each_call(call, operands,
-                  [&](const std::vector<std::uint32_t>& wires) { emit_template(*symbol->gate, arguments, wires, at); });
+    for_each_call(call, operands, [&](const std::vector<std::uint32_t>& wires) {
+      emit_template(*symbol->gate, arguments, wires, at);
+    });
     return;
   }
   // Modified once on numbered wires, then copied to where it is called.
@@ -300,8 +304,8 @@ void Reader::call_gate(const syntax::GateCall& call, syntax::Span at) {
   for (std::uint32_t i = 0; i < expected; ++i) numbered[i] = i;
   const std::span<const std::uint32_t> formal(numbered);
   const Acts acts = modified(
-      call, instance(*symbol->gate, arguments, formal.subspan(expected - symbol->gate->operands), *forms_), controls,
-      formal);
+      call, instance(*symbol->gate, arguments, formal.subspan(expected - symbol->gate->operands), *forms_),
+      controls, formal);
   for_each_call(call, operands, [&](const std::vector<std::uint32_t>& wires) {
     std::vector<std::uint32_t> placed;
     for (const Act& act : acts) {
@@ -330,7 +334,8 @@ void Reader::for_each_call(const syntax::GateCall& call, const std::vector<Qubit
   for (std::size_t i = 0; i < operands.size(); ++i) owner[i] = i;
   std::vector<std::uint32_t> wires(operands.size());
   for (std::size_t k = 0; k < (any_register ? length : 1); ++k) {
-    for (std::size_t i = 0; i < operands.size(); ++i) wires[i] = operands[i].wires[operands[i].is_scalar ? 0 : k];
+    for (std::size_t i = 0; i < operands.size(); ++i)
+      wires[i] = operands[i].wires[operands[i].is_scalar ? 0 : k];
     check_distinct(wires, owner, call.operands);
     one(wires);
   }

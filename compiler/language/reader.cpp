@@ -18,14 +18,17 @@ constexpr std::size_t most_errors = 100;
 constexpr std::size_t most_includes = 64;
 
 constexpr std::array<std::string_view, 66> reserved_words = {
-    "OPENQASM", "include",  "defcalgrammar", "def",      "cal",     "defcal",   "gate",     "extern",  "box",
-    "let",      "break",    "continue",      "if",       "else",    "end",      "return",   "for",     "while",
-    "in",       "pragma",   "input",         "output",   "const",   "readonly", "mutable",  "qreg",    "qubit",
-    "creg",     "bool",     "bit",           "int",      "uint",    "float",    "angle",    "complex", "array",
-    "void",     "duration", "stretch",       "gphase",   "inv",     "pow",      "ctrl",     "negctrl", "durationof",
-    "delay",    "reset",    "measure",       "barrier",  "true",    "false",    "im",       "switch",  "case",
-    "default",  "nop",      "ion",           "r",        "xx",      "U",        "pi",       "tau",     "euler",
-    "sizeof",   "real",     "imag"};
+    "OPENQASM", "include",  "defcalgrammar", "def",    "cal",     "defcal",
+    "gate",     "extern",   "box",           "let",    "break",   "continue",
+    "if",       "else",     "end",           "return", "for",     "while",
+    "in",       "pragma",   "input",         "output", "const",   "readonly",
+    "mutable",  "qreg",     "qubit",         "creg",   "bool",    "bit",
+    "int",      "uint",     "float",         "angle",  "complex", "array",
+    "void",     "duration", "stretch",       "gphase", "inv",     "pow",
+    "ctrl",     "negctrl",  "durationof",    "delay",  "reset",   "measure",
+    "barrier",  "true",     "false",         "im",     "switch",  "case",
+    "default",  "nop",      "ion",           "r",      "xx",      "U",
+    "pi",       "tau",      "euler",         "sizeof", "real",    "imag"};
 
 /// Whether text waits to be spoken about as a file next to another.
 std::optional<std::string> file_contents(const std::filesystem::path& path) {
@@ -40,7 +43,8 @@ bool is_old(const syntax::Statement& statement) {
   if (const auto* qubits = std::get_if<syntax::QubitDeclaration>(&statement.what)) return qubits->old_form;
   if (const auto* bits = std::get_if<syntax::Declaration>(&statement.what)) return bits->old_form;
   if (const auto* gate = std::get_if<syntax::GateDefinition>(&statement.what)) return gate->opaque;
-  if (const auto* include = std::get_if<syntax::Include>(&statement.what)) return include->path.ends_with("qelib1.inc");
+  if (const auto* include = std::get_if<syntax::Include>(&statement.what))
+    return include->path.ends_with("qelib1.inc");
   return false;
 }
 
@@ -117,9 +121,10 @@ void Reader::throw_fault(syntax::Span at, const Fault& fault) const {
 
 void Reader::count_step(syntax::Span at) {
   if (++steps_ > options_.most_steps) {
-    throw Overflow{{at,
-                    fmt::format("more than {} steps while compiling", options_.most_steps),
-                    {"note: loops and calls whose course is known are run by the compiler; is this one endless?"}}};
+    throw Overflow{
+        {at,
+         fmt::format("more than {} steps while compiling", options_.most_steps),
+         {"note: loops and calls whose course is known are run by the compiler; is this one endless?"}}};
   }
 }
 
@@ -198,7 +203,8 @@ void Reader::declare_version(const syntax::Version& version, syntax::Span at) {
     }
     return decide_version(30 + static_cast<int>(std::min(version.minor, 2u)), at);
   }
-  report({at, fmt::format("OpenQASM {}.{} is not supported", version.major, version.minor),
+  report({at,
+          fmt::format("OpenQASM {}.{} is not supported", version.major, version.minor),
           {"note: versions 2.0 and 3.0 to 3.2 are"}});
   decide_version(version.major == 2 ? 20 : 31, at);
 }
@@ -281,7 +287,9 @@ void Reader::include(const syntax::Include& include, syntax::Span at) {
   if (include_stack_.size() >= most_includes) fail(at, "includes nest too deep");
   include_stack_.push_back(found.string());
   const std::uint16_t source = sources_.add(found.string(), std::move(*contents));
+  ++generation_;  // the included text numbers its names anew
   read_statements(sources_, source, *this);
+  ++generation_;
   include_stack_.pop_back();
 }
 
@@ -298,33 +306,32 @@ void Reader::take(syntax::Statement&& statement) {
   if (run_checked(statement) == Ending::ends) has_ended_ = true;
 }
 
-void Reader::finish() {
-  if (errors_ > 0) return;
-  // What the program's variables hold at the end is its result: known values are told to it as well.
-  const auto& globals = scopes_.innermost();
+/// What the program's variables hold at its end is its result: known values are told to it as well.
+void Reader::finish_values() {
+  const std::vector<Symbol*> globals = scopes_.globals();
   const bool any_output =
-      std::any_of(globals.begin(), globals.end(), [](const auto& symbol) { return symbol->is_output; });
+      std::any_of(globals.begin(), globals.end(), [](const Symbol* symbol) { return symbol->is_output; });
   const bool has_results = circuit_.measures();
-  if (!has_ended_) {
-    for (const auto& symbol : globals) {
-      if (symbol->kind != Symbol::Kind::variable || symbol->runs || !symbol->is_set) continue;
-      const bool is_result = symbol->is_output || (!any_output && has_results);
-      if (!is_result || symbol->type.base == Base::duration || symbol->type.base == Base::stretch) continue;
-      try {
-        move_to_native(*symbol);
-      } catch (const Fault& fault) {
-        report({symbol->at, fault.text, {}});
-      }
+  for (Symbol* symbol : globals) {
+    if (symbol->kind != Symbol::Kind::variable || symbol->runs || !symbol->is_set) continue;
+    const bool is_result = symbol->is_output || (!any_output && has_results);
+    if (!is_result || symbol->type.base == Base::duration || symbol->type.base == Base::stretch) continue;
+    try {
+      move_to_native(*symbol);
+    } catch (const Fault& fault) {
+      report({symbol->at, fault.text, {}});
     }
   }
+}
+
+void Reader::finish() {
+  if (errors_ > 0) return;
+  if (!has_ended_) finish_values();
   for (std::uint32_t block = 0; block < circuit_.blocks.size(); ++block) {
     Angle phase = phase_[block];
     if (phase.is_known()) phase.constant = wrapped(phase.constant);
     if (phase == Angle{}) continue;
     circuit_.blocks[block].push_back(circuit_.make(Kind::phase, {}, {phase}));
-  }
-  for (Variable& variable : circuit_.variables) {
-    if (!any_output && !variable.source.empty()) variable.is_output = false;
   }
 }
 
@@ -348,8 +355,8 @@ bool Reader::plain_call(const PlainCall& call, const PlainNames& names) {
       !gate->derived.empty()) {
     return false;
   }
-  if (call.angles.size() != gate->gate->parameters || call.operands.size() != gate->gate->operands) return false;
-  if (call.parentheses && call.angles.empty() && version_ == 20 && gate->gate->parameters != 0) return false;
+  if (call.angles.size() != gate->gate->parameters || call.operands.size() != gate->gate->operands)
+    return false;
   if (call.uses_pi && pi_is_hidden_) return false;
   plain_wires_.clear();
   for (const PlainOperand& operand : call.operands) {
@@ -359,7 +366,8 @@ bool Reader::plain_call(const PlainCall& call, const PlainNames& names) {
       if (!reg->is_scalar) return false;
       plain_wires_.push_back(reg->wires[0]);
     } else {
-      if (reg->is_scalar || operand.index < 0 || static_cast<std::size_t>(operand.index) >= reg->wires.size()) {
+      if (reg->is_scalar || operand.index < 0 ||
+          static_cast<std::size_t>(operand.index) >= reg->wires.size()) {
         return false;
       }
       plain_wires_.push_back(reg->wires[static_cast<std::size_t>(operand.index)]);

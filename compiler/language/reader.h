@@ -119,6 +119,7 @@ class Reader final : public StatementSink {
   void declare_built_ins();
   void declare_library(Library which, syntax::Span at);
   void finish();
+  void finish_values();
 
   // Names (variables.cpp).
   Symbol& declare(Symbol symbol);
@@ -148,7 +149,8 @@ class Reader final : public StatementSink {
   /// The numbers that an index item selects out of `size`; is_one tells a plain index from a slice.
   std::vector<std::uint32_t> indices(const SyntaxExpression& item, std::uint32_t size, bool& is_one,
                                      const char* what);
-  std::vector<std::uint32_t> range_indices(const SyntaxExpression& range, std::uint32_t size, const char* what);
+  std::vector<std::uint32_t> range_indices(const SyntaxExpression& range, std::uint32_t size,
+                                           const char* what);
   Rules rules() { return {forms_, version_ == 20}; }
 
   // Qubits (expressions.cpp).
@@ -158,6 +160,8 @@ class Reader final : public StatementSink {
   // Variables (variables.cpp).
   Location located(const SyntaxExpression& expression);
   Location whole(Symbol& symbol);
+  std::vector<Part> parts_of(const Location& location) const;
+  Location joined(const SyntaxExpression& expression);
   Location indexed(const Location& base, const SyntaxExpression& expression);
   Location indexed_cells(const Location& base, const SyntaxExpression& expression);
   Location indexed_bits(const Location& base, const SyntaxExpression& item);
@@ -168,7 +172,8 @@ class Reader final : public StatementSink {
   void write(const Location& location, const Value& value, syntax::Span at);
   void write_parts(const Location& location, const Value& value, syntax::Span at);
   void mark_set(const Location& location);
-  /// Lets the running program hold the variable. Its value is told to it unless all of it is overwritten next.
+  /// Lets the running program hold the variable. Its value is told to it unless all of it is overwritten
+  /// next.
   void move_to_native(Symbol& symbol, bool overwritten = false, syntax::Span at = {});
   std::uint32_t native_variable(Symbol& symbol);
   std::uint32_t add_variable(const std::string& name, const std::string& source, Type type,
@@ -217,14 +222,19 @@ class Reader final : public StatementSink {
   Ending run_list(const Statements& statements, std::size_t first = 0);
   Ending run_statement(const syntax::Statement& statement);
   Ending run_checked(const syntax::Statement& statement);
+  void run_plain_statement(const syntax::Statement& statement);
+  void run_expression(const syntax::ExpressionStatement& statement, const syntax::Statement& whole_statement);
   /// Runs `action`; where it needs a running value (see Split), once for every value in an arm of its own.
-  void with_splits(syntax::Span at, const std::set<std::string>& assigned, const std::function<void()>& action);
-  void run_split(const Split& split, const std::set<std::string>& assigned, const std::function<void()>& action);
+  void with_splits(syntax::Span at, const std::set<std::string>& assigned,
+                   const std::function<void()>& action);
+  void run_split(const Split& split, const std::set<std::string>& assigned,
+                 const std::function<void()>& action);
   void declare_qubits(const syntax::QubitDeclaration& declaration, syntax::Span at);
   void declare_variable(const syntax::Declaration& declaration, syntax::Span at);
   void declare_input(const syntax::Declaration& declaration, Symbol symbol, syntax::Span at);
-  void initialize(Symbol& symbol, const syntax::Declaration& declaration, syntax::Span at);
-  void declare_alias(const syntax::Alias& alias, syntax::Span at);
+  Value constant_value(const SyntaxExpression& expression, Type type);
+  void initialize(Symbol symbol, const syntax::Declaration& declaration, syntax::Span at);
+  void declare_alias(const syntax::Alias& alias);
   void measure(const syntax::Measurement& measurement, syntax::Span at);
   void measure_into(const Qubits& qubits, const Location& target, syntax::Span at);
   Value measured(const SyntaxExpression& expression, std::size_t frame);
@@ -238,54 +248,76 @@ class Reader final : public StatementSink {
   void delay(const syntax::Delay& delay, syntax::Span at);
   Ending box(const syntax::Box& box, syntax::Span at);
   Value duration_of(const SyntaxExpression& expression);
+  double length_of(std::uint32_t block, std::size_t first) const;
 
   // Control flow (flow.cpp).
-  Ending run_block(const syntax::Body& body);
-  Ending run_if(const syntax::If& choice, syntax::Span at);
-  Ending run_for(const syntax::For& loop, syntax::Span at);
-  Ending run_while(const syntax::While& loop, syntax::Span at);
-  Ending run_running_while(const syntax::While& loop, syntax::Span at);
-  Ending run_running_for(const syntax::For& loop, Expression over, syntax::Span at);
-  Ending run_switch(const syntax::Switch& choice, syntax::Span at);
-  Ending run_round(const syntax::For& loop, Type type, const Value& value);
-  std::vector<Value> loop_values(const syntax::For& loop, Type type, std::optional<Expression>& running);
-  Ending exit_to(Ending ending, syntax::Span at);
-  Value call_subroutine(const Symbol& symbol, const std::vector<const SyntaxExpression*>& arguments,
-                        syntax::Span at);
-  void bind_argument(const syntax::Parameter& parameter, const SyntaxExpression& argument,
-                     std::vector<std::pair<std::string, Symbol*>>& references, std::vector<Symbol>& values,
-                     std::vector<std::uint32_t>& used);
-  void check_subroutine(const syntax::Subroutine& definition);
-  Value call_extern(const Symbol& symbol, const std::vector<const SyntaxExpression*>& arguments, syntax::Span at);
-  void run_return(const syntax::Return& statement, syntax::Span at);
-  std::uint32_t open_arm();
-  void close_arm();
-  void append_branch(Branch branch, syntax::Span at);
-  void move_assigned(const Statements& statements);
-  void move_assigned(const std::set<std::string>& names);
-  void collect_assigned(const syntax::Statement& statement, std::set<std::string>& names) const;
-  void collect_assigned(const SyntaxExpression& expression, std::set<std::string>& names) const;
 
   /// Where `break`, `continue` or `return` lead. Targets are nested; the innermost is last.
   struct Target {
     enum class Kind : std::uint8_t { unrolled_loop, native_loop, subroutine };
     Kind kind = Kind::unrolled_loop;
-    std::uint32_t block = 0;       // the block in which it began
-    std::size_t position = 0;      // in that block: where its flag is cleared
-    std::uint32_t flag = no_variable;           // left or returned
-    std::uint32_t continue_flag = no_variable;  // of the running round
+    std::size_t frame = 0;             // of temporaries, where flags and results stay
+    std::uint32_t block = 0;           // the block in which it began,
+    std::size_t position = 0;          // and where: its flag is cleared there
+    std::uint32_t flag = no_variable;  // up when it was left
+    std::uint32_t round_block = 0;     // the same for the running round
     std::size_t round_position = 0;
-    std::uint32_t round_block = 0;
-    // Of a subroutine.
-    Type result;
-    std::optional<Value> value;
-    std::uint32_t result_variable = no_variable;
-    std::size_t frame = 0;  // of temporaries, where the result may stay
+    std::uint32_t continue_flag = no_variable;
+    Type result;                                  // of a subroutine:
+    std::optional<Value> value;                   // what it returns, if known here,
+    std::uint32_t result_variable = no_variable;  // or the variable that holds it
   };
-  std::uint32_t flag_of(Target& target, bool of_round, syntax::Span at);
+  /// The values that a loop runs through.
+  struct LoopValues {
+    bool is_range = false;
+    bool is_real = false;
+    Integer first, step, last;
+    double real_first = 0, real_step = 0, real_last = 0;
+    std::vector<Value> list;
+    std::size_t round = 0;
+    std::optional<Value> next();
+  };
+  /// Arguments of a call before the callee's scope is open.
+  struct Bound {
+    std::vector<Symbol> symbols;
+    std::vector<std::uint32_t> used;  // wires given so far
+  };
+  Ending run_block(const syntax::Body& body);
+  Ending run_if(const syntax::If& choice, syntax::Span at);
+  Ending run_switch(const syntax::Switch& choice, syntax::Span at);
+  Ending run_for(const syntax::For& loop, syntax::Span at);
+  Ending run_running_for(const syntax::For& loop, Type type, Expression over, syntax::Span at);
+  Ending run_while(const syntax::While& loop, syntax::Span at);
+  Ending run_running_while(const syntax::While& loop, syntax::Span at);
+  Ending run_round(const std::function<Ending()>& body, const std::set<std::string>& assigned);
+  Ending run_guarded(const std::function<Ending()>& rest, const std::set<std::string>& assigned);
+  LoopValues loop_values(const syntax::For& loop, Type type, std::optional<Expression>& running);
+  Target new_target(Target::Kind kind);
+  void finish_loop();
+  void leave_outer_loops(syntax::Span at);
+  Ending exit_to(Ending ending, syntax::Span at);
+  std::uint32_t raised(Target& target, std::uint32_t& flag, syntax::Span at);
   void insert_clear(std::uint32_t block, std::size_t position, std::uint32_t flag);
-  /// Flags that may be set at this point and guard what follows.
-  std::vector<std::uint32_t> pending_;
+  void add_pending(std::uint32_t flag);
+  void drop_pending(std::uint32_t flag);
+  std::uint32_t open_arm();
+  void close_arm();
+  void append_branch(Branch branch, syntax::Span at);
+  void move_assigned(const std::set<std::string>& names);
+  void move_if_own(Symbol& symbol);
+  std::set<std::string> assigned_in(const Statements& statements, std::size_t first) const;
+  void collect_assigned(const syntax::Statement& statement, std::set<std::string>& names) const;
+  void collect_assigned(const SyntaxExpression& expression, std::set<std::string>& names) const;
+  void define_subroutine(const syntax::Subroutine& definition, syntax::Span at);
+  void define_extern(const syntax::Extern& definition, syntax::Span at);
+  Value call_subroutine(const Symbol& symbol, const std::vector<const SyntaxExpression*>& arguments,
+                        syntax::Span at);
+  Value call_extern(const Symbol& symbol, const std::vector<const SyntaxExpression*>& arguments,
+                    syntax::Span at);
+  void bind_qubits(const syntax::Parameter& parameter, const SyntaxExpression& argument, Bound& bound);
+  void bind_array(const syntax::Parameter& parameter, const SyntaxExpression& argument, Bound& bound);
+  void bind_value(const syntax::Parameter& parameter, const SyntaxExpression& argument, Bound& bound);
+  void run_return(const syntax::Return& statement, syntax::Span at);
 
   const ReadOptions options_;
   Sources sources_;
@@ -304,22 +336,25 @@ class Reader final : public StatementSink {
   Scopes scopes_;
   std::vector<std::unique_ptr<Symbol>> hardware_;  // `$0`, `$1`, ...: not declared, seen everywhere
   Forms* forms_ = &circuit_.forms;
-  Acts* capture_ = nullptr;            // the body of a gate goes here
+  Acts* capture_ = nullptr;                          // the body of a gate goes here
   std::vector<Expression>* gate_derived_ = nullptr;  // and its derived parameters there
   std::uint32_t gate_parameters_ = 0;
   std::deque<GateTemplate> templates_;
 
-  std::uint32_t block_ = 0;  // that operations are appended to
+  std::uint32_t block_ = 0;                           // that operations are appended to
   std::vector<Angle> phase_ = std::vector<Angle>(1);  // of every block, not appended yet
+  std::vector<std::uint32_t> arms_;                   // the blocks around block_
   std::vector<Target> targets_;
+  std::vector<std::uint32_t> pending_;  // flags that may be up here: what follows stands under `if (!flag)`
+  bool is_statement_call_ = false;      // the value of the call being evaluated is not used
   std::size_t call_depth_ = 0;
   std::size_t steps_ = 0;
   std::size_t operations_ = 0;
   bool read_variable_ = false;  // an evaluation met something that is not constant
 
-  std::map<const syntax::Expression*, Value> fixed_;           // by splits
-  std::map<std::uint32_t, Value> fixed_variables_;             // native variables
-  std::map<std::uint32_t, bool> fixed_bits_;                   // flat bits
+  std::map<const syntax::Expression*, Value> fixed_;  // by splits
+  std::map<std::uint32_t, Value> fixed_variables_;    // native variables
+  std::map<std::uint32_t, bool> fixed_bits_;          // flat bits
   std::set<std::string> native_names_;
   /// Native variables whose source variable is gone, by declaration and type, for the next of its kind.
   std::map<std::pair<const void*, std::string>, std::vector<std::uint32_t>> free_variables_;

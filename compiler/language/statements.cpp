@@ -36,7 +36,8 @@ const std::string* base_name(const syntax::Expression& expression) {
 Ending Reader::run_list(const Statements& statements, std::size_t first) {
   const std::size_t errors_before = errors_;
   for (std::size_t i = first; i < statements.size(); ++i) {
-    if (!pending_.empty()) return run_guarded([&, i] { return run_list(statements, i); }, assigned_in(statements, i));
+    if (!pending_.empty())
+      return run_guarded([&, i] { return run_list(statements, i); }, assigned_in(statements, i));
     const Ending ending = run_checked(statements[i]);
     if (ending != Ending::falls) return ending;
     if (has_ended_) return Ending::ends;
@@ -63,7 +64,8 @@ Ending Reader::run_checked(const syntax::Statement& statement) {
     report(trouble);
     note_broken(statement);
   } catch (const Fault& fault) {
-    report({statement.at, fault.text, fault.help.empty() ? std::vector<std::string>{} : std::vector{"help: " + fault.help}});
+    report({statement.at, fault.text,
+            fault.help.empty() ? std::vector<std::string>{} : std::vector{"help: " + fault.help}});
     note_broken(statement);
   } catch (const Split& split) {
     report({split.at, "an index or angle known only while running cannot stand here", {}});
@@ -111,7 +113,8 @@ void Reader::run_split(const Split& split, const std::set<std::string>& assigned
                        const std::function<void()>& action) {
   move_assigned(assigned);
   Branch branch;
-  const bool is_choice = split.count == 2 && (split.type.base == Base::bit || split.type.base == Base::boolean);
+  const bool is_choice =
+      split.count == 2 && (split.type.base == Base::bit || split.type.base == Base::boolean);
   branch.kind = is_choice ? Branch::Kind::if_else : Branch::Kind::switch_case;
   branch.condition = split.selector;
   if (split.node == nullptr && split.type.base == Base::angle) {
@@ -204,35 +207,61 @@ void Reader::run_plain_statement(const syntax::Statement& statement) {
   const Span at = statement.at;
   if (const auto* s = std::get_if<QubitDeclaration>(&statement.what)) {
     declare_qubits(*s, at);
-  } else if (const auto* s = std::get_if<syntax::Reset>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<syntax::Reset>(&statement.what)) {
     with_splits(at, {}, [&] { reset(*s, at); });
-  } else if (const auto* s = std::get_if<syntax::Barrier>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<syntax::Barrier>(&statement.what)) {
     with_splits(at, {}, [&] { barrier(*s, at); });
-  } else if (const auto* s = std::get_if<syntax::Delay>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<syntax::Delay>(&statement.what)) {
     with_splits(at, {}, [&] { delay(*s, at); });
-  } else if (const auto* s = std::get_if<Nop>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Nop>(&statement.what)) {
     for (const SyntaxExpression& operand : s->operands) qubits_of(operand);
-  } else if (const auto* s = std::get_if<syntax::Alias>(&statement.what)) {
-    declare_alias(*s, at);
-  } else if (const auto* s = std::get_if<GateDefinition>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<syntax::Alias>(&statement.what)) {
+    declare_alias(*s);
+    return;
+  }
+  if (const auto* s = std::get_if<GateDefinition>(&statement.what)) {
     define_gate(*s, at);
-  } else if (const auto* s = std::get_if<Subroutine>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Subroutine>(&statement.what)) {
     define_subroutine(*s, at);
-  } else if (const auto* s = std::get_if<Extern>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Extern>(&statement.what)) {
     define_extern(*s, at);
-  } else if (const auto* s = std::get_if<ExpressionStatement>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<ExpressionStatement>(&statement.what)) {
     run_expression(*s, statement);
-  } else if (const auto* s = std::get_if<Include>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Include>(&statement.what)) {
     include(*s, at);
-  } else if (const auto* s = std::get_if<Pragma>(&statement.what)) {
+    return;
+  }
+  if (const auto* s = std::get_if<Pragma>(&statement.what)) {
     circuit_.pragmas.push_back(s->text);
-  } else if (std::holds_alternative<Calibration>(statement.what)) {
-    fail(at, "cal, defcal and defcalgrammar are not supported: they program the layer of pulses, below the gates",
+    return;
+  }
+  if (std::holds_alternative<Calibration>(statement.what)) {
+    fail(at,
+         "cal, defcal and defcalgrammar are not supported: they program the layer of pulses, below the gates",
          {"note: pulses are this compiler's own work; see the target description"});
   }
 }
 
-void Reader::run_expression(const syntax::ExpressionStatement& statement, const syntax::Statement& whole_statement) {
+void Reader::run_expression(const syntax::ExpressionStatement& statement,
+                            const syntax::Statement& whole_statement) {
   const SyntaxExpression& value = statement.value;
   if (value.kind == SyntaxExpression::Kind::name) {
     const Symbol& symbol = found(value.text, value.at, "name");
@@ -285,13 +314,15 @@ void Reader::declare_variable(const syntax::Declaration& declaration, syntax::Sp
   if (symbol.type.base == Base::none) fail(declaration.type.at, "a variable cannot be void");
   if (is_array) {
     if (!global) fail(at, "arrays are declared at the outermost level only");
-    if (symbol.type.base == Base::bit || symbol.type.base == Base::bits || symbol.type.base == Base::stretch) {
+    if (symbol.type.base == Base::bit || symbol.type.base == Base::bits ||
+        symbol.type.base == Base::stretch) {
       fail(declaration.type.at, fmt::format("an array of {} is not allowed", text_of(symbol.type)),
            {"help: a register bit[n] holds many bits"});
     }
     symbol.shape = array_shape(declaration.type);
   }
-  if (declaration.role == Role::constant && is_array) fail(at, "constants are scalars; an array cannot be const");
+  if (declaration.role == Role::constant && is_array)
+    fail(at, "constants are scalars; an array cannot be const");
   if ((declaration.role == Role::input || declaration.role == Role::output) && !global) {
     fail(at, "inputs and outputs are declared at the outermost level only");
   }
@@ -301,7 +332,8 @@ void Reader::declare_variable(const syntax::Declaration& declaration, syntax::Sp
   if (cells > 1'000'000) fail(at, "an array has at most 1000000 cells");
   symbol.cells.assign(cells, zero_of(symbol.type));
   if (!is_array && symbol.type.base == Base::bits) {
-    if (circuit_.bits + std::uint64_t(symbol.type.width) > most_flat_bits) fail(at, "too many classical bits");
+    if (circuit_.bits + std::uint64_t(symbol.type.width) > most_flat_bits)
+      fail(at, "too many classical bits");
     symbol.set_bits.assign(symbol.type.width, false);
   }
   if (version_ == 20 || symbol.type.base == Base::stretch) {
@@ -324,7 +356,8 @@ Value Reader::constant_value(const SyntaxExpression& expression, Type type) {
   const Value value = constant(expression, "the value of a constant");
   const bool whole = type.base == Base::integer || type.base == Base::natural || type.base == Base::boolean;
   if (value.type.base == Base::real && whole) {
-    fail(expression.at, fmt::format("a constant {} does not take {} without a cast", text_of(type), text_of(value.type)),
+    fail(expression.at,
+         fmt::format("a constant {} does not take {} without a cast", text_of(type), text_of(value.type)),
          {fmt::format("help: write {}(...)", text_of(type))});
   }
   return assigned_value(value, type, expression.at);
@@ -332,8 +365,9 @@ Value Reader::constant_value(const SyntaxExpression& expression, Type type) {
 
 /// Declares the variable, the value being evaluated before the name is seen.
 void Reader::initialize(Symbol symbol, const syntax::Declaration& declaration, syntax::Span at) {
-  const bool native_bits =
-      symbol.shape.empty() && (symbol.type.base == Base::bit || symbol.type.base == Base::bits) && scopes_.depth() == 1;
+  const bool native_bits = symbol.shape.empty() &&
+                           (symbol.type.base == Base::bit || symbol.type.base == Base::bits) &&
+                           scopes_.depth() == 1;
   const auto announce = [&]() -> Symbol& {
     Symbol& declared = declare(std::move(symbol));
     // Global bits appear in the native program whether they are used or not, in the source's order.
@@ -355,16 +389,19 @@ void Reader::initialize(Symbol symbol, const syntax::Declaration& declaration, s
   if (value.kind == SyntaxExpression::Kind::set) fail(value.at, "a list of values is for arrays only");
   if (value.kind == SyntaxExpression::Kind::measure) {
     Symbol& declared = announce();
-    with_splits(at, {declared.name}, [&] { measure_into(qubits_of(value.arguments[0]), whole(declared), value.at); });
+    with_splits(at, {declared.name},
+                [&] { measure_into(qubits_of(value.arguments[0]), whole(declared), value.at); });
     return;
   }
   if (value.kind == SyntaxExpression::Kind::call) {
     // A call may need arms of its own, so that the variable must be there before.
     const Symbol* callee = scopes_.find(value.text);
-    if (callee != nullptr && callee->kind == Symbol::Kind::subroutine && callee != scopes_.find(symbol.name)) {
+    if (callee != nullptr && callee->kind == Symbol::Kind::subroutine &&
+        callee != scopes_.find(symbol.name)) {
       Symbol& declared = announce();
-      with_splits(at, {declared.name},
-                  [&] { write(whole(declared), assigned_value(evaluated(value), declared.type, value.at), at); });
+      with_splits(at, {declared.name}, [&] {
+        write(whole(declared), assigned_value(evaluated(value), declared.type, value.at), at);
+      });
       return;
     }
   }
@@ -378,20 +415,23 @@ void Reader::initialize(Symbol symbol, const syntax::Declaration& declaration, s
 
 void Reader::declare_input(const syntax::Declaration& declaration, Symbol symbol, syntax::Span at) {
   if (declaration.value) fail(at, "an input gets its value from outside; it has none here");
-  if (symbol.type.base == Base::duration || symbol.type.base == Base::stretch || symbol.type.base == Base::complex) {
+  if (symbol.type.base == Base::duration || symbol.type.base == Base::stretch ||
+      symbol.type.base == Base::complex) {
     fail(declaration.type.at, fmt::format("an input of type {} is not supported", text_of(symbol.type)));
   }
   symbol.kind = Symbol::Kind::input;
   symbol.is_set = true;
   Input input;
   input.name = native_name(symbol.name, symbol.at);
-  input.type = symbol.is_array() ? fmt::format("array[{}, {}]", text_of(symbol.type), fmt::join(symbol.shape, ", "))
-                                 : text_of(symbol.type);
+  input.type = symbol.is_array()
+                   ? fmt::format("array[{}, {}]", text_of(symbol.type), fmt::join(symbol.shape, ", "))
+                   : text_of(symbol.type);
   const auto index = static_cast<std::uint32_t>(circuit_.inputs.size());
   Expression reference;
   reference.kind = Expression::Kind::input;
   reference.variable = index;
-  const bool is_affine = symbol.type.base == Base::real || (symbol.type.base == Base::angle && symbol.type.width == 0);
+  const bool is_affine =
+      symbol.type.base == Base::real || (symbol.type.base == Base::angle && symbol.type.width == 0);
   if (symbol.is_array()) {
     std::uint64_t cells = 1;
     for (const std::uint32_t size : symbol.shape) cells *= size;
@@ -420,14 +460,15 @@ void Reader::declare_input(const syntax::Declaration& declaration, Symbol symbol
   circuit_.inputs.push_back(std::move(input));
 }
 
-void Reader::declare_alias(const syntax::Alias& alias, syntax::Span at) {
+void Reader::declare_alias(const syntax::Alias& alias) {
   const SyntaxExpression* node = &alias.value;
   while (node->kind == SyntaxExpression::Kind::index ||
          (node->kind == SyntaxExpression::Kind::binary && node->op == syntax::Operator::concatenate)) {
     node = &node->arguments[0];
   }
   if (node->kind == SyntaxExpression::Kind::hardware) fail(node->at, "a physical qubit has no alias");
-  if (node->kind != SyntaxExpression::Kind::name) fail(node->at, "an alias is for registers, arrays and parts of them");
+  if (node->kind != SyntaxExpression::Kind::name)
+    fail(node->at, "an alias is for registers, arrays and parts of them");
   Symbol symbol;
   symbol.name = alias.name.text;
   symbol.at = alias.name.at;
@@ -445,7 +486,8 @@ void Reader::declare_alias(const syntax::Alias& alias, syntax::Span at) {
     return;
   }
   Location location = located(alias.value);
-  if (!location.running.empty()) fail(alias.value.at, "an alias needs indices that are known while compiling");
+  if (!location.running.empty())
+    fail(alias.value.at, "an alias needs indices that are known while compiling");
   symbol.kind = Symbol::Kind::alias;
   symbol.type = location.type;
   symbol.shape = location.shape;
@@ -538,7 +580,8 @@ Value Reader::measured(const SyntaxExpression& expression, std::size_t frame) {
 }
 
 void Reader::reset(const syntax::Reset& reset, syntax::Span at) {
-  for (const std::uint32_t wire : qubits_of(reset.qubits).wires) append(circuit_.make(Kind::reset, {wire}), at);
+  for (const std::uint32_t wire : qubits_of(reset.qubits).wires)
+    append(circuit_.make(Kind::reset, {wire}), at);
 }
 
 void Reader::barrier(const syntax::Barrier& barrier, syntax::Span at) {
@@ -567,7 +610,8 @@ void Reader::assign(const syntax::Assignment& assignment, syntax::Span at) {
   const Location target = located(assignment.target);
   check_writable(target, assignment.target.at);
   if (!target.shape.empty()) {
-    if (assignment.op != syntax::Operator::none) fail(at, "arrays are assigned as a whole, without an operator");
+    if (assignment.op != syntax::Operator::none)
+      fail(at, "arrays are assigned as a whole, without an operator");
     return write_array(target, array_values(assignment.value, target.type, target.shape), at);
   }
   Value value = evaluated(assignment.value);

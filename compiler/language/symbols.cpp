@@ -29,6 +29,13 @@ Symbol& Scopes::add_everywhere(Symbol& symbol) {
   return symbol;
 }
 
+std::vector<Symbol*> Scopes::globals() const {
+  std::vector<Symbol*> symbols;
+  if (levels_.size() < 2) return symbols;
+  for (const auto& symbol : levels_[1].owned) symbols.push_back(symbol.get());
+  return symbols;
+}
+
 bool Scopes::sees(const Binding& binding) const {
   if (binding.depth >= frame || binding.depth == 0) return true;
   if (binding.depth > 1) return false;

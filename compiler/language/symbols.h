@@ -107,6 +107,8 @@ class Scopes {
   /// The depth at which the body of the running gate or def begins; 0 outside.
   std::size_t frame = 0;
 
+  /// The symbols of the global scope, in order of declaration.
+  std::vector<Symbol*> globals() const;
   /// The symbols of the innermost scope, in order of declaration.
   const std::vector<std::unique_ptr<Symbol>>& innermost() const { return levels_.back().owned; }
 

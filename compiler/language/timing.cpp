@@ -59,8 +59,9 @@ Ending Reader::box(const syntax::Box& box, syntax::Span at) {
   if (limit >= 0) {
     const double needed = length_of(block_, first);
     if (needed > limit + 1e-6) {
-      warn(box.length->at, fmt::format("what is in the box takes about {} us, longer than its length of {} us",
-                                       needed / 1e3, limit / 1e3));
+      warn(box.length->at,
+           fmt::format("what is in the box takes about {} us, longer than its length of {} us", needed / 1e3,
+                       limit / 1e3));
     }
   }
   Operation barrier = circuit_.make(Kind::barrier, wires);
@@ -108,7 +109,8 @@ Value Reader::duration_of(const SyntaxExpression& expression) {
   close_arm();
   const auto& operations = circuit_.blocks[arm];
   const bool has_running = std::any_of(operations.begin(), operations.end(), [](const Operation& op) {
-    return op.kind == Kind::branch || op.kind == Kind::measure || op.kind == Kind::reset || op.kind == Kind::classical;
+    return op.kind == Kind::branch || op.kind == Kind::measure || op.kind == Kind::reset ||
+           op.kind == Kind::classical;
   });
   const double length = length_of(arm, 0);
   while (circuit_.blocks.size() > arm) {

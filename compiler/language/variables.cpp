@@ -52,8 +52,8 @@ Expression number(std::uint32_t value) {
 
 Symbol& Reader::declare(Symbol symbol) {
   const Symbol* existing = scopes_.find_innermost(symbol.name);
-  const bool replaced = existing != nullptr && (existing->kind == Symbol::Kind::broken ||
-                                                (version_ == 20 && existing->is_library));
+  const bool replaced = existing != nullptr &&
+                        (existing->kind == Symbol::Kind::broken || (version_ == 20 && existing->is_library));
   if (existing != nullptr && !replaced) {
     std::vector<std::string> notes;
     if (existing->is_library) {
@@ -103,7 +103,8 @@ std::string Reader::native_name(const std::string& wanted, syntax::Span at) {
   std::string name = wanted;
   for (int i = 2; !native_names_.insert(name).second; ++i) name = fmt::format("{}_{}", wanted, i);
   if (name != wanted && at.line > 0) {
-    warn(at, fmt::format("`{}` is called `{}` in the native program, where that name is taken", wanted, name));
+    warn(at,
+         fmt::format("`{}` is called `{}` in the native program, where that name is taken", wanted, name));
   }
   return name;
 }
@@ -128,18 +129,64 @@ Location Reader::located(const SyntaxExpression& expression) {
   if (expression.kind == SyntaxExpression::Kind::index) {
     return indexed(located(expression.arguments[0]), expression);
   }
+  if (expression.kind == SyntaxExpression::Kind::binary && expression.op == syntax::Operator::concatenate) {
+    return joined(expression);
+  }
   if (expression.kind != SyntaxExpression::Kind::name) {
     fail(expression.at, "a variable, or a part of one, is expected here");
   }
   Symbol& symbol = found(expression.text, expression.at, "variable");
   if (symbol.kind == Symbol::Kind::qubits) {
-    fail(expression.at, fmt::format("`{}` is made of qubits; a classical variable is expected here", expression.text),
+    fail(expression.at,
+         fmt::format("`{}` is made of qubits; a classical variable is expected here", expression.text),
          {"help: measure it into a bit first"});
   }
   if (symbol.is_callable()) {
     fail(expression.at, fmt::format("`{}` is no variable; a call needs parentheses", expression.text));
   }
   return whole(symbol);
+}
+
+/// Every bit or cell of what is named, in order.
+std::vector<Part> Reader::parts_of(const Location& location) const {
+  if (!location.parts.empty()) return location.parts;
+  std::vector<Part> parts;
+  if (!location.shape.empty()) {
+    for (std::uint32_t cell = 0; cell < location.symbol->cells.size(); ++cell) {
+      parts.push_back({location.symbol, cell, 0});
+    }
+    return parts;
+  }
+  const std::uint32_t bits = location.type.base == Base::bits ? location.type.width : 1;
+  for (std::uint32_t bit = 0; bit < bits; ++bit) parts.push_back({location.symbol, 0, bit});
+  return parts;
+}
+
+/// `a ++ b`: the left operand takes the low indices.
+Location Reader::joined(const SyntaxExpression& expression) {
+  const Location left = located(expression.arguments[0]);
+  const Location right = located(expression.arguments[1]);
+  const auto is_bits = [](const Location& side) {
+    return side.running.empty() && side.shape.empty() &&
+           (side.type.base == Base::bits || side.type.base == Base::bit);
+  };
+  Location result = left;
+  result.parts = parts_of(left);
+  const auto more = parts_of(right);
+  result.parts.insert(result.parts.end(), more.begin(), more.end());
+  if (is_bits(left) && is_bits(right)) {
+    result.parts_are_bits = true;
+    result.is_one = false;
+    result.type = {Base::bits, static_cast<std::uint32_t>(result.parts.size())};
+    return result;
+  }
+  const bool arrays = !left.shape.empty() && left.shape.size() == right.shape.size() &&
+                      left.type == right.type &&
+                      std::equal(left.shape.begin() + 1, left.shape.end(), right.shape.begin() + 1);
+  if (!arrays)
+    fail(expression.at, "`++` joins registers, or arrays that agree in all but their first dimension");
+  result.shape[0] += right.shape[0];
+  return result;
 }
 
 Location Reader::indexed(const Location& base, const SyntaxExpression& expression) {
@@ -218,9 +265,9 @@ Location Reader::indexed_cells(const Location& base, const SyntaxExpression& exp
 Location Reader::indexed_bits(const Location& base, const SyntaxExpression& item) {
   const bool is_slice = base.parts_are_bits && !base.is_one;
   if (!is_slice && !has_bits(base.type)) {
-    fail(item.at, base.type.base == Base::bit
-                      ? "a single bit has no index"
-                      : fmt::format("{} has no bits to index", text_of(base.type)),
+    fail(item.at,
+         base.type.base == Base::bit ? "a single bit has no index"
+                                     : fmt::format("{} has no bits to index", text_of(base.type)),
          base.type.base == Base::bit ? std::vector<std::string>{}
                                      : std::vector<std::string>{"help: give the type a width"});
   }
@@ -319,7 +366,8 @@ void Reader::warn_unset(Symbol& symbol, const std::vector<Part>& bits, syntax::S
   const auto check = [&](std::uint32_t bit) {
     if (symbol.set_bits[bit]) return;
     symbol.set_bits[bit] = true;
-    warn(at, fmt::format("bit {} of `{}` is read before anything was assigned to it; taken as 0", bit, symbol.name));
+    warn(at, fmt::format("bit {} of `{}` is read before anything was assigned to it; taken as 0", bit,
+                         symbol.name));
   };
   if (bits.empty()) {
     for (std::uint32_t i = 0; i < symbol.set_bits.size(); ++i) {
@@ -331,7 +379,8 @@ void Reader::warn_unset(Symbol& symbol, const std::vector<Part>& bits, syntax::S
 
 Value Reader::read_symbol(Symbol& symbol, syntax::Span at) {
   if (symbol.kind != Symbol::Kind::constant) read_variable_ = true;
-  if (symbol.is_array()) fail(at, fmt::format("`{}` is an array; a single value is expected here", symbol.name));
+  if (symbol.is_array())
+    fail(at, fmt::format("`{}` is an array; a single value is expected here", symbol.name));
   warn_unset(symbol, {}, at);
   if (symbol.runs) return variable_value(symbol.variable, symbol.type);
   return symbol.cells[0];
@@ -380,7 +429,8 @@ Value Reader::read_bits(const Location& location, syntax::Span at) {
     } else {
       const Value& value = symbol.cells[part.cell];
       if (value.is_known()) {
-        const Integer pattern = value.integer.is_negative() ? value.integer.modulo(value.type.width) : value.integer;
+        const Integer pattern =
+            value.integer.is_negative() ? value.integer.modulo(value.type.width) : value.integer;
         Value bit = of_bool(pattern.bit(part.bit));
         bit.type = {Base::bit, 0};
         bits.push_back(std::move(bit));
@@ -407,8 +457,8 @@ Value Reader::read_bits(const Location& location, syntax::Span at) {
   // Scattered bits: gathered in a register of their own.
   const std::uint32_t gathered = temporary(location.type, "gathered", temporaries_.size() - 1);
   for (std::uint32_t i = 0; i < width; ++i) {
-    emit_assignment(index_expression(variable_expression(gathered), {number(i)}), expression_of(bits[i], rules()),
-                    at);
+    emit_assignment(index_expression(variable_expression(gathered), {number(i)}),
+                    expression_of(bits[i], rules()), at);
   }
   return of_expression(variable_expression(gathered), location.type, true);
 }
@@ -422,12 +472,12 @@ Value Reader::read(const Location& location, syntax::Span at) {
       move_to_native(symbol, false, at);
     }
     if (symbol.runs) {
-      return of_expression(index_expression(variable_expression(symbol.variable), location.running), location.type,
-                           true);
+      return of_expression(index_expression(variable_expression(symbol.variable), location.running),
+                           location.type, true);
     }
     if (symbol.kind == Symbol::Kind::input && !symbol.is_array()) {
-      return of_expression(index_expression(expression_of(symbol.cells[0], rules()), location.running), location.type,
-                           true);
+      return of_expression(index_expression(expression_of(symbol.cells[0], rules()), location.running),
+                           location.type, true);
     }
     // A constant or a variable of outside: its value in a variable of its own.
     const std::uint32_t copy = temporary_array(symbol, at);
@@ -446,7 +496,8 @@ Value Reader::read(const Location& location, syntax::Span at) {
 
 /// A native copy of a variable whose value is known, for reading at a running index.
 std::uint32_t Reader::temporary_array(Symbol& symbol, syntax::Span at) {
-  const auto key = std::make_pair(static_cast<const void*>(&temporaries_), type_text(symbol.type, symbol.shape));
+  const auto key =
+      std::make_pair(static_cast<const void*>(&temporaries_), type_text(symbol.type, symbol.shape));
   auto& free = free_variables_[key];
   std::uint32_t copy = no_variable;
   if (!free.empty()) {
@@ -512,7 +563,8 @@ void Reader::move_to_native(Symbol& symbol, bool overwritten, syntax::Span at) {
   for (std::uint32_t cell = 0; cell < symbol.cells.size(); ++cell) {
     const Value& value = symbol.cells[cell];
     // Variables start as zero, so a zero at the start of the program need not be said.
-    const bool is_zero = value.is_known() && value.integer.is_zero() && value.real == 0 && value.imaginary == 0;
+    const bool is_zero =
+        value.is_known() && value.integer.is_zero() && value.real == 0 && value.imaginary == 0;
     if (is_fresh && is_zero) continue;
     emit_assignment(native_cell(symbol, cell), expression_of(value, rules()), at);
   }
@@ -541,7 +593,8 @@ Value Reader::kept(const Value& value, const std::string& stem) {
 void Reader::close_scope() {
   for (const auto& symbol : scopes_.innermost()) {
     if (symbol->variable == no_variable || symbol->is_global) continue;
-    free_variables_[{symbol->declaration, type_text(symbol->type, symbol->shape)}].push_back(symbol->variable);
+    free_variables_[{symbol->declaration, type_text(symbol->type, symbol->shape)}].push_back(
+        symbol->variable);
   }
   scopes_.close();
 }
@@ -551,7 +604,8 @@ void Reader::close_scope() {
 void Reader::check_writable(const Location& location, syntax::Span at) {
   const auto check = [&](const Symbol& symbol) {
     if (symbol.kind == Symbol::Kind::constant) fail(at, fmt::format("`{}` is constant", symbol.name));
-    if (symbol.kind == Symbol::Kind::input) fail(at, fmt::format("`{}` is an input; it cannot be assigned", symbol.name));
+    if (symbol.kind == Symbol::Kind::input)
+      fail(at, fmt::format("`{}` is an input; it cannot be assigned", symbol.name));
     if (symbol.is_readonly) fail(at, fmt::format("`{}` is readonly here", symbol.name));
   };
   if (location.parts.empty()) return check(*location.symbol);
@@ -566,7 +620,8 @@ void Reader::mark_set(const Location& location) {
   }
   for (const Part& part : location.parts) {
     part.symbol->is_set = true;
-    if (location.parts_are_bits && part.bit < part.symbol->set_bits.size()) part.symbol->set_bits[part.bit] = true;
+    if (location.parts_are_bits && part.bit < part.symbol->set_bits.size())
+      part.symbol->set_bits[part.bit] = true;
   }
 }
 
@@ -577,7 +632,8 @@ Value Reader::assigned_value(const Value& value, Type type, syntax::Span at) {
     if (narrowed) {
       warn(at, fmt::format("the value changes when it becomes {}", text_of(type)));
     } else if (value.type.base == Base::real && (type.base == Base::integer || type.base == Base::natural)) {
-      warn(at, fmt::format("{} is converted to {} and loses its fraction", text_of(value.type), text_of(type)),
+      warn(at,
+           fmt::format("{} is converted to {} and loses its fraction", text_of(value.type), text_of(type)),
            {fmt::format("help: write the cast, {}(...)", text_of(type))});
     }
     return result;
@@ -586,7 +642,8 @@ Value Reader::assigned_value(const Value& value, Type type, syntax::Span at) {
 
 Expression Reader::native_target(const Location& location) const {
   const Symbol& symbol = *location.symbol;
-  if (!location.running.empty()) return index_expression(variable_expression(symbol.variable), location.running);
+  if (!location.running.empty())
+    return index_expression(variable_expression(symbol.variable), location.running);
   if (location.parts.empty()) return variable_expression(symbol.variable);
   const Part& part = location.parts[0];
   Expression cell = native_cell(*part.symbol, part.cell);
@@ -658,7 +715,8 @@ void Reader::write_parts(const Location& location, const Value& value, syntax::S
     Location one = location;
     one.parts = {location.parts[i]};
     one.is_one = true;
-    Expression bit = value.is_known() ? literal(value.integer.bit(i) ? "1" : "0") : index_expression(source, {number(i)});
+    Expression bit =
+        value.is_known() ? literal(value.integer.bit(i) ? "1" : "0") : index_expression(source, {number(i)});
     emit_assignment(native_target(one), std::move(bit), at);
   }
 }
@@ -673,7 +731,8 @@ std::vector<Value> Reader::array_values(const SyntaxExpression& expression, Type
   std::vector<Value> values;
   if (expression.kind == SyntaxExpression::Kind::set) {
     if (expression.arguments.size() != shape[0]) {
-      fail(expression.at, fmt::format("{} elements for a dimension of {}", expression.arguments.size(), shape[0]));
+      fail(expression.at,
+           fmt::format("{} elements for a dimension of {}", expression.arguments.size(), shape[0]));
     }
     const std::vector<std::uint32_t> rest(shape.begin() + 1, shape.end());
     for (const SyntaxExpression& element : expression.arguments) {
@@ -690,20 +749,23 @@ std::vector<Value> Reader::array_values(const SyntaxExpression& expression, Type
     // The left operand comes first; both share all further dimensions.
     for (const SyntaxExpression& side : expression.arguments) {
       const Location part = located(side);
-      if (part.shape.size() != shape.size() || !std::equal(shape.begin() + 1, shape.end(), part.shape.begin() + 1)) {
+      if (part.shape.size() != shape.size() ||
+          !std::equal(shape.begin() + 1, shape.end(), part.shape.begin() + 1)) {
         fail(side.at, "arrays are joined along their first dimension; the others must agree");
       }
       auto inner = array_values(side, type, part.shape);
       values.insert(values.end(), inner.begin(), inner.end());
     }
-    if (values.size() != count) fail(expression.at, "the joined arrays do not have the size that is expected");
+    if (values.size() != count)
+      fail(expression.at, "the joined arrays do not have the size that is expected");
     return values;
   }
   const Location location = located(expression);
   if (location.shape != shape) {
-    fail(expression.at, location.shape.empty() ? "an array is expected here"
-                                               : fmt::format("an array of shape [{}] is expected, not [{}]",
-                                                             fmt::join(shape, ", "), fmt::join(location.shape, ", ")));
+    fail(expression.at, location.shape.empty()
+                            ? "an array is expected here"
+                            : fmt::format("an array of shape [{}] is expected, not [{}]",
+                                          fmt::join(shape, ", "), fmt::join(location.shape, ", ")));
   }
   for (std::uint32_t cell = 0; cell < count; ++cell) {
     Location one = location;
