@@ -193,7 +193,15 @@ Value Reader::evaluated_unchecked(const SyntaxExpression& expression) {
         const Value truth = converted(left, {Base::boolean, 0}, rules());
         if (truth_of(truth) != is_and) return truth;
       }
-      return binary(syntax::spelling(expression.op), left, evaluated(expression.arguments[1]), rules());
+      const Value right = evaluated(expression.arguments[1]);
+      const bool is_mixed = (left.type.base == Base::bits) != (right.type.base == Base::bits);
+      Value result = binary(syntax::spelling(expression.op), left, right, rules());
+      if (is_mixed && result.type.base == Base::boolean && version_ != 20) {
+        const Type bits = left.type.base == Base::bits ? left.type : right.type;
+        warn(expression.at, "a register is compared with a number as the unsigned number that it holds",
+             {fmt::format("help: the standard wants a cast, as in uint[{}](c)", bits.width)});
+      }
+      return result;
     }
     case K::call:
       return call_value(expression);

@@ -84,8 +84,8 @@ void inspect(const syntax::Statement& statement, LoopFacts& facts, bool on_measu
     inspect(s->body.statements, facts, on_measured);
     return;
   }
-  if (std::holds_alternative<Break>(statement.what) ||
-             std::holds_alternative<Return>(statement.what) || std::holds_alternative<End>(statement.what)) {
+  if (std::holds_alternative<Break>(statement.what) || std::holds_alternative<Return>(statement.what) ||
+      std::holds_alternative<End>(statement.what)) {
     facts.leaves_on_measured = facts.leaves_on_measured || on_measured;
   }
 }

@@ -422,7 +422,6 @@ void Reader::declare_input(const syntax::Declaration& declaration, Symbol symbol
   symbol.kind = Symbol::Kind::input;
   symbol.is_set = true;
   Input input;
-  input.name = native_name(symbol.name, symbol.at);
   input.type = symbol.is_array()
                    ? fmt::format("array[{}, {}]", text_of(symbol.type), fmt::join(symbol.shape, ", "))
                    : text_of(symbol.type);
@@ -456,7 +455,7 @@ void Reader::declare_input(const syntax::Declaration& declaration, Symbol symbol
   } else {
     symbol.cells = {of_expression(std::move(reference), symbol.type, false)};
   }
-  declare(std::move(symbol));
+  input.name = native_name(declare(std::move(symbol)).name, declaration.name.at);
   circuit_.inputs.push_back(std::move(input));
 }
 

@@ -52,8 +52,14 @@ Expression number(std::uint32_t value) {
 
 Symbol& Reader::declare(Symbol symbol) {
   const Symbol* existing = scopes_.find_innermost(symbol.name);
-  const bool replaced = existing != nullptr &&
-                        (existing->kind == Symbol::Kind::broken || (version_ == 20 && existing->is_library));
+  bool replaced = existing != nullptr &&
+                  (existing->kind == Symbol::Kind::broken || (version_ == 20 && existing->is_library));
+  if (existing != nullptr && existing->is_library && !replaced && !symbol.is_callable()) {
+    // The standard has one space of names; but short names are many, and the library's are not the user's.
+    warn(symbol.at,
+         fmt::format("`{}` hides the gate `{}` of the included library", symbol.name, symbol.name));
+    replaced = true;
+  }
   if (existing != nullptr && !replaced) {
     std::vector<std::string> notes;
     if (existing->is_library) {
