@@ -10,6 +10,7 @@
 #include "algebra/sha256.h"
 #include "circuit/files.h"
 #include "circuit/message.h"
+#include "support/program.h"
 #include "targets/target.h"
 
 using namespace isinglass;
@@ -17,7 +18,7 @@ using namespace isinglass;
 namespace {
 
 std::string tree(const std::string& path) {
-  return std::string(ISINGLASS_TREE) + "/" + path;
+  return support::tree_path(path);
 }
 
 struct TemporaryFile {
