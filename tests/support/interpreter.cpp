@@ -1227,6 +1227,29 @@ std::string only(const std::string& bits, const std::set<std::string>& names) {
 
 }  // namespace
 
+Matrix unitary(const Program& program, const Placement& placement,
+               const std::map<std::string, double>& inputs) {
+  RunOptions options;
+  options.inputs = inputs;
+  options.with_references = true;
+  const std::vector<Path> paths = run(program, placement.start, options);
+  if (paths.size() != 1) fail("a program that measures has no unitary");
+  const std::size_t qubits = placement.start.size();
+  const Eigen::Index size = Eigen::Index(1) << qubits;
+  Matrix m(size, size);
+  for (Eigen::Index row = 0; row < size; ++row) {
+    std::uint64_t index = 0;
+    for (std::size_t q = 0; q < qubits; ++q)
+      index |= (static_cast<std::uint64_t>(row) >> q & 1) << placement.end[q];
+    for (Eigen::Index column = 0; column < size; ++column) {
+      m(row, column) =
+          paths[0].state.amplitudes[index | static_cast<std::uint64_t>(column) << program.qubits().size()] *
+          std::sqrt(static_cast<double>(size));
+    }
+  }
+  return m;
+}
+
 double difference(const Program& source, const Program& compiled, const RunOptions& options, bool bits_only) {
   const std::size_t qubits = source.qubits().size();
   const Placement placement = placement_of(compiled, source);

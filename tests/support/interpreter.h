@@ -64,6 +64,11 @@ struct RunOptions {
 std::vector<Path> run(const Program& program, const std::vector<std::size_t>& start,
                       const RunOptions& options, const std::map<std::string, std::string>& names = {});
 
+/// What a program without measurements does to the qubits that count; entries of anything that leaves another
+/// qubit out of |0> are missing, so that such a program is not unitary.
+Matrix unitary(const Program& program, const Placement& placement,
+               const std::map<std::string, double>& inputs = {});
+
 /// How far the compiled program is from its source: the largest difference of an entry of the density
 /// matrices of the kept qubits given the bits (weighted by the probability of the bits). Variables that the
 /// source does not have are summed over. With bits_only the probabilities alone.
