@@ -7,6 +7,7 @@
 
 #include "language/evaluate.h"
 #include "language/reader.h"
+#include "language/unitary.h"
 
 namespace isinglass {
 
@@ -70,6 +71,48 @@ void Reader::emit_template(const GateTemplate& gate, std::span<const Angle> argu
 
 // Definitions.
 
+namespace {
+
+/// Native programs define r and xx in standard gates. Where a definition is exactly one of these, it is that
+/// operation, so that a native program reads back as what it is.
+void recognize_native(std::string_view name, GateTemplate& gate) {
+  const bool is_r = name == "r" && gate.parameters == 2 && gate.operands == 1;
+  const bool is_xx = name == "xx" && gate.parameters == 3 && gate.operands == 2;
+  if ((!is_r && !is_xx) || gate.acts.size() > 100) return;
+  const std::vector<std::uint32_t> wires =
+      is_r ? std::vector<std::uint32_t>{0} : std::vector<std::uint32_t>{0, 1};
+  // Both sides are trigonometric polynomials of low degree: agreement at these points is agreement.
+  for (const std::array<double, 3>& point : {std::array<double, 3>{0.3, 1.1, -0.7},
+                                             {2.9, -2.3, 0.4},
+                                             {-1.7, 0.6, 2.2},
+                                             {5.1, 2.8, -1.9},
+                                             {0.9, -0.2, 3.0}}) {
+    std::vector<Angle> arguments;
+    Operation op;
+    op.kind = is_r ? Kind::r : Kind::xx;
+    for (std::uint32_t i = 0; i < gate.parameters; ++i) {
+      arguments.push_back({point[i], 0});
+      op.set_angle(static_cast<int>(i), arguments.back());
+    }
+    Forms forms;
+    const Eigen::MatrixXcd defined = matrix_of(instance(gate, arguments, wires, forms), wires);
+    const auto native = matrix_of(op);
+    for (Eigen::Index row = 0; row < defined.rows(); ++row) {
+      for (Eigen::Index column = 0; column < defined.cols(); ++column) {
+        const auto entry = native[static_cast<std::size_t>(row * defined.cols() + column)];
+        if (std::abs(defined(row, column) - entry) > 1e-12) return;
+      }
+    }
+  }
+  Act act;
+  act.kind = is_r ? Kind::r : Kind::xx;
+  act.wires = wires;
+  for (std::uint32_t i = 0; i < gate.parameters; ++i) act.angles[i] = {0, gate.forms.of_input(i)};
+  gate.acts = {act};
+}
+
+}  // namespace
+
 void Reader::define_gate(const syntax::GateDefinition& definition, syntax::Span at) {
   if (scopes_.depth() != 1 || block_ != 0) fail(at, "gates are defined at the outermost level only");
   Symbol symbol;
@@ -111,7 +154,11 @@ void Reader::define_gate(const syntax::GateDefinition& definition, syntax::Span 
     }
     restore();
   }
-  if (errors_ != errors_before) symbol.kind = Symbol::Kind::broken;
+  if (errors_ != errors_before) {
+    symbol.kind = Symbol::Kind::broken;
+  } else if (symbol.derived.empty()) {
+    recognize_native(symbol.name, gate);
+  }
   declare(std::move(symbol));
 }
 

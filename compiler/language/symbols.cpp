@@ -85,7 +85,11 @@ std::string Scopes::similar(std::string_view name, bool callable) const {
     if (bindings.empty() || !one_slip(name, other)) continue;
     if (other.size() < 2 && name.size() < 2) continue;
     if (bindings.back().symbol->is_callable() != callable || !sees(bindings.back())) continue;
-    if (best.empty() || other < best) best = other;
+    // Rather one that begins alike.
+    const bool better = (other[0] == name[0]) != (best.empty() ? false : best[0] == name[0])
+                            ? other[0] == name[0]
+                            : other < best;
+    if (best.empty() || better) best = other;
   }
   return best;
 }
