@@ -81,7 +81,7 @@ Type number_type(Type a, Type b) {
 }
 
 Integer limited(Integer value) {
-  if (value.length() > most_bits) refuse("the number grows beyond 65,536 bits");
+  if (!value.small() && value.length() > most_bits) refuse("the number grows beyond 65,536 bits");
   return value;
 }
 
