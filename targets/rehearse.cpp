@@ -154,6 +154,10 @@ void compare(Rehearsal& result, const Distribution& without_noise, const Distrib
   });
 }
 
+std::string_view name(Rehearsal::Method method) {
+  return method == Rehearsal::Method::density_matrix ? "density matrix" : "trajectories";
+}
+
 std::string_view left_out_by_the_model() {
   return "Errors are taken as random and independent: coherent errors that add up, drift between "
          "calibrations, "

@@ -48,6 +48,8 @@ struct Rehearsal {
   double distance = 0;  // total variation distance of the two distributions
 };
 
+std::string_view name(Rehearsal::Method method);
+
 /// What the model, and so the rehearsal, leaves out; sentences for people.
 std::string_view left_out_by_the_model();
 

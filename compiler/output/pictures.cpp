@@ -280,43 +280,70 @@ std::string escaped(std::string_view text) {
   return safe;
 }
 
+namespace {
+
+struct BarPair {
+  std::string label;
+  double first;
+  double second;
+};
+
+/// Two bars a row on a common scale; `text(value)` stands at the end of each.
+template <class Text>
+std::string paired_bars(std::span<const BarPair> rows, double label_width, const std::string& title,
+                        const std::string& told, Text text) {
+  const double bar_width = 520 - label_width;
+  double most = 1e-9;
+  for (const BarPair& row : rows) most = std::max({most, row.first, row.second});
+  std::string content;
+  double y = 4;
+  for (const BarPair& row : rows) {
+    content += fmt::format("<text class=\"label\" x=\"{}\" y=\"{}\" text-anchor=\"end\">{}</text>",
+                           label_width - 10, y + 17, escaped(row.label));
+    for (const auto& [style, value] : {std::pair("was", row.first), std::pair("is", row.second)}) {
+      const double width = bar_width * value / most;
+      content += fmt::format("<rect class=\"{}\" x=\"{}\" y=\"{}\" width=\"{:.2f}\" height=\"11\" rx=\"2\"/>",
+                             style, label_width, y, std::max(width, 1.0));
+      content += fmt::format("<text class=\"tick\" x=\"{:.1f}\" y=\"{}\">{}</text>\n",
+                             label_width + width + 6, y + 10, text(value));
+      y += 14;
+    }
+    y += 14;
+  }
+  return svg(600, y - 6, title, told, content);
+}
+
+}  // namespace
+
 std::string picture_of_tally(const Compiled& compiled) {
   const Totals& totals = compiled.timed.totals;
   const Before& before = compiled.before;
-  struct Pair {
-    std::string label;
-    double before;
-    double after;
-  };
-  const std::array<Pair, 4> rows = {{
+  const std::array<BarPair, 4> rows = {{
       {"two-qubit gates", static_cast<double>(before.two_qubit), static_cast<double>(totals.xx)},
       {"in full units", static_cast<double>(before.two_qubit), totals.xx_units},
       {"longest chain", static_cast<double>(before.two_qubit_depth), static_cast<double>(totals.xx_depth)},
       {"one-qubit gates", static_cast<double>(before.one_qubit), static_cast<double>(totals.r)},
   }};
-  constexpr double label_width = 130;
-  constexpr double bar_width = 390;
-  double most = 1;
-  for (const Pair& row : rows) most = std::max({most, row.before, row.after});
-  std::string text;
-  double y = 4;
-  for (const Pair& row : rows) {
-    text += fmt::format("<text class=\"label\" x=\"{}\" y=\"{}\" text-anchor=\"end\">{}</text>",
-                        label_width - 10, y + 19, row.label);
-    for (const auto& [style, value] : {std::pair("was", row.before), std::pair("is", row.after)}) {
-      const double width = bar_width * value / most;
-      text += fmt::format("<rect class=\"{}\" x=\"{}\" y=\"{}\" width=\"{:.2f}\" height=\"11\" rx=\"2\"/>",
-                          style, label_width, y, std::max(width, 1.0));
-      text += fmt::format("<text class=\"tick\" x=\"{:.1f}\" y=\"{}\">{:.6g}</text>\n",
-                          label_width + width + 6, y + 10, value);
-      y += 14;
-    }
-    y += 14;
+  return paired_bars(
+      rows, 130, "Tally before and after",
+      fmt::format("two-qubit gates {} before, {} interactions after, {:.4g} in units of a full one",
+                  before.two_qubit, totals.xx, totals.xx_units),
+      [](double value) { return fmt::format("{:.4g}", value); });
+}
+
+std::string picture_of_outcomes(const Rehearsal& rehearsal) {
+  constexpr std::size_t most_rows = 10;
+  std::vector<BarPair> rows;
+  std::size_t longest = 0;
+  for (const RehearsedOutcome& outcome : rehearsal.outcomes) {
+    if (rows.size() == most_rows) break;
+    rows.push_back({outcome.bits, outcome.without_noise, outcome.with_noise});
+    longest = std::max(longest, outcome.bits.size());
   }
-  return svg(600, y - 6, "Tally before and after",
-             fmt::format("two-qubit gates {} before, {} interactions after, {:.4g} in units of a full one",
-                         before.two_qubit, totals.xx, totals.xx_units),
-             text);
+  const double label_width = std::clamp(9.0 * static_cast<double>(longest) + 16, 60.0, 330.0);
+  return paired_bars(rows, label_width, "Outcomes without and with noise",
+                     fmt::format("total variation distance {:.4g}", rehearsal.distance),
+                     [](double value) { return fmt::format("{:.2f} %", 100 * value); });
 }
 
 std::string picture_of_errors(const Totals& totals) {

@@ -27,6 +27,9 @@ std::string picture_of_pairs(const Compiled& compiled);
 /// The chain with the qubits on it, at the start and at the end.
 std::string picture_of_placement(const Compiled& compiled);
 
+/// The likeliest outcomes, two bars a row: without and with noise.
+std::string picture_of_outcomes(const Rehearsal& rehearsal);
+
 /// How often and how much each pair interacts, the most used first; loops one round, all arms.
 struct PairWork {
   std::uint32_t a = 0;

@@ -92,6 +92,7 @@ class Page {
     tally();
     errors();
     out_.add("</div>\n");
+    if (c_.rehearsal != nullptr) rehearsal(*c_.rehearsal);
     timeline();
     placement();
     pairs();
@@ -135,6 +136,28 @@ class Page {
     out_.add(fmt::format(
         "<tr><th scope=\"row\">all</th><td>{:.2e}</td><td>100 %</td></tr></tbody></table></section>\n",
         totals_.error));
+  }
+
+  void rehearsal(const Rehearsal& rehearsal) {
+    out_.add("<section><h2>Rehearsal</h2>\n");
+    if (!rehearsal.outcomes.empty()) {
+      out_.add(picture_of_outcomes(rehearsal),
+               "<ul class=\"legend\"><li><i></i>without noise</li><li><i class=\"inter\"></i>with "
+               "noise</li></ul>\n");
+    }
+    out_.add("<p class=\"note\">By ", name(rehearsal.method),
+             rehearsal.shots > 0 ? fmt::format(", {} shots", rehearsal.shots) : "",
+             fmt::format(". Estimated success {:.2f} %", 100 * rehearsal.estimate));
+    if (rehearsal.no_error >= 0) {
+      out_.add(fmt::format(", shots without error {:.2f} ± {:.2f} %", 100 * rehearsal.no_error,
+                           100 * rehearsal.no_error_deviation));
+    }
+    if (rehearsal.fidelity >= 0) out_.add(fmt::format(", fidelity {:.3f} %", 100 * rehearsal.fidelity));
+    if (!rehearsal.outcomes.empty()) {
+      out_.add(fmt::format("; the two distributions differ by {:.2f} % (total variation)",
+                           100 * rehearsal.distance));
+    }
+    out_.add(".</p></section>\n");
   }
 
   void timeline() {

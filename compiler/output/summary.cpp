@@ -54,11 +54,38 @@ nlohmann::ordered_json json_of(const Before& before) {
           {"two_qubit_depth", before.two_qubit_depth}};
 }
 
+nlohmann::ordered_json json_of(const Rehearsal& rehearsal) {
+  nlohmann::ordered_json json;
+  json["method"] = name(rehearsal.method);
+  json["shots"] = rehearsal.shots;
+  json["estimate"] = rehearsal.estimate;
+  if (rehearsal.no_error >= 0) {
+    json["no_error"] = rehearsal.no_error;
+    json["no_error_deviation"] = rehearsal.no_error_deviation;
+  }
+  if (rehearsal.fidelity >= 0) {
+    json["fidelity"] = rehearsal.fidelity;
+    json["fidelity_deviation"] = rehearsal.fidelity_deviation;
+  }
+  json["distance"] = rehearsal.distance;
+  json["outcomes"] = nlohmann::ordered_json::array();
+  for (const RehearsedOutcome& outcome : rehearsal.outcomes) {
+    json["outcomes"].push_back({{"bits", outcome.bits},
+                                {"without_noise", outcome.without_noise},
+                                {"with_noise", outcome.with_noise}});
+  }
+  json["left_out"] = left_out_by_the_model();
+  return json;
+}
+
 nlohmann::ordered_json json_of(const Compiled& compiled) {
-  return {{"source", {{"file", compiled.source_file}, {"sha256", compiled.source_sha256}}},
-          {"target", {{"name", compiled.target.name}, {"sha256", compiled.target.sha256}}},
-          {"totals", json_of(compiled.timed.totals)},
-          {"before", json_of(compiled.before)}};
+  nlohmann::ordered_json json = {
+      {"source", {{"file", compiled.source_file}, {"sha256", compiled.source_sha256}}},
+      {"target", {{"name", compiled.target.name}, {"sha256", compiled.target.sha256}}},
+      {"totals", json_of(compiled.timed.totals)},
+      {"before", json_of(compiled.before)}};
+  if (compiled.rehearsal != nullptr) json["rehearsal"] = json_of(*compiled.rehearsal);
+  return json;
 }
 
 std::string text_of(const Compiled& compiled) {
@@ -92,6 +119,36 @@ std::string text_of(const Compiled& compiled) {
     }
   }
   return text + "\n";
+}
+
+std::string text_of(const Rehearsal& rehearsal) {
+  constexpr std::size_t most_rows = 10;
+  std::string text = fmt::format("rehearsal by {}", name(rehearsal.method));
+  if (rehearsal.shots > 0) text += fmt::format(", {} shots", rehearsal.shots);
+  text += fmt::format("\nestimated success {:.4f}", rehearsal.estimate);
+  if (rehearsal.no_error >= 0) {
+    text += fmt::format(", shots without error {:.4f} +- {:.4f}", rehearsal.no_error,
+                        rehearsal.no_error_deviation);
+  }
+  if (rehearsal.fidelity >= 0) {
+    text += fmt::format(", fidelity {:.6f}", rehearsal.fidelity);
+    if (rehearsal.fidelity_deviation > 0) text += fmt::format(" +- {:.6f}", rehearsal.fidelity_deviation);
+  }
+  text += "\n";
+  if (!rehearsal.outcomes.empty()) {
+    std::vector<std::vector<std::string>> rows = {{"outcome", "without noise", "with noise"}};
+    for (const RehearsedOutcome& outcome : rehearsal.outcomes) {
+      if (rows.size() > most_rows) break;
+      rows.push_back({outcome.bits, fmt::format("{:.4f}", outcome.without_noise),
+                      fmt::format("{:.4f}", outcome.with_noise)});
+    }
+    text += "\n" + table(rows);
+    if (rehearsal.outcomes.size() > most_rows) {
+      text += fmt::format("and {} other outcomes\n", rehearsal.outcomes.size() - most_rows);
+    }
+    text += fmt::format("total variation distance of the two {:.4f}\n", rehearsal.distance);
+  }
+  return text + std::string(left_out_by_the_model()) + "\n";
 }
 
 std::string table(const std::vector<std::vector<std::string>>& rows) {

@@ -5,6 +5,7 @@
 #include <string>
 
 #include "circuit/before.h"
+#include "targets/rehearse.h"
 #include "targets/schedule.h"
 #include "targets/target.h"
 
@@ -18,7 +19,8 @@ struct Compiled {
   const Placed& placed;
   const Timed& timed;
   Before before;
-  std::string check;  // how the result was checked and what that proves; may be empty
+  std::string check;                     // how the result was checked and what that proves; may be empty
+  const Rehearsal* rehearsal = nullptr;  // if one was asked for
 };
 
 void write_timeline_json(std::ostream& out, const Compiled& compiled);

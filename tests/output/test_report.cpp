@@ -47,6 +47,17 @@ TEST_CASE("the page is well-formed, whole and tells the figures") {
   CHECK(text.find("if (c[0] == 1)") != std::string::npos);
 }
 
+TEST_CASE("a rehearsal has its own picture") {
+  Sample sample;
+  Rehearsal rehearsal;
+  rehearsal.outcomes = {{"c=01", 0.75, 0.7}, {"c=10", 0.25, 0.3}};
+  sample.compiled.rehearsal = &rehearsal;
+  const std::string text = page(sample.compiled);
+  CHECK(is_well_formed(text));
+  CHECK(count(text, "role=\"img\"") == 6);
+  CHECK(text.find("70.00 %") != std::string::npos);
+}
+
 TEST_CASE("names cannot break out of the page") {
   Sample sample;
   sample.compiled.source_file = "<script>\"&'</script>.qasm";

@@ -147,6 +147,27 @@ TEST_CASE("the summary shows what the JSON says") {
   CHECK(text.find(fmt::format("{:.4f}", sample.timed.totals.success)) != std::string::npos);
 }
 
+TEST_CASE("the rehearsal in the summary") {
+  Sample sample;
+  Rehearsal rehearsal;
+  rehearsal.shots = 200;
+  rehearsal.estimate = 0.9;
+  rehearsal.no_error = 0.895;
+  rehearsal.no_error_deviation = 0.02;
+  rehearsal.distance = 0.05;
+  rehearsal.outcomes = {{"c=01", 0.75, 0.7}, {"c=10", 0.25, 0.3}};
+  sample.compiled.rehearsal = &rehearsal;
+  const json summary = json::parse(json_of(sample.compiled).dump());
+  CHECK(keys(summary["rehearsal"]) == std::set<std::string>{"method", "shots", "estimate", "no_error",
+                                                            "no_error_deviation", "distance", "outcomes",
+                                                            "left_out"});
+  CHECK(summary["rehearsal"]["outcomes"][1] ==
+        json{{"bits", "c=10"}, {"without_noise", 0.25}, {"with_noise", 0.3}});
+  const std::string text = text_of(rehearsal);
+  CHECK(text.find("c=01            0.7500      0.7000\n") != std::string::npos);
+  CHECK(text.find("0.8950 +- 0.0200") != std::string::npos);
+}
+
 TEST_CASE("tables align: words left, numbers right") {
   CHECK(table({{"name", "xx"}, {"buoy", "7"}, {"a", "1200"}}) ==
         "name    xx\n"
