@@ -40,6 +40,7 @@ class Merger {
         continue;
       }
       pusher.arrive(item);
+      forget_closed_runs(out);
       const auto [place, is_first] = home_.try_emplace(key_of(item), out.size());
       if (is_first) {
         out.push_back(item);
@@ -78,6 +79,20 @@ class Merger {
     return high << 32 | low;
   }
 
+  /// Keeps the table as small as the runs that are still open, so that it stays in the cache.
+  void forget_closed_runs(const std::vector<Item>& out) {
+    if (home_.size() < most_homes_) return;
+    std::erase_if(home_, [&](const auto& entry) {
+      const Item& item = out[entry.second];
+      for (int side = 0; side < item.wire_count(); ++side) {
+        const std::uint64_t number = run_[item.wire[side]].number;
+        if (number != entry.first >> 32 && number != (entry.first & 0xffffffffu)) return true;
+      }
+      return false;
+    });
+    most_homes_ = 2 * home_.size() + 4096;
+  }
+
   void add(Item& home, const Item& item, Pusher& pusher) {
     const bool is_crossed = home.wire[0] != item.wire[0];
     double sign = 1;
@@ -103,6 +118,7 @@ class Merger {
   AxisForm& form_;
   std::vector<Run> run_;
   std::unordered_map<std::uint64_t, std::size_t> home_;
+  std::size_t most_homes_ = 4096;
   std::uint32_t runs_ = 0;
 };
 
@@ -116,6 +132,8 @@ Circuit merge_rotations(Circuit circuit, const PassContext& context) {
     for (int sweep = 0; sweep < most_sweeps && merger.sweep(block); ++sweep) {
     }
   }
+  // The quick order lowers with this pass: it wants the normal form, whatever it was given.
+  if (context.effort == Effort::quick) return native_form(form, context.promise);
   return better_of(std::move(circuit), native_form(form, context.promise), context.cost);
 }
 

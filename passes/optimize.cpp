@@ -14,16 +14,17 @@ namespace {
 using Clock = std::chrono::steady_clock;
 using Names = std::vector<std::string_view>;
 
-/// A candidate: passes on source gates, among them one that leaves no gate on three wires; then "lower"; then
-/// passes on the machine's gates round and round until a round gains nothing; then "lower" once more for the
-/// normal form.
+/// A candidate: passes on source gates, among them one that leaves no gate on three wires, the last one
+/// lowering what is left; then passes on the machine's gates round and round until a round gains nothing, and
+/// "lower" for the normal form.
 struct Order {
   std::string_view name;
   Names on_source;
   Names on_native;
 };
 
-const Order quick_order = {"quick", {"rename-swaps", "choose-constructions"}, {"merge-rotations"}};
+// One sweep and no more: merging takes gates on two wires and lowers them on its way.
+const Order quick_order = {"quick", {"rename-swaps", "choose-constructions", "merge-rotations"}, {}};
 
 // What every order but the quick one begins with, on the source's own gates.
 const Names first_of_all = {"rename-swaps", "known-start", "bits-at-end", "merge-gates"};
@@ -37,15 +38,20 @@ Names operator+(Names names, const Names& more) {
 }
 
 const std::vector<Order>& steady_orders() {
+  static const Names lower = {"lower"};
   // Toffolis found, before anything blurs them, and paired; the orders without this compete.
   static const Names paired = Names{"recover-toffolis"} + first_of_all + Names{"pair-toffolis"};
   static const std::vector<Order> orders = {
-      {"blocks", paired + Names{"choose-constructions"}, rounds},
-      {"distant", paired + Names{"choose-constructions", "merge-distant"}, rounds + Names{"merge-distant"}},
-      {"paired phases", paired + Names{"expand-controls", "merge-distant"}, rounds + Names{"merge-distant"}},
-      {"phases", first_of_all + Names{"expand-controls", "merge-distant"}, rounds + Names{"merge-distant"}},
-      {"networks", first_of_all + Names{"expand-controls", "merge-distant", "rotation-networks"}, rounds},
-      {"plain", first_of_all + Names{"expand-controls"}, rounds},
+      {"blocks", paired + Names{"choose-constructions"} + lower, rounds},
+      {"distant", paired + Names{"choose-constructions", "merge-distant"} + lower,
+       rounds + Names{"merge-distant"}},
+      {"paired phases", paired + Names{"expand-controls", "merge-distant"} + lower,
+       rounds + Names{"merge-distant"}},
+      {"phases", first_of_all + Names{"expand-controls", "merge-distant"} + lower,
+       rounds + Names{"merge-distant"}},
+      {"plain", first_of_all + Names{"expand-controls"} + lower, rounds},
+      {"networks", first_of_all + Names{"expand-controls", "merge-distant", "rotation-networks"} + lower,
+       rounds},
   };
   return orders;
 }
@@ -74,13 +80,23 @@ class Candidate {
     context_.threads = 1;
   }
 
-  void run(Circuit circuit) {
-    const auto start = Clock::now();
-    for (const std::string_view name : order_.on_source) step(name, circuit, false);
-    step("lower", circuit, false);
-    result_.is_complete = improve(circuit);
-    step("lower", circuit, true);  // the normal form, whatever the last pass left
+  /// The first candidate runs whatever the time, so that there is a result; the others not once it is over.
+  void run(Circuit circuit, bool is_first) {
     result_.order = order_.name;
+    const auto start = Clock::now();
+    const Clock::time_point deadline = context_.deadline;
+    for (const std::string_view name : order_.on_source) {
+      if (!is_first && context_.out_of_time()) return;
+      // A pass that searches until its deadline leaves a fifth of the time to those after it.
+      if (deadline != Clock::time_point::max()) context_.deadline = start + (deadline - start) / 5 * 4;
+      step(name, circuit, false);
+      context_.deadline = deadline;
+    }
+    if (!order_.on_native.empty()) {
+      result_.is_complete = improve(circuit);
+      step("lower", circuit, true);  // the normal form, whatever the last pass left
+    }
+    result_.is_done = true;
     result_.tally = tally_of(circuit, context_.cost);
     result_.seconds = seconds_since(start);
     circuit_ = std::move(circuit);
@@ -102,7 +118,7 @@ class Candidate {
         step(name, circuit, true);
       }
       const double now = tally_of(circuit, context_.cost).error;
-      if (now >= error * (1 - 1e-9) || context_.effort == Effort::quick) return true;
+      if (now >= error * (1 - 1e-9)) return true;
       error = now;
     }
     return true;
@@ -119,7 +135,7 @@ class Candidate {
     circuit = pass_named(name).run(std::move(circuit), context_);
     row.seconds = seconds_since(start);
     row.gates_after = size_of(circuit);
-    if (is_lowered || name == "lower") row.after = tally_of(circuit, context_.cost);
+    if (is_lowered || name == order_.on_source.back()) row.after = tally_of(circuit, context_.cost);
     rows_.push_back(std::move(row));
   }
 
@@ -137,7 +153,7 @@ void run_all(std::vector<Candidate>& candidates, const Circuit& source, unsigned
   const auto work = [&] {
     for (std::size_t i = next++; i < candidates.size(); i = next++) {
       try {
-        candidates[i].run(source);
+        candidates[i].run(source, i == 0);
       } catch (...) {
         failures[i] = std::current_exception();
       }
@@ -159,11 +175,16 @@ Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace
   if (context.effort == Effort::quick) {
     candidates.emplace_back(quick_order, context);
   } else {
-    for (const Order& order : steady_orders()) candidates.emplace_back(order, context);
+    for (const Order& order : steady_orders()) {
+      candidates.emplace_back(order, context);
+      // All that happens on two wires is stretches, and the first order finds their best form.
+      if (source.wires <= 2 && source.inputs.empty()) break;
+    }
   }
   run_all(candidates, source, context.threads);
   // The first of equals wins, so that the outcome does not hang on which thread was faster.
   const auto best = std::min_element(candidates.begin(), candidates.end(), [](auto& a, auto& b) {
+    if (a.result().is_done != b.result().is_done) return a.result().is_done;
     return a.result().tally.error < b.result().tally.error;
   });
   if (trace) {

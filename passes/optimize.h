@@ -28,6 +28,7 @@ struct TraceResult {
   std::string order;
   Tally tally;
   double seconds = 0;
+  bool is_done = false;  // false: time ran out before it had a result; tally is empty then
   bool is_winner = false;
   bool is_complete = true;  // false: time ran out before its fixed point
 };

@@ -27,7 +27,8 @@ void add(Circuit& circuit, Kind kind, std::initializer_list<std::uint32_t> opera
 }
 
 /// Tally of the optimized circuit, which up to 6 qubits must do the same.
-Tally optimized(const Circuit& source, Effort effort = Effort::steady, const std::vector<double>& inputs = {}) {
+Tally optimized(const Circuit& source, Effort effort = Effort::steady,
+                const std::vector<double>& inputs = {}) {
   PassContext context;
   context.effort = effort;
   const Circuit result = optimize(source, context);
@@ -218,8 +219,7 @@ TEST_CASE("QAOA on a graph: one xx per edge and layer (computed)") {
       if (is_symbolic) circuit.inputs = {{"g", "float", false, {}}, {"b", "float", false, {}}};
       for (std::uint32_t q = 0; q < 10; ++q) add(circuit, Kind::h, {q});
       for (int layer = 0; layer < layers; ++layer) {
-        const Angle gamma =
-            is_symbolic ? Angle{0, circuit.forms.of_input(0)} : Angle{random.real(0.1, 1.4)};
+        const Angle gamma = is_symbolic ? Angle{0, circuit.forms.of_input(0)} : Angle{random.real(0.1, 1.4)};
         const Angle beta = is_symbolic ? Angle{0, circuit.forms.of_input(1)} : Angle{random.real(0.1, 1.4)};
         for (const auto& [a, b] : edges) ladder(circuit, a, b, gamma);
         for (std::uint32_t q = 0; q < 10; ++q) add(circuit, Kind::r, {q}, {beta, {0}});
@@ -238,7 +238,8 @@ TEST_CASE("product formula of an Ising model on a graph: one xx per coupling and
   for (std::size_t e = 0; e < edges.size(); ++e) strength.push_back(random.real(0.05, 0.5));
   constexpr int steps = 4;
   for (int step = 0; step < steps; ++step) {
-    for (std::size_t e = 0; e < edges.size(); ++e) ladder(circuit, edges[e].first, edges[e].second, {strength[e]});
+    for (std::size_t e = 0; e < edges.size(); ++e)
+      ladder(circuit, edges[e].first, edges[e].second, {strength[e]});
     for (std::uint32_t q = 0; q < 9; ++q) add(circuit, Kind::r, {q}, {{0.3}, {0}});
   }
   CHECK(optimized(circuit).xx == edges.size() * steps);
