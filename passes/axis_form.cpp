@@ -440,13 +440,16 @@ class Writer {
   /// Lists the needs of every wire, stretch by stretch, and solves them.
   void plan() {
     std::vector<std::vector<Need>> open(wires_);
+    std::vector<std::size_t> longest(wires_, 0);  // stretch of each wire, or more: a reservation
     std::size_t place = 0;
     std::size_t total = wires_;
     for (const Item& item : source_.items) {
       total += item.what == Item::What::fence ? source_.fences[item.fence].wires.size()
                                               : static_cast<std::size_t>(item.wire_count());
+      for (int side = 0; side < item.wire_count(); ++side) ++longest[item.wire[side]];
     }
     poles_.assign(total, z_axis);
+    for (std::uint32_t w = 0; w < wires_; ++w) open[w].reserve(longest[w] + 1);
     const auto close = [&](std::uint32_t wire, const Su2& frame, bool is_free) {
       Need need;
       need.what = Need::What::end;

@@ -130,7 +130,11 @@ class Chooser {
 }  // namespace
 
 Circuit choose_constructions(Circuit circuit, const PassContext& context) {
-  Chooser(circuit, context).run();
+  for (const Block& block : circuit.blocks) {
+    if (std::none_of(block.begin(), block.end(), needs_construction)) continue;
+    Chooser(circuit, context).run();
+    break;
+  }
   return circuit;
 }
 

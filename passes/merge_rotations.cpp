@@ -29,33 +29,32 @@ class Merger {
     run_.assign(form_.shell.wires, {});
     home_.clear();
     Pusher pusher(form_.shell.wires);
-    std::vector<Item> out;
-    out.reserve(block.items.size());
-    for (Item item : block.items) {
+    std::vector<Item>& items = block.items;
+    std::size_t kept = 0;  // items[0 ... kept) are done: the list is rewritten in its own place
+    for (std::size_t i = 0; i < items.size(); ++i) {
+      Item item = items[i];
       if (item.what == Item::What::fence) {
         Fence& fence = block.fences[item.fence];
         pusher.arrive(fence, form_);
         for (const std::uint32_t wire : fence.wires) run_[wire].number = 0;
-        out.push_back(item);
+        items[kept++] = item;
         continue;
       }
       pusher.arrive(item);
-      forget_closed_runs(out);
-      const auto [place, is_first] = home_.try_emplace(key_of(item), out.size());
+      forget_closed_runs(items);
+      const auto [place, is_first] = home_.try_emplace(key_of(item), kept);
       if (is_first) {
-        out.push_back(item);
+        items[kept++] = item;
       } else {
-        add(out[place->second], item, pusher);
+        add(items[place->second], item, pusher);
       }
     }
+    items.resize(kept);
     pusher.finish(block, form_);
-    const std::size_t before = out.size();
-    std::erase_if(out, [](const Item& item) {
+    const auto vanished = std::erase_if(items, [](const Item& item) {
       return item.what != Item::What::fence && item.angle.is_known() && std::abs(item.angle.constant) < 1e-13;
     });
-    const bool any_vanished = out.size() < before;
-    block.items = std::move(out);
-    return any_vanished;
+    return vanished > 0;
   }
 
  private:
@@ -80,10 +79,10 @@ class Merger {
   }
 
   /// Keeps the table as small as the runs that are still open, so that it stays in the cache.
-  void forget_closed_runs(const std::vector<Item>& out) {
+  void forget_closed_runs(const std::vector<Item>& items) {
     if (home_.size() < most_homes_) return;
     std::erase_if(home_, [&](const auto& entry) {
-      const Item& item = out[entry.second];
+      const Item& item = items[entry.second];
       for (int side = 0; side < item.wire_count(); ++side) {
         const std::uint64_t number = run_[item.wire[side]].number;
         if (number != entry.first >> 32 && number != (entry.first & 0xffffffffu)) return true;
