@@ -10,6 +10,7 @@
 #include "verify/memory.h"
 #include "verify/programs.h"
 #include "verify/rotations.h"
+#include "verify/side_by_side.h"
 #include "verify/trim.h"
 
 namespace isinglass {
@@ -215,10 +216,7 @@ Verdict compare_densely(const Job& job, const Shown& shown) {
 }
 
 /// Without amplitudes: what the Pauli rotations of both show.
-Verdict compare_rotations(const Job& job, const Shown& shown) {
-  if (!is_simple(job, shown)) {
-    return not_shown("The programs are too large for state vectors, and measure on the way.");
-  }
+Verdict compare_rotations(const Job& job) {
   RotationResult worst;
   worst.state = RotationResult::State::cancelled;
   const int sets = for_each_input_set(job, [&](const InputValues& values) {
@@ -239,6 +237,51 @@ Verdict compare_rotations(const Job& job, const Shown& shown) {
           ? both + "; all of them cancel and the Clifford part does nothing: this decides."
           : both + "; what is left after all cancels is not nothing.";
   return judged(job, "rotations", deviation, words + for_inputs(job, sets));
+}
+
+/// Without amplitudes: both circuits followed gate by gate.
+Verdict compare_side_by_side(const Job& job) {
+  SideBySide worst;
+  worst.state = SideBySide::State::same;
+  const int sets = for_each_input_set(job, [&](const InputValues& values) {
+    if (worst.state != SideBySide::State::same) return;
+    const double before = worst.distance;
+    worst = by_following(job, values);
+    worst.distance = std::max(worst.distance, before);
+  });
+  const std::string both = fmt::format(
+      "Both circuits were followed gate by gate ({} fused gates), keeping what they differ in", worst.gates);
+  if (worst.state == SideBySide::State::too_wide) {
+    return not_shown(
+        fmt::format("{}; after {} gates that could not be held on {} wires or fewer any more, which proves "
+                    "nothing.",
+                    both, worst.followed, worst.widest));
+  }
+  if (worst.state == SideBySide::State::same && worst.distance > job.options.tolerance) {
+    return not_shown(fmt::format(
+        "{}; what was rounded on the way adds up to {:.1e}, more than the tolerance.", both, worst.distance));
+  }
+  const Deviation deviation{worst.distance, worst.distance * worst.distance, 0};
+  const std::string words =
+      worst.state == SideBySide::State::same
+          ? fmt::format(
+                "{}: it never touched more than {} wires together and is nothing at the end, which decides.",
+                both, worst.widest)
+          : both + ": at the end it is not nothing.";
+  return judged(job, "following", deviation, words + for_inputs(job, sets));
+}
+
+/// The methods without amplitudes, the cheaper first.
+Verdict compare_sparsely(const Job& job, const Shown& shown) {
+  if (!is_simple(job, shown)) {
+    return not_shown("The programs are too large for state vectors, and measure on the way.");
+  }
+  const Verdict followed = compare_side_by_side(job);
+  if (followed.answer != Answer::not_shown) return followed;
+  Verdict rotated = compare_rotations(job);
+  if (rotated.answer == Answer::not_shown)
+    rotated.explanation = followed.explanation + " " + rotated.explanation;
+  return rotated;
 }
 
 }  // namespace
@@ -272,7 +315,7 @@ Verdict compare(const Circuit& source, const Circuit& compiled, const Promise& p
   }
   const bool is_dense = std::max(left.wires, right.wires) <= options.most_state_wires;
   try {
-    return is_dense ? compare_densely(job, shown) : compare_rotations(job, shown);
+    return is_dense ? compare_densely(job, shown) : compare_sparsely(job, shown);
   } catch (const Unsupported& limit) {
     return not_shown(fmt::format("The comparison ended without a result: {} was beyond it.", limit.what()));
   }
