@@ -276,6 +276,7 @@ Verdict compare_sparsely(const Job& job, const Shown& shown) {
   if (!is_simple(job, shown)) {
     return not_shown("The programs are too large for state vectors, and measure on the way.");
   }
+  if (job.options.most_followed_wires == 0) return compare_rotations(job);
   const Verdict followed = compare_side_by_side(job);
   if (followed.answer != Answer::not_shown) return followed;
   Verdict rotated = compare_rotations(job);

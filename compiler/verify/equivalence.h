@@ -34,7 +34,9 @@ struct CheckOptions {
   double infidelity = 0;
   unsigned most_unitary_wires = 11;  // whole unitaries up to here
   unsigned most_state_wires = 22;    // state vectors up to here
-  int states = 4;                    // random input states where the unitary is too large
+  unsigned most_followed_wires =
+      8;           // held together when large circuits are followed side by side; 0: not done
+  int states = 4;  // random input states where the unitary is too large
   std::size_t most_branches = 4096;  // runs that differ in an outcome of a measurement
   std::size_t most_rounds = 64;  // of a loop on measured bits; longer runs are left out, and the words say so
   unsigned threads = 1;

@@ -17,8 +17,7 @@ namespace {
 using Matrix = Eigen::MatrixXcd;
 using Wires = std::vector<std::uint32_t>;
 
-constexpr std::size_t most_wires = 8;  // of one factor
-constexpr double nothing = 1e-9;       // entries up to this are rounding
+constexpr double nothing = 1e-9;  // entries up to this are rounding
 
 /// The gates of one circuit in the order that their wires demand.
 class Queue {
@@ -155,7 +154,7 @@ class Follower {
       result.widest = widest_;
       result.distance = rounded_;
       if (!choice) break;
-      if (choice->wires > most_wires) return result;
+      if (choice->wires > job_.options.most_followed_wires) return result;
       take(choice->from_source, choice->kernel);
       if (std::chrono::steady_clock::now() > job_.options.deadline) throw Unsupported("the time given");
     }
