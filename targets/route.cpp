@@ -18,6 +18,7 @@
 namespace isinglass {
 
 Routes::Routes(const Target& target) : ions_(target.ions) {
+  if (target.pairs.empty()) return;
   error_.assign(ions_ * ions_, unconnected);
   next_.assign(ions_ * ions_, 0);
   // Floyd, "Algorithm 97: shortest path" (1962): lengths are the errors of a swap on each pair.

@@ -10,7 +10,7 @@
 
 namespace isinglass {
 
-/// The least-error ways between ions over reachable pairs.
+/// The least-error ways between ions over reachable pairs. Where all pairs are alike nobody asks for ways.
 class Routes {
  public:
   explicit Routes(const Target& target);

@@ -3,6 +3,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <unordered_set>
 
 #include "targets/leaks.h"
 #include "targets/list_schedule.h"
@@ -59,15 +60,9 @@ double bounded(double error) {
 class Estimator {
  public:
   Estimator(const Placed& placed, const Target& target, Timed& timed)
-      : placed_(placed),
-        circuit_(placed.circuit),
-        target_(target),
-        timed_(timed),
-        uses_pair_(target.pairs.size(), false) {}
+      : placed_(placed), circuit_(placed.circuit), target_(target), timed_(timed) {}
 
-  std::size_t pairs() const {
-    return static_cast<std::size_t>(std::count(uses_pair_.begin(), uses_pair_.end(), true));
-  }
+  std::size_t pairs() const { return pairs_.size(); }
 
   /// Completes the list of a block by errors and waits; `ions` is carried on. What comes after the block
   /// lasts until `end`; ions of `kept` that are alive wait for it.
@@ -192,7 +187,7 @@ class Estimator {
     const double s = std::abs(theta) / (pi / 2);
     ++sums.xx;
     sums.xx_units += s;
-    uses_pair_[target_.pair_index(a, b)] = true;
+    pairs_.insert(std::uint64_t{std::min(a, b)} << 32 | std::max(a, b));
     entry.error = bounded(pair.error(theta));
     sums.lose(Source::xx, entry.error);
     sums.depends(pair.floor, 1, entry.error);
@@ -233,7 +228,7 @@ class Estimator {
   const Circuit& circuit_;
   const Target& target_;
   Timed& timed_;
-  std::vector<bool> uses_pair_;
+  std::unordered_set<std::uint64_t> pairs_;  // that interact anywhere
 };
 
 TimedKind timed_kind(Kind kind) {

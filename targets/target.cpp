@@ -14,8 +14,6 @@ namespace {
 
 using Need = Section::Need;
 
-constexpr std::uint32_t most_ions = 512;
-
 /// Average infidelity to process infidelity: (1 - Fe) = (1 - F)(d + 1)/d (Horodecki 1999; Nielsen 2002).
 struct Conversion {
   double one = 1;
@@ -165,17 +163,17 @@ Target typical(std::uint32_t ions) {
   target.name = fmt::format("typical-{}", ions);
   target.ions = ions;
   target.ion.resize(ions);
-  target.pairs.resize(ions < 2 ? 0 : std::size_t{ions} * (ions - 1) / 2);
+  if (ions >= 2 && ions <= most_described_ions) target.pairs.resize(std::size_t{ions} * (ions - 1) / 2);
   return target;
 }
 
 void apply_figures(MachineFile& file, Target& target, bool complete) {
   Section machine(file, "machine");
   if (complete) machine.node("ions");  // read before: the target has its ions
-  machine.whole("beams", target.beams, target.ions > 1 ? 2 : 1, most_ions);
+  machine.whole("beams", target.beams, target.ions > 1 ? 2 : 1, most_described_ions);
   bool is_steered = true;
   machine.flag("beams_steered", is_steered);
-  machine.whole("interactions_at_once", target.interactions_at_once, 1, most_ions / 2);
+  machine.whole("interactions_at_once", target.interactions_at_once, 1, most_described_ions / 2);
   machine.number("crosstalk", target.crosstalk, {0, 1, false});
   machine.flag("reads_alone", target.reads_alone);
   machine.flag("has_reset", target.has_reset);
@@ -201,7 +199,7 @@ Target read_target(const std::string& path) {
 
   std::uint32_t ions = 1;
   Section machine(file, "machine");
-  machine.whole("ions", ions, 1, most_ions, Need::required);
+  machine.whole("ions", ions, 1, most_described_ions, Need::required);
   Target target = typical(ions);
   target.name = name;
   target.sha256 = sha256(file.text());
@@ -233,14 +231,17 @@ Cost cost_of(const Target& target) {
   double quarter = 0;
   double full = 0;
   double takes = 0;
-  for (std::uint32_t a = 0; a < target.ions; ++a) {
+  const auto count = [&](const PairFigures& pair) {
+    ++pairs;
+    quarter += pair.error(pi / 8);
+    full += pair.error(pi / 2);
+    takes += pair.takes_us;
+  };
+  if (target.pairs.empty()) count(target.every_pair);
+  for (std::uint32_t a = 0; a < target.ions && !target.pairs.empty(); ++a) {
     for (std::uint32_t b = a + 1; b < target.ions; ++b) {
-      const PairFigures& pair = target.pair(a, b);
-      if (!pair.reachable || !target.ion[a].addressed || !target.ion[b].addressed) continue;
-      ++pairs;
-      quarter += pair.error(pi / 8);
-      full += pair.error(pi / 2);
-      takes += pair.takes_us;
+      const bool is_lit = target.ion[a].addressed && target.ion[b].addressed;
+      if (is_lit && target.pair(a, b).reachable) count(target.pair(a, b));
     }
   }
   if (pairs > 0) {

@@ -65,7 +65,8 @@ struct Target {
   std::string sha256;  // of the file it was read from; empty for a typical machine
   std::uint32_t ions = 0;
   std::vector<IonFigures> ion;
-  std::vector<PairFigures> pairs;  // of a < b in the order of pair_index
+  std::vector<PairFigures> pairs;  // of a < b in the order of pair_index; empty: all are like every_pair
+  PairFigures every_pair;
 
   std::uint32_t beams = 32;                // ions that are lit at once: an r needs one beam, an xx two
   std::uint32_t interactions_at_once = 1;  // xx on disjoint pairs at the same time
@@ -80,8 +81,14 @@ struct Target {
     if (a > b) std::swap(a, b);
     return std::size_t{a} * (2 * std::size_t{ions} - a - 1) / 2 + (b - a - 1);
   }
-  const PairFigures& pair(std::uint32_t a, std::uint32_t b) const { return pairs[pair_index(a, b)]; }
-  PairFigures& pair(std::uint32_t a, std::uint32_t b) { return pairs[pair_index(a, b)]; }
+  const PairFigures& pair(std::uint32_t a, std::uint32_t b) const {
+    return pairs.empty() ? every_pair : pairs[pair_index(a, b)];
+  }
+  /// For writing: from then on each pair has figures of its own.
+  PairFigures& pair(std::uint32_t a, std::uint32_t b) {
+    if (pairs.empty()) pairs.assign(std::size_t{ions} * (ions - 1) / 2, every_pair);
+    return pairs[pair_index(a, b)];
+  }
 
   /// Probability that light of an operation by `theta` leaks to one neighbour and turns it: a rotation by
   /// crosstalk * theta, whose error is sin^2 of half of it.
@@ -91,7 +98,11 @@ struct Target {
   }
 };
 
-/// The machine that is assumed without --target: `ions` ions, every pair reachable, the figures above.
+/// A machine file describes at most so many ions.
+inline constexpr std::uint32_t most_described_ions = 512;
+
+/// The machine that is assumed without --target: `ions` ions, any number, every pair reachable, the figures
+/// above.
 Target typical(std::uint32_t ions);
 
 /// Reads a machine description (TOML; keys in README.md beside this file). Throws Failure: file_trouble when

@@ -52,6 +52,8 @@ constexpr double row_height = 22;
 constexpr double bar_height = 14;
 constexpr double chart_top = 8;
 constexpr std::size_t most_single_entries = 4000;
+// Of longer chains the beginning is drawn.
+constexpr int most_rows_drawn = 128;
 
 /// What an entry looks like; the names are classes of the style sheet.
 std::string_view look(TimedKind kind) {
@@ -75,7 +77,7 @@ class TimelinePicture {
   explicit TimelinePicture(const Compiled& compiled)
       : compiled_(compiled), circuit_(compiled.placed.circuit), row_of_(circuit_.wires, -1) {
     for (std::uint32_t ion = 0; ion < circuit_.wires; ++ion) {
-      if (compiled.placed.in_use[ion]) row_of_[ion] = rows_++;
+      if (compiled.placed.in_use[ion] && rows_ < most_rows_drawn) row_of_[ion] = rows_++;
     }
     span_ = std::max(compiled.timed.totals.duration, 1e-9);
   }
@@ -97,6 +99,7 @@ class TimelinePicture {
   }
 
  private:
+  bool is_drawn(std::uint32_t ion) const { return row_of_[ion] >= 0; }
   double x(double time) const { return chart_left + (chart_width - chart_left - 4) * time / span_; }
   double y(std::uint32_t ion) const { return chart_top + row_of_[ion] * row_height; }
 
@@ -111,7 +114,7 @@ class TimelinePicture {
                            i == 0 ? "0" : time_text(i * step));
     }
     for (std::uint32_t ion = 0; ion < circuit_.wires; ++ion) {
-      if (row_of_[ion] < 0) continue;
+      if (!is_drawn(ion)) continue;
       const double middle = y(ion) + row_height / 2;
       text_ += fmt::format("<text class=\"tick\" x=\"{}\" y=\"{}\" text-anchor=\"end\">ion {}</text>",
                            chart_left - 8, middle + 4, ion);
@@ -121,6 +124,7 @@ class TimelinePicture {
   }
 
   void bar(std::string_view style, double at, double takes, std::uint32_t ion, const std::string& title) {
+    if (!is_drawn(ion)) return;
     const double width = std::max(x(at + takes) - x(at), 1.4);
     text_ += fmt::format(
         "<rect class=\"{}\" x=\"{:.2f}\" y=\"{:.1f}\" width=\"{:.2f}\" height=\"{}\" "
@@ -148,6 +152,7 @@ class TimelinePicture {
         decision(entry, *op, begin);
       } else if (entry.kind == TimedKind::barrier) {
         for (const std::uint32_t ion : circuit_.operands(*op)) {
+          if (!is_drawn(ion)) continue;
           text_ +=
               fmt::format("<line class=\"fence\" x1=\"{0:.2f}\" x2=\"{0:.2f}\" y1=\"{1}\" y2=\"{2}\"/>\n",
                           x(begin + entry.at), y(ion), y(ion) + row_height);
@@ -165,6 +170,7 @@ class TimelinePicture {
 
   /// The two ions of an interaction are joined.
   void link(const std::string& style, double at, const TimedOperation& entry) {
+    if (!is_drawn(entry.ion[0]) || !is_drawn(entry.ion[1])) return;
     const double middle = (x(at) + x(at + entry.takes)) / 2;
     links_ += fmt::format("<line class=\"{0}\" x1=\"{1:.2f}\" x2=\"{1:.2f}\" y1=\"{2}\" y2=\"{3}\"/>\n",
                           style, middle, y(entry.ion[0]) + row_height / 2, y(entry.ion[1]) + row_height / 2);
@@ -179,7 +185,10 @@ class TimelinePicture {
         longest = arm.block;
       }
     }
-    const auto ions = circuit_.operands(op);
+    std::vector<std::uint32_t> ions;
+    for (const std::uint32_t ion : circuit_.operands(op)) {
+      if (is_drawn(ion)) ions.push_back(ion);
+    }
     if (!ions.empty()) {
       const auto [top, bottom] =
           std::minmax_element(ions.begin(), ions.end(),
@@ -202,7 +211,7 @@ class TimelinePicture {
     const double column_us = span_ / columns;
     fill(0, 0, column_us, columns, looks, filled);
     for (std::uint32_t ion = 0; ion < circuit_.wires; ++ion) {
-      if (row_of_[ion] < 0) continue;
+      if (!is_drawn(ion)) continue;
       for (std::size_t c = 0; c < columns; ++c) {
         const auto& share = filled[static_cast<std::size_t>(row_of_[ion]) * columns + c];
         const auto most = std::max_element(share.begin(), share.end());
@@ -238,6 +247,7 @@ class TimelinePicture {
         const double left = static_cast<double>(c) * column_us;
         const double part = std::min(to, left + column_us) - std::max(from, left);
         for (int i = 0; i < entry.ion_count; ++i) {
+          if (!is_drawn(entry.ion[i])) continue;
           const auto row = static_cast<std::size_t>(row_of_[entry.ion[i]]);
           filled[row * columns + c][static_cast<std::size_t>(kind - looks.begin())] +=
               static_cast<float>(part);
@@ -392,9 +402,10 @@ std::vector<PairWork> work_by_pair(const Circuit& circuit) {
 std::string picture_of_pairs(const Compiled& compiled) {
   const Circuit& circuit = compiled.placed.circuit;
   std::vector<std::uint32_t> ions;
-  std::vector<std::size_t> place(circuit.wires, 0);
+  constexpr std::size_t nowhere = ~std::size_t{0};
+  std::vector<std::size_t> place(circuit.wires, nowhere);
   for (std::uint32_t ion = 0; ion < circuit.wires; ++ion) {
-    if (!compiled.placed.in_use[ion]) continue;
+    if (!compiled.placed.in_use[ion] || ions.size() == most_rows_drawn) continue;
     place[ion] = ions.size();
     ions.push_back(ion);
   }
@@ -421,6 +432,7 @@ std::string picture_of_pairs(const Compiled& compiled) {
     text += "\n";
   }
   for (const PairWork& work : list) {
+    if (place[work.a] == nowhere || place[work.b] == nowhere) continue;
     text += fmt::format(
         "<rect class=\"inter\" opacity=\"{:.2f}\" x=\"{:.1f}\" y=\"{:.1f}\" width=\"{:.1f}\" "
         "height=\"{:.1f}\"><title>ions {} and "
@@ -436,7 +448,7 @@ std::string picture_of_pairs(const Compiled& compiled) {
 
 std::string picture_of_placement(const Compiled& compiled) {
   const Placed& placed = compiled.placed;
-  const std::uint32_t ions = placed.circuit.wires;
+  const std::uint32_t ions = std::min(placed.circuit.wires, std::uint32_t{most_rows_drawn});
   constexpr std::uint32_t most_in_row = 16;
   const std::uint32_t in_row = std::min(std::max(ions, 1u), most_in_row);
   const double step = 1000.0 / in_row;
@@ -444,8 +456,10 @@ std::string picture_of_placement(const Compiled& compiled) {
   std::vector<std::string> start(ions);
   std::vector<std::string> end(ions);
   for (std::uint32_t q = 0; q < placed.start.size(); ++q) {
-    start[placed.start[q]] = placed.circuit.wire_name(q);
-    end[placed.circuit.end_wire[q]] = placed.circuit.wire_name(q);
+    const std::uint32_t first = placed.start[q];
+    const std::uint32_t last = placed.circuit.end_wire[q];
+    if (first < ions) start[first] = placed.circuit.wire_name(q);
+    if (last < ions) end[last] = placed.circuit.wire_name(q);
   }
   std::string text;
   const std::uint32_t rows = (ions + in_row - 1) / in_row;

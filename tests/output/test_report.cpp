@@ -66,6 +66,19 @@ TEST_CASE("names cannot break out of the page") {
   CHECK(count(text, "<script") == 0);
 }
 
+TEST_CASE("a long chain is drawn in bounded size") {
+  Circuit c;
+  add_register(c, "q", 3000);
+  for (std::uint32_t q = 0; q + 1 < 3000; ++q)
+    c.body().push_back(c.make(Kind::xx, {q, q + 1}, {{1}, {0}, {0}}));
+  const Target target = typical(3000);
+  const Placed placed = place(c, target);
+  const Timed timed = schedule(placed, target, {});
+  const std::string text = page({"a", "", target, placed, timed, {}, ""});
+  CHECK(is_well_formed(text));
+  CHECK(text.size() < 3000000);
+}
+
 TEST_CASE("a long program is drawn in bounded size") {
   support::Random random(4);
   const auto size = [&](int gates) {

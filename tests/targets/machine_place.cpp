@@ -9,6 +9,7 @@
 #include "support/random_circuits.h"
 #include "support/simulator.h"
 #include "targets/place.h"
+#include "targets/schedule.h"
 
 using namespace isinglass;
 using support::Random;
@@ -70,6 +71,18 @@ TEST_CASE("on a uniform machine everybody stays where the source put him") {
   CHECK(placed.start == std::vector<std::uint32_t>{0, 1, 2, 3});
   CHECK(placed.circuit.wires == 6);
   CHECK(placed.in_use == std::vector<bool>{true, true, true, true, false, false});
+}
+
+TEST_CASE("programs of very many qubits keep their order") {
+  Circuit circuit;
+  add_register(circuit, "q", 20000);
+  circuit.body().push_back(circuit.make(Kind::xx, {7, 19999}, {{0.3}, {0}, {0}}));
+  const Target target = typical(20001);
+  const Placed placed = place(circuit, target);
+  CHECK(placed.start[19999] == 19999);
+  const Timed timed = schedule(placed, target, {true, true});
+  CHECK(timed.totals.xx == 1);
+  CHECK(timed.totals.pairs == 1);
 }
 
 TEST_CASE("the pair that interacts most gets the best pair") {

@@ -11,6 +11,7 @@
 #include "circuit/files.h"
 #include "circuit/message.h"
 #include "support/program.h"
+#include "support/random_circuits.h"
 #include "targets/target.h"
 
 using namespace isinglass;
@@ -161,6 +162,48 @@ TEST_CASE("every fault has its place") {
   CHECK(faults(std::string("\0\x01\xff\xfe", 4)).size() == 1);
   // Two faults, two messages, in the order of the file.
   CHECK(faults(changed("2e-3", "1.2") + "speed = 3\n").size() == 2);
+}
+
+TEST_CASE("a damaged file is read or refused, never more than that") {
+  support::Random random(31);
+  const std::string whole = read_text(support::tree_path("targets/lugger-12.toml"));
+  int refused = 0;
+  for (int round = 0; round < 300; ++round) {
+    std::string text = whole;
+    for (int k = random.between(1, 4); k > 0; --k) {
+      const auto at = static_cast<std::size_t>(random.below(static_cast<int>(text.size())));
+      switch (random.below(4)) {
+        case 0:
+          text[at] = static_cast<char>(random.below(256));
+          break;
+        case 1:
+          text.erase(at, static_cast<std::size_t>(random.between(1, 30)));
+          break;
+        case 2:
+          text.insert(at,
+                      text.substr(static_cast<std::size_t>(random.below(static_cast<int>(text.size()))), 20));
+          break;
+        default:
+          text.resize(at + 1);
+          break;
+      }
+    }
+    try {
+      const Target target = read(text);
+      CHECK(target.ions > 0);
+    } catch (const Failure& failure) {
+      ++refused;
+      CHECK(failure.exit == Exit::target_cannot);
+      CHECK(!failure.messages.empty());
+    }
+  }
+  CHECK(refused > 100);
+}
+
+TEST_CASE("a typical machine of any size") {
+  const Target target = typical(100000);
+  CHECK(target.pair(5, 99999).reachable);
+  CHECK(cost_of(target).interaction_us == typical(2).pair(0, 1).takes_us);
 }
 
 TEST_CASE("a missing file is file trouble") {
