@@ -966,7 +966,8 @@ Value converted(const Value& value, Type type, const Rules& rules, bool* narrowe
   if (narrowed != nullptr && value.is_known()) {
     const bool both_whole = is_whole(value.type.base) && is_whole(type.base);
     const bool from_real = value.type.base == Base::real && is_whole(type.base);
-    if (both_whole) *narrowed = value.integer != result.integer;
+    // That a uint wraps is the language's rule and no surprise.
+    if (both_whole && type.base != Base::natural) *narrowed = value.integer != result.integer;
     if (from_real) *narrowed = value.real != result.integer.to_double();
   }
   return result;

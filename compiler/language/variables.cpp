@@ -614,7 +614,7 @@ void Reader::check_writable(const Location& location, syntax::Span at) {
       fail(at, fmt::format("`{}` is an input; it cannot be assigned", symbol.name));
     if (symbol.is_readonly) fail(at, fmt::format("`{}` is readonly here", symbol.name));
   };
-  if (location.parts.empty()) return check(*location.symbol);
+  check(*location.symbol);
   for (const Part& part : location.parts) check(*part.symbol);
 }
 
