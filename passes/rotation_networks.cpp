@@ -194,10 +194,21 @@ class PieceSolver {
     if (after.error < best.price.error) best = {std::move(result), after};
   }
 
+  /// The more windows can be tried, the hotter the search may start (measured on coupled cluster).
+  static double heat(std::uint64_t tries, Clock::time_point deadline, std::size_t turns) {
+    constexpr double per_second = 15000;
+    double windows = static_cast<double>(tries);
+    if (deadline != Clock::time_point::max()) {
+      const double seconds = std::chrono::duration<double>(deadline - Clock::now()).count();
+      windows = std::min(windows, std::max(0.0, seconds) * per_second);
+    }
+    return std::min(1.5, 0.4 * std::pow(windows / static_cast<double>(turns) / 100, 0.7));
+  }
+
   /// As many searches side by side as there are threads; the best of them counts.
   void search_part(Sequence& piece, std::uint64_t tries, Clock::time_point deadline, std::size_t part) {
     if (piece.turns.empty()) return;
-    SearchPlan plan{context_.cost, may_rename_, tries, deadline};
+    SearchPlan plan{context_.cost, may_rename_, tries, deadline, heat(tries, deadline, piece.turns.size())};
     std::vector<Sequence> sequences(std::max(1u, context_.threads), piece);
     std::vector<Price> prices(sequences.size());
     const auto work = [&](std::size_t island) {

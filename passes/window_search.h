@@ -21,7 +21,7 @@ struct SearchPlan {
   bool may_rename = true;
   std::uint64_t tries = 0;  // windows at most
   std::chrono::steady_clock::time_point deadline = std::chrono::steady_clock::time_point::max();
-  double heat = 0.15;  // at the start: how much worse is often taken, in errors of one full interaction
+  double heat = 0.2;  // at the start: how much worse is often taken, in errors of one full interaction
 };
 
 /// Improves a sequence on wires 0 to wires - 1 and returns its price. The result is never dearer.
