@@ -202,7 +202,7 @@ class PieceSolver {
       const double seconds = std::chrono::duration<double>(deadline - Clock::now()).count();
       windows = std::min(windows, std::max(0.0, seconds) * per_second);
     }
-    return std::min(1.5, 0.4 * std::pow(windows / static_cast<double>(turns) / 100, 0.7));
+    return std::min(2.5, 0.27 * std::sqrt(windows / static_cast<double>(turns)));
   }
 
   /// As many searches side by side as there are threads; the best of them counts.
