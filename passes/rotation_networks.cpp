@@ -295,9 +295,7 @@ class TimeTable {
 
 Circuit synthesize_rotation_networks(Circuit circuit, const PassContext& context) {
   if (context.effort == Effort::quick) return circuit;
-  auto end = context.deadline;
-  if (end != Clock::time_point::max()) end -= (end - Clock::now()) / 10;  // the passes that follow need some
-  TimeTable time(circuit, end);
+  TimeTable time(circuit, context.deadline);
   rewrite_pieces(circuit, [&](Circuit& owner, std::vector<LocalRotation> piece, bool may_rename) {
     RewrittenPiece result;
     std::vector<std::uint32_t> where(owner.wires);
