@@ -1,4 +1,6 @@
 // The isinglass program.
-int main() {
-  return 0;
+#include "command/commands.h"
+
+int main(int argc, char** argv) {
+  return isinglass::run(argc, argv);
 }

@@ -1,0 +1,96 @@
+// The line from source to checked result; see pipeline.h.
+#include "command/pipeline.h"
+
+#include <fmt/format.h>
+
+#include "command/clock.h"
+#include "language/language.h"
+#include "output/native.h"
+#include "verify/native.h"
+
+namespace isinglass {
+
+namespace {
+
+constexpr double deep_seconds = 60;  // what deep spends where --spend is silent
+
+PassContext context_for(const Settings& settings, const Circuit& source, const Target& target) {
+  PassContext context;
+  context.cost = cost_of(target);
+  context.promise = settings.promise_for(source);
+  context.effort = settings.effort;
+  context.tolerance = settings.tolerance;
+  context.seed = settings.seed;
+  context.threads = settings.thread_count();
+  if (target.ions > source.source_qubits) context.spare_wires = target.ions - source.source_qubits;
+  std::optional<double> spend = settings.spend;
+  if (!spend && settings.effort == Effort::deep) spend = deep_seconds;
+  if (spend) {
+    context.deadline =
+        std::chrono::steady_clock::now() + std::chrono::duration_cast<std::chrono::steady_clock::duration>(
+                                               std::chrono::duration<double>(*spend));
+  }
+  return context;
+}
+
+/// Reads the native text back, as any other program would, and holds it against the source.
+Verdict check(const Result& result, const Settings& settings) {
+  Reading reading = read("the native program", result.native);
+  if (!reading.ok()) {
+    throw std::logic_error("the native program does not read back: " + printed(reading.messages.front()));
+  }
+  const Circuit native = on_source_wires(std::move(*reading.circuit), result.source.circuit);
+  CheckOptions options;
+  options.infidelity = settings.tolerance;
+  options.threads = settings.thread_count();
+  options.seed = settings.seed;
+  return compare(result.source.circuit, native, settings.promise_for(result.source.circuit), options);
+}
+
+}  // namespace
+
+Compiled Result::facts() const {
+  return {source.path, source.sha256, target, placed, timed, before, verdict.explanation};
+}
+
+Target target_for(const Settings& settings, std::uint32_t qubits) {
+  if (!settings.target.empty()) return read_target(settings.target);
+  return typical(std::max(qubits, 1u));
+}
+
+Result compile(const std::string& path, const Settings& settings, Progress& progress) {
+  progress.stage("reading " + path);
+  Result result{read_source(path, settings.quiet), {}, {}, {}, {}, {}, {}, {}, {}};
+  const Circuit& source = result.source.circuit;
+  result.seconds.emplace_back("read", result.source.seconds);
+  const auto timed = [&](const char* name, const char* doing, const auto& work) {
+    progress.stage(fmt::format("{}: {}", path, doing));
+    const Stopwatch watch;
+    work();
+    result.seconds.emplace_back(name, watch.seconds());
+  };
+
+  timed("target", "reading the machine", [&] { result.target = target_for(settings, source.source_qubits); });
+  Circuit lowered;
+  timed("improve", "improving",
+        [&] { lowered = optimize(source, context_for(settings, source, result.target), &result.trace); });
+  timed("place", "placing", [&] { result.placed = place(lowered, result.target, {.seed = settings.seed}); });
+  timed("schedule", "timing", [&] {
+    result.before = before_of(source);
+    result.timed = schedule(result.placed, result.target, settings.promise_for(source));
+    result.native = native_program(result.placed, {path, result.target.name});
+  });
+  result.verdict.method = "none";
+  result.verdict.explanation = "not checked, as asked by --no-verify";
+  if (settings.check) {
+    timed("check", "checking", [&] { result.verdict = check(result, settings); });
+    if (result.verdict.answer == Answer::different) {
+      throw std::logic_error(
+          fmt::format("its result for {} is not the same program ({}: {}; deviation {:.2g})", path,
+                      result.verdict.method, result.verdict.explanation, result.verdict.distance));
+    }
+  }
+  return result;
+}
+
+}  // namespace isinglass

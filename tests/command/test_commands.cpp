@@ -1,0 +1,169 @@
+// The commands as a user runs them: what they print, what they write, how they end.
+#include <doctest/doctest.h>
+
+#include <nlohmann/json.hpp>
+#include <pugixml.hpp>
+#include <string>
+
+#include "support/program.h"
+
+using namespace isinglass::support;
+using nlohmann::json;
+
+namespace {
+
+const std::string bell =
+    "OPENQASM 3.0;\ninclude \"stdgates.inc\";\nqubit[2] q;\nbit[2] c;\nh q[0];\ncx q[0], q[1];\nc = measure "
+    "q;\n";
+
+std::string target(const std::string& name) {
+  return tree_path("targets/" + name);
+}
+
+}  // namespace
+
+TEST_CASE("compile writes the native program to the standard output and the summary beside it") {
+  const Ran ran = run_program({"compile", "-"}, bell);
+  INFO(ran.err);
+  CHECK(ran.status == 0);
+  CHECK(ran.out.find("xx(") != std::string::npos);
+  CHECK(ran.out.find("pragma isinglass start q[0] ion[") != std::string::npos);
+  CHECK(!ran.err.empty());
+}
+
+TEST_CASE("with --out the summary goes to the standard output, and --quiet leaves it out") {
+  const Folder folder;
+  const std::string out = folder.path("native.qasm");
+  Ran ran = run_program({"compile", "-", "--out", out}, bell);
+  CHECK(ran.status == 0);
+  CHECK(!ran.out.empty());
+  CHECK(ran.err.empty());
+  ran = run_program({"compile", "-", "--out", out, "--quiet"}, bell);
+  CHECK(ran.out.empty());
+  CHECK(ran.err.empty());
+}
+
+TEST_CASE("the JSON summary has the promised keys") {
+  const Folder folder;
+  const Ran ran =
+      run_program({"compile", "-", "--out", folder.path("n.qasm"), "--format", "json", "--trace"}, bell);
+  const json summary = json::parse(ran.out);
+  for (const char* key : {"source", "target", "totals", "before", "check", "seconds", "trace"}) {
+    CHECK(summary.contains(key));
+  }
+  CHECK(summary["totals"]["xx"] == 1);
+  CHECK(summary["before"]["two_qubit"] == 1);
+  CHECK(summary["check"]["answer"] == "same");
+}
+
+TEST_CASE("the timed list has the promised keys, as JSON and as CSV") {
+  const Folder folder;
+  const std::string file = folder.write("bell.qasm", bell);
+  const Ran ran =
+      run_program({"compile", file, "--out", folder.path("n.qasm"), "--timeline", folder.path("t.json"),
+                   "--report", folder.path("r.html"), "--target", target("wherry-5.toml")});
+  INFO(ran.err);
+  REQUIRE(ran.status == 0);
+  const json timeline = json::parse(text_of(folder.path("t.json")));
+  CHECK(timeline["format"] == "isinglass-timeline");
+  CHECK(timeline["version"] == 1);
+  CHECK(timeline["ions"] == 5);
+  CHECK(timeline["placement"].size() == 2);
+  CHECK(timeline["source"]["sha256"].get<std::string>().size() == 64);
+  std::size_t interactions = 0;
+  for (const json& operation : timeline["operations"]) interactions += operation["kind"] == "xx" ? 1 : 0;
+  CHECK(interactions == timeline["totals"]["xx"]);
+  run_program({"compile", file, "--out", folder.path("n.qasm"), "--timeline", folder.path("t.csv")});
+  CHECK(text_of(folder.path("t.csv")).find("kind") != std::string::npos);
+  CHECK(text_of(folder.path("r.html")).find("<svg") != std::string::npos);
+}
+
+TEST_CASE("the same seed gives the same bytes") {
+  const Folder folder;
+  for (const char* name : {"a.qasm", "b.qasm"}) {
+    run_program({"compile", tree_path("corpus/search/search_4.qasm"), "--seed", "5",
+                 "--out", folder.path(name), "--quiet"});
+  }
+  CHECK(text_of(folder.path("a.qasm")) == text_of(folder.path("b.qasm")));
+}
+
+TEST_CASE("verify says yes to what compile wrote and no to a changed angle") {
+  const Folder folder;
+  const std::string file = folder.write("bell.qasm", bell);
+  const std::string native = folder.path("native.qasm");
+  REQUIRE(run_program({"compile", file, "--out", native, "--quiet"}).status == 0);
+  const Ran good = run_program({"verify", file, native, "--format", "json"});
+  INFO(good.err);
+  CHECK(good.status == 0);
+  CHECK(json::parse(good.out)["answer"] == "same");
+  std::string text = text_of(native);
+  const std::size_t at = text.rfind("xx(");
+  REQUIRE(at != std::string::npos);
+  text.replace(at, text.find(',', at) - at, "xx(1.2");
+  const Ran bad = run_program({"verify", file, folder.write("changed.qasm", text)});
+  CHECK(bad.status == 1);
+  CHECK(bad.out.find("different") != std::string::npos);
+}
+
+TEST_CASE("tally prints a row a circuit, goes on after a fault, and ends with its status") {
+  const Folder folder;
+  const std::string good = folder.write("good.qasm", bell);
+  const std::string bad = folder.write("bad.qasm", "OPENQASM 3.0;\nqubit q;\nfoo q;\n");
+  Ran ran = run_program({"tally", good, bad, good, "--format", "json"});
+  CHECK(ran.status == 3);
+  CHECK(json::parse(ran.out).size() == 2);
+  ran = run_program({"tally", good});
+  CHECK(ran.status == 0);
+  CHECK(ran.out.find("good.qasm") != std::string::npos);
+}
+
+TEST_CASE("guard holds circuits against limits and against a baseline") {
+  const Folder folder;
+  const std::string file = folder.write("bell.qasm", bell);
+  const std::string wide = folder.write("wide.toml", "[limits]\nxx = 10\nerror = 0.5\n");
+  const std::string tight =
+      folder.write("tight.toml", "[limits]\nxx = 10\n[limits.\"" + file + "\"]\nxx = 0\n");
+  CHECK(run_program({"guard", file, "--limits", wide}).status == 0);
+  const Ran over = run_program({"guard", file, "--limits", tight, "--junit", folder.path("j.xml")});
+  CHECK(over.status == 1);
+  CHECK(over.out.find("xx is 1, limit 0") != std::string::npos);
+  pugi::xml_document junit;
+  CHECK(junit.load_file(folder.path("j.xml").c_str()));
+  CHECK(junit.child("testsuites").child("testsuite").attribute("failures").as_int() == 1);
+
+  const Ran first = run_program({"guard", file, "--limits", wide, "--format", "json"});
+  const std::string same = folder.write("same.json", first.out);
+  CHECK(run_program({"guard", file, "--limits", wide, "--baseline", same}).status == 0);
+  json better = json::parse(first.out);
+  better[0]["totals"]["duration"] = better[0]["totals"]["duration"].get<double>() * 0.9;
+  const std::string lower = folder.write("better.json", better.dump());
+  CHECK(run_program({"guard", file, "--limits", wide, "--baseline", lower}).status == 1);
+  CHECK(run_program({"guard", file, "--limits", wide, "--baseline", lower, "--slack", "20"}).status == 0);
+}
+
+TEST_CASE("a limits file at fault is wrong usage, each fault at its place") {
+  const Folder folder;
+  const std::string file = folder.write("bell.qasm", bell);
+  const std::string limits = folder.write("limits.toml", "[limits]\nxx = -1\ndepth = 3\n\"r\" = \"few\"\n");
+  const Ran ran = run_program({"guard", file, "--limits", limits});
+  INFO(ran.err);
+  CHECK(ran.status == 2);
+  CHECK(ran.err.find("limits.toml:2:6: error:") != std::string::npos);
+  CHECK(ran.err.find("limits.toml:3:1: error:") != std::string::npos);
+  CHECK(ran.err.find("limits.toml:4:7: error:") != std::string::npos);
+  CHECK(run_program({"guard", file, "--limits", folder.write("x.toml", "xx = = 3")}).status == 2);
+}
+
+TEST_CASE("every circuit of the corpus compiles, is checked, and reads back as the same program") {
+  const Folder folder;
+  for (const std::string& circuit : corpus()) {
+    const std::string native = folder.path("native.qasm");
+    const Ran compiled = run_program({"compile", circuit, "--out", native, "--format", "json"});
+    INFO(circuit << "\n" << compiled.err);
+    REQUIRE(compiled.status == 0);
+    CHECK(json::parse(compiled.out)["check"]["answer"] == "same");
+    const Ran verified = run_program({"verify", circuit, native});
+    INFO(verified.out << verified.err);
+    CHECK(verified.status == 0);
+  }
+}

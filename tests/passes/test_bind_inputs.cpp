@@ -1,0 +1,109 @@
+// Binding of inputs: the same unitary as the plan with the numbers put in, and every angle in range.
+#include <doctest/doctest.h>
+
+#include "passes/bind_inputs.h"
+#include "passes/lower.h"
+#include "passes/optimize.h"
+#include "support/random_circuits.h"
+#include "support/simulator.h"
+
+using namespace isinglass;
+using namespace isinglass::support;
+
+namespace {
+
+/// A plan of native operations with symbolic angles everywhere, phases included.
+Circuit random_plan(Random& random, int qubits, int gates) {
+  Circuit plan;
+  add_register(plan, "q", static_cast<std::uint32_t>(qubits));
+  for (const char* name : {"a", "b", "c"}) plan.inputs.push_back({name, "float", false, {}});
+  const auto angle = [&]() -> Angle {
+    Angle result{random_angle(random), 0};
+    if (random.chance(0.6)) {
+      const auto input = plan.forms.of_input(static_cast<std::uint32_t>(random.below(3)));
+      result.form = plan.forms.scaled(input, random.real(-3, 3));
+    }
+    return result;
+  };
+  for (int i = 0; i < gates; ++i) {
+    const auto wires = random.distinct(2, qubits);
+    switch (random.below(4)) {
+      case 0:
+        plan.body().push_back(plan.make(Kind::rz, {wires[0]}, {angle()}));
+        break;
+      case 1:
+        plan.body().push_back(plan.make(Kind::r, {wires[0]}, {angle(), angle()}));
+        break;
+      case 2:
+        plan.body().push_back(plan.make(Kind::barrier, {wires[0], wires[1]}));
+        break;
+      default:
+        plan.body().push_back(plan.make(Kind::xx, {wires[0], wires[1]}, {angle(), angle(), angle()}));
+    }
+  }
+  return plan;
+}
+
+void check_ranges(const Circuit& bound) {
+  std::vector<bool> after_pulse(bound.wires);
+  for (const Operation& op : bound.body()) {
+    CHECK(op.has_known_angles());
+    if (op.kind == Kind::r || op.kind == Kind::xx) {
+      CHECK(op.value[0] > 0);
+      CHECK(op.value[0] <= (op.kind == Kind::r ? pi : pi / 2));
+      CHECK(std::abs(op.value[1]) <= pi);
+      CHECK(std::abs(op.value[2]) <= pi);
+    }
+    // At most one pulse between two other operations on an ion.
+    for (const auto wire : bound.operands(op)) {
+      if (op.kind == Kind::r) CHECK(!after_pulse[wire]);
+      after_pulse[wire] = op.kind == Kind::r;
+    }
+  }
+}
+
+}  // namespace
+
+TEST_CASE("a bound plan is the plan with the numbers put in") {
+  Random random(20);
+  for (int round = 0; round < 300; ++round) {
+    const Circuit plan = random_plan(random, random.between(2, 4), random.between(1, 30));
+    Binding binding(plan);
+    for (int set = 0; set < 3; ++set) {
+      std::vector<double> values(3);
+      for (double& value : values)
+        value = random.chance(0.2) ? random_nice_angle(random) : random.real(-20, 20);
+      const Circuit& bound = binding.bind(values);
+      CHECK_NOTHROW(check_invariants(bound));
+      INFO(listed(plan) << listed(bound));
+      CHECK(distance(plan, bound, values) < 1e-9);
+      check_ranges(bound);
+    }
+  }
+}
+
+TEST_CASE("a flip before a measurement is performed, and inputs in classical code become numbers") {
+  Circuit plan;
+  add_register(plan, "q", 2);
+  add_bits(plan, "c", 2);
+  plan.inputs.push_back({"t", "float", false, {}});
+  const Angle t{0, plan.forms.of_input(0)};
+  plan.body().push_back(plan.make(Kind::xx, {0, 1}, {t, Angle{0.3}, Angle{0.1}}));
+  Operation measure = plan.make(Kind::measure, {0});
+  measure.payload = 0;
+  plan.body().push_back(measure);
+  ClassicalStatement statement;
+  statement.value.kind = Expression::Kind::input;
+  plan.statements.push_back(statement);
+  plan.body().push_back(plan.make(Kind::classical, std::initializer_list<std::uint32_t>{}));
+  Binding binding(plan);
+  const std::vector<double> values = {-3.0};
+  const Circuit& bound = binding.bind(values);
+  CHECK(bound.inputs.empty());
+  REQUIRE(bound.body().size() >= 4);
+  CHECK(bound.body()[0].value[0] == doctest::Approx(pi - 3.0));
+  CHECK(bound.body()[1].kind == Kind::r);  // the flip of ion 0, before its measurement
+  CHECK(bound.body()[2].kind == Kind::measure);
+  CHECK(bound.statements[0].value.text == "-");
+  CHECK(bound.statements[0].value.arguments.at(0).text == "3.0");
+}
