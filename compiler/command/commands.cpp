@@ -47,7 +47,7 @@ int run(int argc, const char* const* argv) {
   add_compile(app, status);
   add_tally(app, status);
   add_guard(app, status);
-  // add_bind(app, status);
+  add_bind(app, status);
   add_verify(app, status);
   // add_target(app, status);
   try {

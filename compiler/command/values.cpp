@@ -9,6 +9,7 @@
 #include <cstring>
 #include <fstream>
 #include <iostream>
+#include <map>
 #include <nlohmann/json.hpp>
 
 #include "circuit/message.h"
@@ -37,10 +38,25 @@ void for_each_cell(std::string_view line, const Use& use) {
   }
 }
 
+/// How CSV names a cell of an input: "t", or "a[2]" of an array.
+std::string cell_name(const DeclaredInput& input, std::size_t cell) {
+  return input.count == 1 ? input.name : fmt::format("{}[{}]", input.name, cell);
+}
+
+/// The numbers of nested arrays, row by row; false where something else stands among them.
+bool flatten(const nlohmann::json& value, std::vector<double>& numbers) {
+  if (value.is_number()) {
+    numbers.push_back(value.get<double>());
+    return true;
+  }
+  return value.is_array() &&
+         std::all_of(value.begin(), value.end(), [&](const auto& part) { return flatten(part, numbers); });
+}
+
 }  // namespace
 
-ValueReader::ValueReader(const std::string& path, const std::vector<Input>& inputs)
-    : path_(path == "-" ? "<stdin>" : path), inputs_(inputs) {
+ValueReader::ValueReader(const std::string& path, std::vector<DeclaredInput> inputs)
+    : path_(path == "-" ? "<stdin>" : path), inputs_(std::move(inputs)) {
   if (path == "-") {
     stream_ = &std::cin;
   } else {
@@ -72,60 +88,66 @@ bool ValueReader::next_line() {
   return false;
 }
 
-std::size_t ValueReader::input_named(const std::string& name) const {
-  for (std::size_t i = 0; i < inputs_.size(); ++i) {
-    if (!inputs_[i].is_derived && inputs_[i].name == name) return i;
-  }
-  fail("the plan has no input " + name);
-}
-
 void ValueReader::read_heading() {
-  for_each_cell(line_, [&](std::string_view cell) {
-    const std::size_t input = input_named(std::string(cell));
-    if (std::find(columns_.begin(), columns_.end(), input) != columns_.end()) {
-      fail(fmt::format("the input {} stands in two columns", cell));
-    }
-    columns_.push_back(input);
-  });
+  std::map<std::string, std::pair<std::size_t, std::size_t>, std::less<>> cells;
   for (std::size_t i = 0; i < inputs_.size(); ++i) {
-    if (!inputs_[i].is_derived && std::find(columns_.begin(), columns_.end(), i) == columns_.end()) {
-      fail("no column gives the input " + inputs_[i].name);
-    }
+    for (std::size_t cell = 0; cell < inputs_[i].count; ++cell)
+      cells[cell_name(inputs_[i], cell)] = {i, cell};
   }
+  for_each_cell(line_, [&](std::string_view name) {
+    const auto found = cells.find(name);
+    if (found == cells.end()) {
+      fail(fmt::format("{} is no input of the plan, or stands in two columns", name));
+    }
+    columns_.push_back(found->second);
+    cells.erase(found);
+  });
+  if (!cells.empty()) fail("no column gives the input " + cells.begin()->first);
 }
 
-bool ValueReader::next(std::vector<double>& values) {
+bool ValueReader::next(Set& values) {
   if (!is_pending_ && !next_line()) return false;
   is_pending_ = false;
-  values.assign(inputs_.size(), 0.0);
+  values.resize(inputs_.size());
+  for (std::size_t i = 0; i < inputs_.size(); ++i) values[i].assign(inputs_[i].count, 0.0);
   is_json_ ? read_object(values) : read_row(values);
   return true;
 }
 
-void ValueReader::read_row(std::vector<double>& values) {
+void ValueReader::read_row(Set& values) {
   std::size_t column = 0;
-  for_each_cell(line_, [&](std::string_view cell) {
+  for_each_cell(line_, [&](std::string_view text) {
     if (column == columns_.size()) fail(fmt::format("more than {} values", columns_.size()));
     double value = 0;
-    const auto [end, fault] = std::from_chars(cell.data(), cell.data() + cell.size(), value);
-    if (fault != std::errc{} || end != cell.data() + cell.size() || !std::isfinite(value)) {
-      fail(fmt::format("\"{}\" is no number", cell));
+    const auto [end, fault] = std::from_chars(text.data(), text.data() + text.size(), value);
+    if (fault != std::errc{} || end != text.data() + text.size() || !std::isfinite(value)) {
+      fail(fmt::format("\"{}\" is no number", text));
     }
-    values[columns_[column++]] = value;
+    const auto [input, cell] = columns_[column++];
+    values[input][cell] = value;
   });
   if (column < columns_.size()) fail(fmt::format("{} values where {} are named", column, columns_.size()));
 }
 
-void ValueReader::read_object(std::vector<double>& values) {
+void ValueReader::read_object(Set& values) {
   const auto object = nlohmann::json::parse(line_, nullptr, false);
   if (!object.is_object()) fail("not a JSON object on one line");
-  for (const auto& [name, value] : object.items()) {
-    const std::size_t input = input_named(name);
-    if (!value.is_number()) fail(fmt::format("the value of {} is no number", name));
-    values[input] = value.get<double>();
+  std::size_t used = 0;
+  for (std::size_t i = 0; i < inputs_.size(); ++i) {
+    const auto found = object.find(inputs_[i].name);
+    if (found == object.end()) fail("no value for the input " + inputs_[i].name);
+    values[i].clear();
+    if (!flatten(*found, values[i])) fail(fmt::format("the value of {} is no number", inputs_[i].name));
+    if (values[i].size() != inputs_[i].count) {
+      fail(fmt::format("{} takes {} numbers, not {}", inputs_[i].name, inputs_[i].count, values[i].size()));
+    }
+    ++used;
   }
-  for (const Input& input : inputs_) {
-    if (!input.is_derived && !object.contains(input.name)) fail("no value for the input " + input.name);
+  if (used == object.size()) return;
+  for (const auto& [name, value] : object.items()) {
+    if (std::none_of(inputs_.begin(), inputs_.end(), [&](const auto& input) { return input.name == name; })) {
+      fail(fmt::format("the plan has no input {}", name));
+    }
   }
 }
 

@@ -4,9 +4,10 @@
 #include <istream>
 #include <memory>
 #include <string>
+#include <utility>
 #include <vector>
 
-#include "circuit/circuit.h"
+#include "language/bind.h"
 
 namespace isinglass {
 
@@ -14,26 +15,27 @@ namespace isinglass {
 /// number. Every declared input needs a value in every set; names that are no inputs are faults.
 class ValueReader {
  public:
-  /// Declared inputs of the plan, in order; "-" is the standard input. Throws Failure: file_trouble, or usage
-  /// with the line where the file is wrong.
-  ValueReader(const std::string& path, const std::vector<Input>& inputs);
+  /// The numbers of each declared input, in the order of `inputs`.
+  using Set = std::vector<std::vector<double>>;
 
-  /// The next set, one number a declared input (0 at derived ones). False at the end.
-  bool next(std::vector<double>& values);
+  /// "-" is the standard input. Throws Failure: file_trouble, or usage with the line where the file is wrong.
+  ValueReader(const std::string& path, std::vector<DeclaredInput> inputs);
+
+  /// Reads the next set; false at the end.
+  bool next(Set& values);
 
  private:
   [[noreturn]] void fail(const std::string& text) const;
   bool next_line();
   void read_heading();
-  void read_row(std::vector<double>& values);
-  void read_object(std::vector<double>& values);
-  std::size_t input_named(const std::string& name) const;
+  void read_row(Set& values);
+  void read_object(Set& values);
 
   std::string path_;
   std::unique_ptr<std::istream> file_;
   std::istream* stream_ = nullptr;
-  const std::vector<Input>& inputs_;
-  std::vector<std::size_t> columns_;  // of CSV: the input of each column
+  std::vector<DeclaredInput> inputs_;
+  std::vector<std::pair<std::size_t, std::size_t>> columns_;  // of CSV: input and cell of each column
   std::string line_;
   std::size_t line_number_ = 0;
   bool is_json_ = false;

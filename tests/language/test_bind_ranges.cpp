@@ -1,9 +1,7 @@
 // Binding of inputs: the same unitary as the plan with the numbers put in, and every angle in range.
 #include <doctest/doctest.h>
 
-#include "passes/bind_inputs.h"
-#include "passes/lower.h"
-#include "passes/optimize.h"
+#include "language/bind.h"
 #include "support/random_circuits.h"
 #include "support/simulator.h"
 
@@ -68,42 +66,17 @@ TEST_CASE("a bound plan is the plan with the numbers put in") {
   Random random(20);
   for (int round = 0; round < 300; ++round) {
     const Circuit plan = random_plan(random, random.between(2, 4), random.between(1, 30));
-    Binding binding(plan);
+    Binder binder(plan);
     for (int set = 0; set < 3; ++set) {
       std::vector<double> values(3);
       for (double& value : values)
         value = random.chance(0.2) ? random_nice_angle(random) : random.real(-20, 20);
-      const Circuit& bound = binding.bind(values);
+      const Circuit& bound =
+          binder.bind(std::vector<std::vector<double>>{{values[0]}, {values[1]}, {values[2]}});
       CHECK_NOTHROW(check_invariants(bound));
       INFO(listed(plan) << listed(bound));
       CHECK(distance(plan, bound, values) < 1e-9);
       check_ranges(bound);
     }
   }
-}
-
-TEST_CASE("a flip before a measurement is performed, and inputs in classical code become numbers") {
-  Circuit plan;
-  add_register(plan, "q", 2);
-  add_bits(plan, "c", 2);
-  plan.inputs.push_back({"t", "float", false, {}});
-  const Angle t{0, plan.forms.of_input(0)};
-  plan.body().push_back(plan.make(Kind::xx, {0, 1}, {t, Angle{0.3}, Angle{0.1}}));
-  Operation measure = plan.make(Kind::measure, {0});
-  measure.payload = 0;
-  plan.body().push_back(measure);
-  ClassicalStatement statement;
-  statement.value.kind = Expression::Kind::input;
-  plan.statements.push_back(statement);
-  plan.body().push_back(plan.make(Kind::classical, std::initializer_list<std::uint32_t>{}));
-  Binding binding(plan);
-  const std::vector<double> values = {-3.0};
-  const Circuit& bound = binding.bind(values);
-  CHECK(bound.inputs.empty());
-  REQUIRE(bound.body().size() >= 4);
-  CHECK(bound.body()[0].value[0] == doctest::Approx(pi - 3.0));
-  CHECK(bound.body()[1].kind == Kind::r);  // the flip of ion 0, before its measurement
-  CHECK(bound.body()[2].kind == Kind::measure);
-  CHECK(bound.statements[0].value.text == "-");
-  CHECK(bound.statements[0].value.arguments.at(0).text == "3.0");
 }
