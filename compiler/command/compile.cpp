@@ -23,6 +23,7 @@ struct CompileJob {
   std::string out = "-";
   std::string timeline;
   std::string report;
+  std::size_t rehearse = 0;  // shots
   bool trace = false;
 };
 
@@ -117,6 +118,7 @@ void print_summary(const CompileJob& job, const Result& result) {
   if (job.trace) out << trace_text(result.trace) << "\n";
   if (job.settings.quiet) return;
   out << text_of(result.facts());
+  if (result.rehearsal) out << text_of(*result.rehearsal);
   out << "seconds";
   for (const auto& [stage, spent] : result.seconds) out << fmt::format("  {} {:.3f}", stage, spent);
   out << "\n";
@@ -125,7 +127,8 @@ void print_summary(const CompileJob& job, const Result& result) {
 Exit run_compile(const CompileJob& job) {
   for (const std::string& path : {job.out, job.timeline, job.report}) demand_writable(path);
   Progress progress(job.settings.quiet);
-  const Result result = compile(job.source, job.settings, progress);
+  Result result = compile(job.source, job.settings, progress);
+  if (job.rehearse > 0) rehearse(result, job.rehearse, job.settings, progress);
   progress.stage("writing");
   if (!job.timeline.empty()) {
     write_whole(job.timeline, [&](std::ostream& out) {
@@ -153,6 +156,12 @@ void add_compile(CLI::App& app, Exit& status) {
   command->add_option("--timeline", job->timeline, "timed gate list: JSON, or CSV when the name ends in .csv")
       ->type_name("FILE");
   command->add_option("--report", job->report, "report: one HTML page")->type_name("FILE");
+  command
+      ->add_option(
+          "--rehearse", job->rehearse,
+          "simulate the result with the target's errors: outcomes and success with and without noise")
+      ->check(CLI::Range(std::size_t{1}, std::size_t{1'000'000'000}))
+      ->type_name("SHOTS");
   command->add_flag("--trace", job->trace,
                     "a row a pass: what it changed, how long it took, which order won");
   add_compiling_options(*command, job->settings);

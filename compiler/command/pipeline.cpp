@@ -6,6 +6,7 @@
 #include "command/clock.h"
 #include "language/language.h"
 #include "output/native.h"
+#include "verify/memory.h"
 #include "verify/native.h"
 
 namespace isinglass {
@@ -50,7 +51,14 @@ Verdict check(const Result& result, const Settings& settings) {
 }  // namespace
 
 Compiled Result::facts() const {
-  return {source.path, source.sha256, target, placed, timed, before, verdict.explanation};
+  return {source.path,
+          source.sha256,
+          target,
+          placed,
+          timed,
+          before,
+          verdict.explanation,
+          rehearsal ? &*rehearsal : nullptr};
 }
 
 Target target_for(const Settings& settings, std::uint32_t qubits) {
@@ -58,9 +66,28 @@ Target target_for(const Settings& settings, std::uint32_t qubits) {
   return typical(std::max(qubits, 1u));
 }
 
+void rehearse(Result& result, std::size_t shots, const Settings& settings, Progress& progress) {
+  progress.stage(result.source.path + ": rehearsing");
+  RehearseOptions options;
+  options.shots = shots;
+  options.seed = settings.seed;
+  options.threads = settings.thread_count();
+  options.progress = [&](double share) { progress.share(share); };
+  const Stopwatch watch;
+  try {
+    result.rehearsal = rehearse(result.placed, result.timed, result.target,
+                                settings.promise_for(result.source.circuit), options);
+  } catch (const Unsupported& unsupported) {
+    throw Failure(Exit::usage,
+                  fmt::format("{} cannot be rehearsed: {}", result.source.path, unsupported.what()));
+  }
+  result.seconds.emplace_back("rehearse", watch.seconds());
+}
+
 Result compile(const std::string& path, const Settings& settings, Progress& progress) {
   progress.stage("reading " + path);
-  Result result{read_source(path, settings.quiet), {}, {}, {}, {}, {}, {}, {}, {}};
+  Result result;
+  result.source = read_source(path, settings.quiet);
   const Circuit& source = result.source.circuit;
   result.seconds.emplace_back("read", result.source.seconds);
   const auto timed = [&](const char* name, const char* doing, const auto& work) {
@@ -80,9 +107,10 @@ Result compile(const std::string& path, const Settings& settings, Progress& prog
     result.timed = schedule(result.placed, result.target, settings.promise_for(source));
     result.native = native_program(result.placed, {path, result.target.name});
   });
-  result.verdict.method = "none";
-  result.verdict.explanation = "not checked, as asked by --no-verify";
-  if (settings.check) {
+  if (!settings.check) {
+    result.verdict.explanation = "not checked, as asked by --no-verify";
+  } else {
+    result.is_checked = true;
     timed("check", "checking", [&] { result.verdict = check(result, settings); });
     if (result.verdict.answer == Answer::different) {
       throw std::logic_error(

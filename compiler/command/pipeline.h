@@ -1,6 +1,7 @@
 // The whole line, from a source file to a checked, placed and timed program, as one function.
 #pragma once
 
+#include <optional>
 #include <string>
 #include <utility>
 #include <vector>
@@ -27,7 +28,9 @@ struct Result {
   Placed placed;
   Timed timed;
   std::string native;  // the text of the native program: what was checked is what is written
-  Verdict verdict;     // method "none" with --no-verify
+  Verdict verdict;
+  bool is_checked = false;  // false with --no-verify: then verdict says nothing
+  std::optional<Rehearsal> rehearsal;
   StageSeconds seconds;
 
   /// What the output room needs; refers to this object.
@@ -36,6 +39,9 @@ struct Result {
 
 /// The target named by the settings, or a typical one with an ion for each of `qubits`.
 Target target_for(const Settings& settings, std::uint32_t qubits);
+
+/// Runs the compiled program in simulation with the target's errors; see targets/rehearse.h.
+void rehearse(Result& result, std::size_t shots, const Settings& settings, Progress& progress);
 
 /// Compiles and checks. Throws Failure where the source, the target or isinglass itself is at fault.
 Result compile(const std::string& path, const Settings& settings, Progress& progress);

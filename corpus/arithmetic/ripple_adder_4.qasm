@@ -1,4 +1,4 @@
-// In-place ripple-carry addition of two 4-bit cargo counts, 6 + 11. Cuccaro, Draper, Kutin, Moulton 2004.
+// In-place ripple-carry addition of two 4-bit cargo counts, all of them at once. Cuccaro, Draper, Kutin, Moulton 2004.
 OPENQASM 3.0;
 include "stdgates.inc";
 gate majority a, b, c {
@@ -16,12 +16,13 @@ qubit[4] a;
 qubit[4] b;
 qubit carry_out;
 bit[5] sum;
-x a[1]; x a[2];
-x b[0]; x b[1]; x b[3];
+h a;
+ry(0.7) b;
 majority carry_in, b[0], a[0];
 for uint i in [0:2] { majority a[i], b[i + 1], a[i + 1]; }
 cx a[3], carry_out;
 for int i in [2:-1:0] { unmajority a[i], b[i + 1], a[i + 1]; }
 unmajority carry_in, b[0], a[0];
+rx(0.2) b;
 sum[0:3] = measure b;
 sum[4] = measure carry_out;

@@ -41,7 +41,7 @@ void expect_fault(const std::string& source, int status, const std::string& plac
 }  // namespace
 
 TEST_CASE("an empty file") {
-  expect_fault("", 3, "", "empty");
+  expect_fault("", 3, "", "no program");
 }
 
 TEST_CASE("a binary file") {
@@ -87,8 +87,7 @@ TEST_CASE("a missing target") {
 }
 
 TEST_CASE("a target that is too small") {
-  expect_fault(heading + "qubit[6] q;\nx q;\n", 4, "", "6",
-               {"--target", tree_path("targets/wherry-5.toml")});
+  expect_fault(heading + "qubit[6] q;\nx q;\n", 4, "", "6", {"--target", tree_path("targets/wherry-5.toml")});
 }
 
 TEST_CASE("an output that cannot be written") {
