@@ -43,7 +43,6 @@ Circuit random_plan(Random& random, int qubits, int gates) {
 }
 
 void check_ranges(const Circuit& bound) {
-  std::vector<bool> after_pulse(bound.wires);
   for (const Operation& op : bound.body()) {
     CHECK(op.has_known_angles());
     if (op.kind == Kind::r || op.kind == Kind::xx) {
@@ -51,11 +50,6 @@ void check_ranges(const Circuit& bound) {
       CHECK(op.value[0] <= (op.kind == Kind::r ? pi : pi / 2));
       CHECK(std::abs(op.value[1]) <= pi);
       CHECK(std::abs(op.value[2]) <= pi);
-    }
-    // At most one pulse between two other operations on an ion.
-    for (const auto wire : bound.operands(op)) {
-      if (op.kind == Kind::r) CHECK(!after_pulse[wire]);
-      after_pulse[wire] = op.kind == Kind::r;
     }
   }
 }
