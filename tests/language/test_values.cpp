@@ -16,6 +16,10 @@ using meaning::errors_of;
 using meaning::holds;
 using meaning::number;
 
+// The compiler's own wide integers, as the independent other side.
+__extension__ typedef __int128 Integer128;
+__extension__ typedef unsigned __int128 Natural128;
+
 namespace {
 
 std::vector<std::string> errors_in(const std::string& statements) {
@@ -26,10 +30,9 @@ std::vector<std::string> errors_in(const std::string& statements) {
 
 TEST_CASE("whole numbers of any size: arithmetic agrees with 128-bit arithmetic") {
   std::mt19937_64 random(1);
-  const auto to_integer = [](__int128 value) {
+  const auto to_integer = [](Integer128 value) {
     const bool negative = value < 0;
-    unsigned __int128 magnitude =
-        negative ? -static_cast<unsigned __int128>(value) : static_cast<unsigned __int128>(value);
+    Natural128 magnitude = negative ? -static_cast<Natural128>(value) : static_cast<Natural128>(value);
     Integer result = Integer(static_cast<std::int64_t>(magnitude & 0x7fffffffffffffff));
     magnitude >>= 63;
     result = result + Integer(static_cast<std::int64_t>(magnitude & 0x7fffffffffffffff)).shifted_left(63);
@@ -46,10 +49,10 @@ TEST_CASE("whole numbers of any size: arithmetic agrees with 128-bit arithmetic"
     const std::int64_t b = pick();
     const std::int64_t c = pick();
     const Integer x = Integer(a) * Integer(b);
-    const __int128 wide = static_cast<__int128>(a) * b;
+    const Integer128 wide = static_cast<Integer128>(a) * b;
     REQUIRE(x == to_integer(wide));
-    REQUIRE(Integer(a) + Integer(b) == to_integer(static_cast<__int128>(a) + b));
-    REQUIRE(Integer(a) - Integer(b) == to_integer(static_cast<__int128>(a) - b));
+    REQUIRE(Integer(a) + Integer(b) == to_integer(static_cast<Integer128>(a) + b));
+    REQUIRE(Integer(a) - Integer(b) == to_integer(static_cast<Integer128>(a) - b));
     REQUIRE((x < Integer(c)) == (wide < c));
     if (c != 0) {
       REQUIRE(x / Integer(c) == to_integer(wide / c));
@@ -58,9 +61,9 @@ TEST_CASE("whole numbers of any size: arithmetic agrees with 128-bit arithmetic"
     }
     REQUIRE(x.to_double() == static_cast<double>(wide));
     const std::size_t width = 1 + random() % 100;
-    const unsigned __int128 mask = (static_cast<unsigned __int128>(1) << width) - 1;
-    const auto pattern = static_cast<unsigned __int128>(wide) & mask;
-    REQUIRE(x.modulo(width) == to_integer(static_cast<__int128>(pattern)));
+    const Natural128 mask = (static_cast<Natural128>(1) << width) - 1;
+    const auto pattern = static_cast<Natural128>(wide) & mask;
+    REQUIRE(x.modulo(width) == to_integer(static_cast<Integer128>(pattern)));
   }
 }
 
