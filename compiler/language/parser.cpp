@@ -152,10 +152,10 @@ class StatementParser final : public OpenQasm3Parser, private antlr4::tree::Pars
   std::vector<std::vector<Statement>> lists_;  // statements of each open block; first, those of the text
 };
 
-/// One reading of one text.
-class Reading {
+/// Reads one text to its end.
+class TextReader {
  public:
-  Reading(const Sources& sources, std::uint16_t index, StatementSink& sink)
+  TextReader(const Sources& sources, std::uint16_t index, StatementSink& sink)
       : sources_(sources),
         source_(sources[index]),
         index_(index),
@@ -245,7 +245,7 @@ void read_statements(const Sources& sources, std::uint16_t source, StatementSink
     sink.syntax_message(std::move(*message), {});
     return;
   }
-  Reading(sources, source, sink).run();
+  TextReader(sources, source, sink).run();
 }
 
 }  // namespace isinglass
