@@ -9,8 +9,8 @@
 #include <fmt/format.h>
 #include <malloc.h>
 
-#include <chrono>
 #include <cmath>
+#include <ctime>
 #include <fstream>
 #include <map>
 #include <random>
@@ -25,23 +25,24 @@ using isinglass::Reading;
 
 /// A file as programs write it: two thirds of the gates have an angle, written in several ways.
 std::string flat_program(std::size_t gates) {
-  std::mt19937 random(1);
+  std::mt19937 source(1);
+  const auto random = [&](unsigned below) { return static_cast<unsigned>(source() % below); };
   std::string text = "OPENQASM 3.0;\ninclude \"stdgates.inc\";\nqubit[20] q;\n";
   for (std::size_t i = 0; i < gates; ++i) {
-    const unsigned a = random() % 20;
-    const unsigned b = (a + 1 + random() % 19) % 20;
-    switch (random() % 6) {
+    const unsigned a = random(20);
+    const unsigned b = (a + 1 + random(19)) % 20;
+    switch (random(6)) {
       case 0:
-        text += fmt::format("rz({:.15f}) q[{}];\n", 1e-6 * (random() % 3000000), a);
+        text += fmt::format("rz({:.15f}) q[{}];\n", 1e-6 * (random(3000000)), a);
         break;
       case 1:
-        text += fmt::format("cp(pi/{}) q[{}], q[{}];\n", 1 + random() % 16, a, b);
+        text += fmt::format("cp(pi/{}) q[{}], q[{}];\n", 1 + random(16), a, b);
         break;
       case 2:
-        text += fmt::format("rx(-{}*pi/4) q[{}];\n", 1 + random() % 3, a);
+        text += fmt::format("rx(-{}*pi/4) q[{}];\n", 1 + random(3), a);
         break;
       case 3:
-        text += fmt::format("u3({:.6f},{:.6f},-pi/2) q[{}];\n", 1e-6 * (random() % 3000000), 0.5, a);
+        text += fmt::format("u3({:.6f},{:.6f},-pi/2) q[{}];\n", 1e-6 * (random(3000000)), 0.5, a);
         break;
       case 4:
         text += fmt::format("h q[{}];\n", a);
@@ -69,8 +70,9 @@ const std::string looped =
     "  for int i in [0:2:18] { cx q[i + 1], q[i]; rz(-pi / 8) q[i]; }\n"
     "}\n";
 
+/// Processor time of this program: what the neighbours on the machine do does not count.
 double seconds_now() {
-  return std::chrono::duration<double>(std::chrono::steady_clock::now().time_since_epoch()).count();
+  return static_cast<double>(std::clock()) / CLOCKS_PER_SEC;
 }
 
 /// Bytes per second of the lexer alone, by size of the file.
@@ -97,9 +99,10 @@ void lexer_alone(benchmark::State& state) {
   report(state, text.size(), static_cast<std::size_t>(state.range(0)), best);
 }
 
+/// Reads the program; some gates of the library are two operations.
 Reading read_or_stop(benchmark::State& state, const std::string& text, std::size_t gates) {
   Reading reading = isinglass::read("bench.qasm", text);
-  if (!reading.ok() || reading.circuit->body().size() != gates)
+  if (!reading.ok() || reading.circuit->body().size() < gates)
     state.SkipWithError("the program was not read");
   return reading;
 }
