@@ -372,7 +372,7 @@ void Recovery::skip_parentheses() {
 void Recovery::collect_name(const Token& token) {
   if (token.getType() != P::IDENTIFIER || names_.size() >= most_names) return;
   const std::size_t length = token.getStopIndex() + 1 - token.getStartIndex();
-  names_.push_back(source_.text.substr(token.getStartIndex(), length));
+  names_.emplace_back(source_.text.substr(token.getStartIndex(), length));
 }
 
 // ---- places
@@ -394,7 +394,7 @@ const Token* Recovery::unclosed(std::size_t first, std::size_t open, std::size_t
 std::string Recovery::quoted(const Token& token) const {
   if (token.getType() == Token::EOF) return "the end of the file";
   const std::size_t length = token.getStopIndex() + 1 - token.getStartIndex();
-  std::string text = source_.text.substr(token.getStartIndex(), std::min(length, longest_quote + 4));
+  std::string text(source_.text.substr(token.getStartIndex(), std::min(length, longest_quote + 4)));
   text.resize(std::min(text.size(), text.find_first_of("\r\n")));
   return "'" + shortened(std::move(text)) + "'";
 }

@@ -4,6 +4,7 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <array>
 
 namespace isinglass {
 
@@ -36,16 +37,17 @@ std::size_t character_length(std::string_view text, std::size_t i) {
   return 0;
 }
 
-bool is_text_control(char c) {
-  return c == '\n' || c == '\r' || c == '\t' || c == '\f' || c == '\v';
-}
-
 }  // namespace
 
-std::uint16_t Sources::add(std::string file, std::string text) {
+std::uint16_t Sources::keep(std::string file, std::string text) {
+  kept_.push_back(std::move(text));
+  return add(std::move(file), kept_.back());
+}
+
+std::uint16_t Sources::add(std::string file, std::string_view text) {
   if (list_.size() > 0xFFFF) throw Failure(Exit::source_at_fault, "more than 65,536 files are included");
   if (text.size() > 0xFFFFFFF0) throw Failure(Exit::file_trouble, file + ": the file is larger than 4 GiB");
-  list_.push_back({std::move(file), std::move(text)});
+  list_.push_back({std::move(file), text});
   return static_cast<std::uint16_t>(list_.size() - 1);
 }
 
@@ -75,26 +77,31 @@ Message Sources::message(Message::Severity severity, syntax::Span at, std::strin
 }
 
 std::optional<Message> unreadable(const Source& source) {
-  Message message;
-  message.place = {source.file, 0, 0};
+  static const std::array<bool, 256> plain = [] {
+    std::array<bool, 256> table{};
+    for (int c = 0x20; c < 0x7F; ++c) table[static_cast<std::size_t>(c)] = true;
+    for (const char c : {'\n', '\r', '\t', '\f', '\v'}) table[static_cast<unsigned char>(c)] = true;
+    return table;
+  }();
   const std::string_view text = source.text;
-  std::size_t line = 1;
-  for (std::size_t i = 0; i < text.size();) {
+  for (std::size_t i = 0;;) {
+    while (i < text.size() && plain[static_cast<unsigned char>(text[i])]) ++i;
+    if (i == text.size()) return std::nullopt;
     const auto byte = static_cast<unsigned char>(text[i]);
-    if (byte == '\n') ++line;
-    if ((byte < 0x20 && !is_text_control(text[i])) || byte == 0x7F) {
-      message.text = fmt::format("this is no text file: byte {} is the control character {:#04x} (line {})",
-                                 i, byte, line);
-      return message;
-    }
-    const std::size_t length = character_length(text, i);
+    const std::size_t length = byte < 0x80 ? 0 : character_length(text, i);
     if (length == 0) {
-      message.text = fmt::format("this is no UTF-8 text: byte {} is {:#04x} (line {})", i, byte, line);
+      Message message;
+      message.place = {source.file, 0, 0};
+      const auto line = 1 + std::count(text.begin(), text.begin() + static_cast<std::ptrdiff_t>(i), '\n');
+      message.text =
+          byte < 0x80
+              ? fmt::format("this is no text file: byte {} is the control character {:#04x} (line {})", i,
+                            byte, line)
+              : fmt::format("this is no UTF-8 text: byte {} is {:#04x} (line {})", i, byte, line);
       return message;
     }
     i += length;
   }
-  return std::nullopt;
 }
 
 }  // namespace isinglass

@@ -13,14 +13,16 @@
 namespace isinglass {
 
 struct Source {
-  std::string file;  // as messages name it
-  std::string text;  // UTF-8
+  std::string file;       // as messages name it
+  std::string_view text;  // UTF-8
 };
 
 class Sources {
  public:
-  /// Keeps the text for as long as this object lives; at most 65,536 texts of below 4 GiB, else Failure.
-  std::uint16_t add(std::string file, std::string text);
+  /// The text must live as long as this object; at most 65,536 texts of below 4 GiB, else Failure.
+  std::uint16_t add(std::string file, std::string_view text);
+  /// Keeps the text itself.
+  std::uint16_t keep(std::string file, std::string text);
   const Source& operator[](std::uint16_t index) const { return list_[index]; }
   std::size_t size() const { return list_.size(); }
 
@@ -36,7 +38,8 @@ class Sources {
   }
 
  private:
-  std::deque<Source> list_;  // texts do not move
+  std::deque<Source> list_;
+  std::deque<std::string> kept_;  // texts do not move
 };
 
 /// Nothing when the text is UTF-8 without control characters other than blanks and line ends; else what is

@@ -145,7 +145,8 @@ struct TreeBuilder::Chain {
 };
 
 std::string TreeBuilder::text(const Token& token) const {
-  return source_.text.substr(token.getStartIndex(), token.getStopIndex() - token.getStartIndex() + 1);
+  return std::string(
+      source_.text.substr(token.getStartIndex(), token.getStopIndex() - token.getStartIndex() + 1));
 }
 
 std::string TreeBuilder::digits(const Token& token) const {
@@ -348,8 +349,7 @@ syntax::Calibration TreeBuilder::calibration(P::CalibrationContext& context) {
   if (context.DEFCAL() != nullptr) result.kind = syntax::Calibration::Kind::definition;
   if (context.DEFCALGRAMMAR() != nullptr) result.kind = syntax::Calibration::Kind::grammar;
   const std::size_t first = context.start->getStopIndex() + 1;
-  result.text = std::string(
-      trimmed(std::string_view(source_.text).substr(first, context.stop->getStopIndex() + 1 - first)));
+  result.text = std::string(trimmed(source_.text.substr(first, context.stop->getStopIndex() + 1 - first)));
   return result;
 }
 

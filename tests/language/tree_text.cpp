@@ -215,7 +215,7 @@ Collector read(std::string text, int version, bool fast) {
   Collector collector;
   collector.version = version;
   collector.fast = fast;
-  read_statements(sources, sources.add("test.qasm", std::move(text)), collector);
+  read_statements(sources, sources.keep("test.qasm", std::move(text)), collector);
   return collector;
 }
 
