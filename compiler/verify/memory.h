@@ -26,6 +26,7 @@ struct Value {
   unsigned width = 1;
   std::uint64_t whole = 0;
   double real = 0;
+  bool operator==(const Value&) const = default;
 };
 
 /// The value as a number; angles in radians.
@@ -51,6 +52,8 @@ class Memory {
 
   /// The bytes of the named variables, for telling runs apart.
   std::string key(std::span<const std::uint32_t> variables) const;
+  /// Whether all variables have the same values; both of the same circuit and inputs.
+  bool operator==(const Memory& other) const { return bits_ == other.bits_ && slots_ == other.slots_; }
 
  private:
   struct Slot {
@@ -58,6 +61,7 @@ class Memory {
     unsigned width = 1;
     std::vector<std::uint32_t> shape;  // of an array
     std::vector<Value> values;         // one, or all elements of an array; none for bit variables
+    bool operator==(const Slot&) const = default;
   };
 
   Value get(std::uint32_t variable) const;

@@ -5,6 +5,7 @@
 #include <cmath>
 #include <map>
 #include <set>
+#include <utility>
 
 namespace isinglass {
 
@@ -12,6 +13,8 @@ namespace {
 
 // A run of less weight than this changes no amplitude by more than 1e-9 and no sum by anything.
 constexpr double negligible = 1e-18;
+// Two runs are one where the squared distance of their states is below this share of the weight.
+constexpr double parallel = 1e-24;
 constexpr std::size_t most_amplitudes = std::size_t(1) << 26;
 constexpr int most_deferred = 22;
 
@@ -103,6 +106,30 @@ struct Run {
   std::vector<Frame> frames;
 };
 
+bool same_place(const Frame& a, const Frame& b) {
+  return a.block == b.block && a.at == b.at && a.loop == b.loop && a.round == b.round && a.values == b.values;
+}
+
+/// If b is a multiple of a, the weight of both joined into a; else false. What comes after them is then
+/// alike, and as a mixture they are one state of their joint weight.
+bool absorb(State& a, const State& b) {
+  Amplitude overlap = 0;
+  double weight_a = 0;
+  double weight_b = 0;
+  for (std::uint64_t k = 0; k < a.dimension(); ++k) {
+    overlap += std::conj(a.get(k)) * b.get(k);
+    weight_a += std::norm(a.get(k));
+    weight_b += std::norm(b.get(k));
+  }
+  const Amplitude ratio = overlap / weight_a;
+  double off = 0;
+  for (std::uint64_t k = 0; k < a.dimension(); ++k) off += std::norm(b.get(k) - ratio * a.get(k));
+  if (off > parallel * weight_b) return false;
+  const double scale = std::sqrt((weight_a + weight_b) / weight_a);
+  for (std::uint64_t k = 0; k < a.dimension(); ++k) a.set(k, 0, scale * a.get(k));
+  return true;
+}
+
 /// The block that an if or switch enters, if any.
 std::optional<std::uint32_t> chosen_block(const Memory& memory, const Branch& branch) {
   if (branch.kind == Branch::Kind::if_else) {
@@ -141,21 +168,38 @@ class Runner {
     while (!open.empty()) {
       Run run = std::move(open.back());
       open.pop_back();
-      while (!run.frames.empty()) {
-        if (std::optional<Run> other = step(run)) open.push_back(std::move(*other));
-        if (std::chrono::steady_clock::now() > limits_.deadline) throw Unsupported("a run in the time given");
-      }
-      if (is_cut_) {
-        is_cut_ = false;
-        continue;
-      }
-      if (++endings_.runs > limits_.most_runs) throw Unsupported("so many outcomes of measurements");
-      finish(run);
+      follow(run, open);
+      // Runs wait at each new round of a loop until all others have come as far; then equal ones are joined,
+      // so that a loop which repeats until success does not split without end.
+      if (open.empty()) open = std::exchange(waiting_, {});
     }
     return std::move(endings_);
   }
 
  private:
+  /// Goes on with a run until it ends, is cut off, or waits for a new round of a loop.
+  void follow(Run& run, std::vector<Run>& open) {
+    while (!run.frames.empty()) {
+      if (std::optional<Run> other = step(run)) open.push_back(std::move(*other));
+      if (std::chrono::steady_clock::now() > limits_.deadline) throw Unsupported("a run in the time given");
+      if (std::exchange(starts_round_, false)) return wait(std::move(run));
+    }
+    if (std::exchange(is_cut_, false)) return;
+    if (++endings_.runs > limits_.most_runs) throw Unsupported("so many outcomes of measurements");
+    finish(run);
+  }
+
+  void wait(Run run) {
+    for (Run& other : waiting_) {
+      if (std::equal(run.frames.begin(), run.frames.end(), other.frames.begin(), other.frames.end(),
+                     same_place) &&
+          run.memory == other.memory && absorb(other.state, run.state)) {
+        return;
+      }
+    }
+    waiting_.push_back(std::move(run));
+  }
+
   State started(const Start& start) const {
     const std::uint32_t qubits = circuit_.source_qubits;
     State state(circuit_.wires + references_, 0);
@@ -312,6 +356,7 @@ class Runner {
         return;
       }
       frame.at = 0;
+      starts_round_ = true;
       return;
     }
     run.frames.pop_back();
@@ -427,6 +472,8 @@ class Runner {
   std::size_t splits_ = 0;
   std::size_t stored_ = 0;
   bool is_cut_ = false;
+  bool starts_round_ = false;
+  std::vector<Run> waiting_;
 };
 
 }  // namespace

@@ -168,3 +168,16 @@ TEST_CASE("every circuit of the corpus compiles, is checked, and reads back as t
     CHECK(verified.status == 0);
   }
 }
+
+TEST_CASE("a loop until success is followed to its end, and a changed turn inside it is found") {
+  const Folder folder;
+  const std::string source = tree_path("corpus/protocols/try_until_it_works.qasm");
+  const std::string native = folder.path("native.qasm");
+  REQUIRE(run_program({"compile", source, "--out", native, "--quiet"}).status == 0);
+  CHECK(run_program({"verify", source, native}).status == 0);
+  std::string changed = text_of(source);
+  changed.replace(changed.find("  s target;"), 11, "  t target;");
+  const Ran ran = run_program({"verify", folder.write("changed.qasm", changed), native});
+  CHECK(ran.status == 1);
+  CHECK(ran.out.find("different") != std::string::npos);
+}
