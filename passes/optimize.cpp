@@ -7,6 +7,8 @@
 #include <stdexcept>
 #include <thread>
 
+#include "passes/approximate.h"
+
 namespace isinglass {
 
 namespace {
@@ -94,6 +96,7 @@ class Candidate {
     }
     if (!order_.on_native.empty()) {
       result_.is_complete = improve(circuit);
+      if (context_.tolerance > 0) shorten(circuit);
       step("lower", circuit, true);  // the normal form, whatever the last pass left
     }
     result_.is_done = true;
@@ -122,6 +125,13 @@ class Candidate {
       error = now;
     }
     return true;
+  }
+
+  /// Spends the tolerance, once, and goes round again with what that has opened.
+  void shorten(Circuit& circuit) {
+    result_.infidelity = approximated(circuit, context_).infidelity;
+    step("approximate", circuit, true);
+    result_.is_complete = improve(circuit) && result_.is_complete;
   }
 
   void step(std::string_view name, Circuit& circuit, bool is_lowered) {
@@ -185,7 +195,7 @@ Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace
   // The first of equals wins, so that the outcome does not hang on which thread was faster.
   const auto best = std::min_element(candidates.begin(), candidates.end(), [](auto& a, auto& b) {
     if (a.result().is_done != b.result().is_done) return a.result().is_done;
-    return a.result().tally.error < b.result().tally.error;
+    return a.result().tally.error + a.result().infidelity < b.result().tally.error + b.result().infidelity;
   });
   if (trace) {
     for (Candidate& candidate : candidates) {

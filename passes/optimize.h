@@ -27,6 +27,7 @@ struct TraceRow {
 struct TraceResult {
   std::string order;
   Tally tally;
+  double infidelity = 0;  // added by approximation, at most; the winner has the least error + infidelity
   double seconds = 0;
   bool is_done = false;  // false: time ran out before it had a result; tally is empty then
   bool is_winner = false;

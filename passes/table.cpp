@@ -1,4 +1,5 @@
 // The table of all passes: name, sentence, function. To add one: include its header, add its row.
+#include "passes/approximate.h"
 #include "passes/bits_at_end.h"
 #include "passes/constructions.h"
 #include "passes/expand_controls.h"
@@ -48,6 +49,8 @@ constexpr Pass table[] = {
     {"trim-start", "interactions with known states do no more than the state needs", trim_start},
     {"trim-end", "interactions that no measurement and no kept state can tell are dropped", trim_end},
     {"mirrored-stretches", "the same, where a swap of the wires' names makes it cheaper", mirrored_stretches},
+    {"approximate", "within the tolerance, interactions too small to be worth their error are left out",
+     approximate},
 };
 
 }  // namespace

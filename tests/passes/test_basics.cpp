@@ -7,6 +7,7 @@
 
 #include "circuit/cost.h"
 #include "measured.h"
+#include "passes/approximate.h"
 #include "passes/bits_at_end.h"
 #include "passes/expand_controls.h"
 #include "passes/known_start.h"
@@ -215,4 +216,46 @@ TEST_CASE("each pass and the whole keep what a measuring program promises") {
   for (const Subject& subject : subjects) check(subject.name, subject.run, subject.is_lowered, 60);
   check(
       "whole", [](const Circuit& c, const PassContext& p) { return optimize(c, p); }, false, 100);
+}
+
+TEST_CASE("approximation stays within its tolerance, gains, and does nothing without") {
+  support::Random random(15);
+  for (int trial = 0; trial < 200; ++trial) {
+    Circuit source;
+    add_register(source, "q", 4);
+    const int gates = random.between(1, 30);
+    for (int g = 0; g < gates; ++g) {
+      const auto pair = random.distinct(2, 4);
+      // Angles from far below to far above what is worth its error.
+      const double theta = std::pow(10.0, random.real(-4, 0.2));
+      source.body().push_back(source.make(
+          Kind::xx, pair, std::vector<Angle>{{theta}, {random.real(-3, 3)}, {random.real(-3, 3)}}));
+    }
+    source = lower(source, {});
+    PassContext context;
+    CHECK(tally_of(approximate(source, context)).xx == tally_of(source).xx);
+    context.tolerance = std::pow(10.0, random.real(-6, -2));
+    const Approximation result = approximated(source, context);
+    const support::Matrix a = support::unitary(source);
+    const support::Matrix b = support::unitary(result.circuit);
+    const double fidelity = std::norm((a.adjoint() * b).trace()) / (16.0 * 16.0);
+    CAPTURE(listed(source));
+    CHECK(result.infidelity <= context.tolerance);
+    CHECK(1 - fidelity <= result.infidelity + 1e-12);
+    CHECK(tally_of(result.circuit).error + result.infidelity <= tally_of(source).error);
+    const Circuit whole = optimize(source, context);
+    const double kept = std::norm((a.adjoint() * support::unitary(whole)).trace()) / (16.0 * 16.0);
+    CHECK(1 - kept <= context.tolerance + 1e-12);
+  }
+  // A pair of interactions with one worth leaving out: 1e-3 of error against (1e-3)^2 / 4.
+  Circuit two;
+  add_register(two, "q", 2);
+  two.body().push_back(two.make(Kind::xx, {0, 1}, {{1.2}, {0}, {0}}));
+  two.body().push_back(two.make(Kind::zz, {0, 1}, {{1e-3}}));
+  PassContext context;
+  CHECK(tally_of(optimize(two, context)).xx == 2);
+  context.tolerance = 1e-5;
+  CHECK(tally_of(optimize(two, context)).xx == 1);
+  context.tolerance = 1e-8;
+  CHECK(tally_of(optimize(two, context)).xx == 2);
 }
