@@ -533,6 +533,7 @@ struct Variable {
   TypeName type;
   Value value;
   bool is_register = false;
+  bool is_input = false;
 };
 
 /// What a path carries besides its place in the program.
@@ -644,6 +645,7 @@ class Interpreter {
     if (s.type.width) width = static_cast<int>(signed_of(evaluate(*s.type.width, world)));
     variable.is_register = s.type.is_bit && s.type.width.has_value();
     variable.value = {s.type.type, width, 0, 0};
+    variable.is_input = s.kind == "input";
     if (s.kind == "input") {
       variable.value = converted(make_real(options_.inputs.at(s.name)), s.type.type, width);
     }
@@ -1060,6 +1062,10 @@ class Interpreter {
   }
 
   static Value of_angles(const std::string& sign, const Value& a, const Value& b) {
+    // The standard leaves a float times an angle open; compiled plans use it as the product of the numbers.
+    if ((sign == "*" || sign == "/") && (a.type == Type::real || b.type == Type::real)) {
+      return make_real(sign == "*" ? real_of(a) * real_of(b) : real_of(a) / real_of(b));
+    }
     const int width = a.type == Type::angle ? a.width : b.width;
     const std::uint64_t x = a.type == Type::real ? converted(a, Type::angle, width).pattern : a.pattern;
     const std::uint64_t y = b.type == Type::real ? converted(b, Type::angle, width).pattern : b.pattern;
@@ -1084,6 +1090,7 @@ std::string printed(const std::map<std::string, Variable>& variables,
                     const std::map<std::string, std::string>& names, const std::set<std::string>& shown) {
   std::map<std::string, std::string> values;
   for (const auto& [name, variable] : variables) {
+    if (variable.is_input) continue;
     const auto renamed = names.find(name);
     const std::string source = renamed == names.end() ? name : renamed->second;
     if (!shown.empty() && !shown.contains(source)) continue;

@@ -48,7 +48,7 @@ Placement placement_of(const Program& compiled, const Program& source);
 
 /// One path through a program's measurements.
 struct Path {
-  std::string bits;               // values of all classical variables, by name: "b=01;c=1;"
+  std::string bits;               // values of all classical variables but inputs, by name: "b=01;c=1;"
   State state;                    // not normalized; wires above the program's own are references
   std::vector<bool> is_measured;  // by wire: whether its last act was a measurement
 };
