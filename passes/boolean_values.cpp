@@ -21,8 +21,29 @@ BooleanValues::BooleanValues() {
 
 BooleanValues::Value BooleanValues::intern(Polynomial polynomial) {
   const auto [entry, is_new] = index_.try_emplace(std::move(polynomial), static_cast<Value>(table_.size()));
-  if (is_new) table_.push_back(entry->first);
+  if (is_new) {
+    table_.push_back(entry->first);
+    marks_.push_back(mark_of(entry->first));
+  }
   return entry->second;
+}
+
+/// Random bits for each monomial, none for the constant.
+std::uint64_t BooleanValues::mark_of(const Polynomial& polynomial) {
+  std::uint64_t mark = 0;
+  for (const Monomial& monomial : polynomial) {
+    if (monomial.empty()) continue;
+    std::uint64_t bits = 0;
+    for (const std::uint32_t variable : monomial) {
+      // The mixing function of the SplitMix64 generator: Steele, Lea, Flood, OOPSLA 2014.
+      bits += 0x9e3779b97f4a7c15u * (std::uint64_t{variable} + 1);
+      bits = (bits ^ bits >> 30) * 0xbf58476d1ce4e5b9u;
+      bits = (bits ^ bits >> 27) * 0x94d049bb133111ebu;
+      bits ^= bits >> 31;
+    }
+    mark ^= bits;
+  }
+  return mark;
 }
 
 bool BooleanValues::is_short(const Polynomial& polynomial) {
@@ -49,6 +70,7 @@ BooleanValues::Value BooleanValues::sum(Value a, Value b) {
   // A name of its own, so that a carry's polynomial does not grow with its place; taking back what was added
   // gives the old value again.
   const Value named = fresh();
+  marks_[named] = marks_[a] ^ marks_[b];
   sums_[std::minmax(named, a)] = b;
   sums_[std::minmax(named, b)] = a;
   return sums_[{a, b}] = named;

@@ -29,6 +29,9 @@ class BooleanValues {
   Value sum(Value a, Value b);
   Value product(Value a, Value b);
   Value complement(Value a) { return sum(a, one); }
+  /// A number that equal functions share, and their complements; that of a sum is the exclusive or of both.
+  /// So whether a sum may equal a known function is seen without making it.
+  std::uint64_t mark(Value a) const { return marks_[a]; }
   /// Whether the function is 1 where all variables are 0.
   bool has_constant(Value a) const { return !table_[a].empty() && table_[a].front().empty(); }
 
@@ -38,10 +41,12 @@ class BooleanValues {
   using Pair = std::pair<Value, Value>;
 
   Value intern(Polynomial polynomial);
+  static std::uint64_t mark_of(const Polynomial& polynomial);
   static bool is_short(const Polynomial& polynomial);
   static bool is_nearly_linear(const Polynomial& polynomial);
 
   std::vector<Polynomial> table_;
+  std::vector<std::uint64_t> marks_;
   std::map<Polynomial, Value> index_;
   std::map<Pair, Value> sums_;
   std::map<Pair, Value> products_;

@@ -23,6 +23,7 @@
 #include <optional>
 #include <set>
 #include <span>
+#include <unordered_set>
 
 #include "passes/boolean_values.h"
 
@@ -89,9 +90,10 @@ class Stretch {
   /// The stretch rewritten, or nothing where no triple is found.
   std::optional<Block> rewritten() {
     follow_bits();
-    if (std::none_of(phases_.begin(), phases_.end(), [](const auto& p) { return is_odd_eighth(p.second); })) {
-      return std::nullopt;
+    for (const auto& [value, angle] : phases_) {
+      if (is_odd_eighth(angle)) odd_marks_.insert(values_.mark(value));
     }
+    if (odd_marks_.empty()) return std::nullopt;
     find_triples();
     choose();
     if (chosen_.empty()) return std::nullopt;
@@ -193,6 +195,7 @@ class Stretch {
     const Value f = on_wire_[wires[0]];
     const Value g = on_wire_[wires[1]];
     const Value h = on_wire_[wires[2]];
+    if (!odd_marks_.contains(values_.mark(f) ^ values_.mark(g) ^ values_.mark(h))) return;
     const Value pair = values_.sum(f, g);
     const Bit all = canonical(values_.sum(pair, h));
     if (!is_odd_eighth(phase(all.value))) return;
@@ -296,6 +299,7 @@ class Stretch {
   std::vector<std::vector<std::pair<std::uint32_t, Value>>> changes_;  // by operation: wire, its new bit
   std::vector<std::vector<std::size_t>> shared_at_;                    // by wire: operations with other wires
   std::map<Value, double> phases_;
+  std::unordered_set<std::uint64_t> odd_marks_;  // of the bits whose phase is an odd multiple of pi/4
   std::map<Value, Place> places_;
   std::map<std::set<Value>, std::vector<Triple>> triples_;  // by their seven sums
   std::vector<Triple> chosen_;
