@@ -38,9 +38,8 @@ Value given_value(double number, Type type) {
     value.type = type;
     return value;
   }
-  bool narrowed = false;
-  Value value = converted(of_int(whole), type, rules, &narrowed);
-  if (narrowed) throw Fault{fmt::format("cannot hold {}", number), {}};
+  Value value = converted(of_int(whole), type, rules);
+  if (value.integer != whole) throw Fault{fmt::format("cannot hold {}", number), {}};
   return value;
 }
 

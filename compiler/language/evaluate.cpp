@@ -61,9 +61,13 @@ Value evaluate(const Expression& expression, const std::function<Value(const Exp
     case K::cast:
       return cast(argument(0), type_of(expression.text), rules);
     case K::index: {
-      // Cells of arrays are leaves of their own; here only bits of a number are left.
-      const Value value = leaf(expression).type.base == Base::none ? argument(0) : leaf(expression);
-      if (expression.arguments.size() != 2 || value.type.width == 0) return value;
+      // Cells of arrays are leaves of their own; else it is a bit of a number.
+      Value cell = leaf(expression);
+      if (cell.type.base != Base::none) return cell;
+      const Value value = argument(0);
+      if (expression.arguments.size() != 2 || value.type.width == 0 || !value.is_known()) {
+        throw Fault{"this index cannot be evaluated", {}};
+      }
       const std::size_t bit = index_of(argument(1), value.type.width);
       Value result = of_bool(value.integer.modulo(value.type.width).bit(bit));
       result.type = {Base::bit, 0};

@@ -7,8 +7,9 @@
 
 namespace isinglass {
 
-/// The value of an expression whose leaves (inputs, variables) `leaf` gives: it is called with nodes of kind
-/// input and variable. Throws Fault where the language's rules are broken.
+/// The value of an expression whose leaves `leaf` gives: it is called with nodes of kind input and variable,
+/// and with nodes of kind index, for which it may answer with a value without a type (not a leaf). Throws
+/// Fault where the language's rules are broken.
 Value evaluate(const Expression& expression, const std::function<Value(const Expression&)>& leaf,
                const Rules& rules);
 
