@@ -214,19 +214,18 @@ void improve(Assignment& ion_of, const std::vector<std::uint32_t>& ions, const O
   }
 }
 
-Assignment best_assignment(const std::vector<WireUse>& uses, const std::vector<std::uint32_t>& ions,
-                           const Objective& objective, const PlaceOptions& options) {
-  Assignment best(ions.begin(), ions.begin() + static_cast<std::ptrdiff_t>(uses.size()));
-  double least = objective.whole(best);
+/// The results of all beginnings, the best first; of equal ones the earlier.
+std::vector<Assignment> assignments(const std::vector<WireUse>& uses, const std::vector<std::uint32_t>& ions,
+                                    const Objective& objective, const PlaceOptions& options) {
+  std::vector<std::pair<double, Assignment>> found;
   const auto compete = [&](Assignment candidate) {
     improve(candidate, ions, objective);
     const double cost = objective.whole(candidate);
-    if (cost < least - 1e-12) {
-      least = cost;
-      best = std::move(candidate);
-    }
+    found.emplace_back(cost, std::move(candidate));
   };
-  compete(best);
+  const Assignment in_order(ions.begin(), ions.begin() + static_cast<std::ptrdiff_t>(uses.size()));
+  found.emplace_back(objective.whole(in_order), in_order);
+  compete(in_order);
 
   // Half of the beginnings: the busiest pair of wires on one of the best pairs of ions, the others around it.
   const auto busiest = std::max_element(uses.begin(), uses.end(), [](const WireUse& a, const WireUse& b) {
@@ -255,7 +254,11 @@ Assignment best_assignment(const std::vector<WireUse>& uses, const std::vector<s
     shuffled.resize(uses.size());
     compete(std::move(shuffled));
   }
-  return best;
+  std::stable_sort(found.begin(), found.end(),
+                   [](const auto& a, const auto& b) { return a.first < b.first - 1e-12; });
+  std::vector<Assignment> list;
+  for (auto& [cost, assignment] : found) list.push_back(std::move(assignment));
+  return list;
 }
 
 void refuse_missing_abilities(const Circuit& circuit, const Target& target) {
@@ -293,8 +296,9 @@ Placed place(const Circuit& circuit, const Target& target, const PlaceOptions& o
   const std::vector<WireUse> uses = uses_of(circuit);
   const Routes routes(target);
   const Objective objective(uses, target, routes);
-  const Assignment ion_of = best_assignment(uses, ions, objective, options);
-  return routed(circuit, target, routes, ion_of);
+  const auto list = assignments(uses, ions, objective, options);
+  return routes.is_complete() ? routed(circuit, target, routes, list.front())
+                              : best_routed(circuit, target, routes, list);
 }
 
 }  // namespace isinglass

@@ -12,6 +12,7 @@
 
 #include <algorithm>
 #include <numeric>
+#include <optional>
 
 #include "circuit/message.h"
 
@@ -251,6 +252,66 @@ class Router {
 Placed routed(const Circuit& circuit, const Target& target, const Routes& routes,
               const std::vector<std::uint32_t>& ion_of) {
   return Router(circuit, target, routes, ion_of).run();
+}
+
+namespace {
+
+/// Errors of all pulses and interactions.
+double cost_of(const Placed& placed, const Target& target) {
+  double sum = 0;
+  for (const Block& block : placed.circuit.blocks) {
+    for (const Operation& op : block) {
+      if (op.kind == Kind::r) sum += target.ion[op.operand[0]].pulse_error.value;
+      if (op.kind == Kind::measure) sum += target.ion[op.operand[0]].measure_error.value;
+      if (op.kind != Kind::xx) continue;
+      sum += target.pair(op.operand[0], op.operand[1]).error(op.form[0] == 0 ? op.value[0] : pi / 2);
+    }
+  }
+  return sum;
+}
+
+/// The interactions of the program alone, in either direction, with every wire's end to be told.
+Circuit interactions_of(const Circuit& circuit, bool backwards) {
+  Circuit bare;
+  add_register(bare, "w", circuit.wires);
+  bare.forms = circuit.forms;
+  for (const Operation& op : circuit.body()) {
+    if (op.kind == Kind::xx) bare.body().push_back(op);
+  }
+  if (backwards) std::reverse(bare.body().begin(), bare.body().end());
+  return bare;
+}
+
+}  // namespace
+
+Placed best_routed(const Circuit& circuit, const Target& target, const Routes& routes,
+                   const std::vector<std::vector<std::uint32_t>>& beginnings) {
+  constexpr std::size_t long_program = 100'000;  // then the first beginning must do
+  constexpr int most_turns = 3;
+  const Circuit forth = interactions_of(circuit, false);
+  const Circuit back = interactions_of(circuit, true);
+  const bool is_long = forth.body().size() > long_program;
+
+  std::optional<Placed> best;
+  double least = 0;
+  const auto compete = [&](const std::vector<std::uint32_t>& beginning) {
+    Placed candidate = routed(circuit, target, routes, beginning);
+    const double cost = cost_of(candidate, target);
+    if (best && cost >= least - 1e-12) return false;
+    least = cost;
+    best = std::move(candidate);
+    return true;
+  };
+  for (std::size_t i = 0; i < (is_long ? 1 : beginnings.size()); ++i) {
+    std::vector<std::uint32_t> beginning = beginnings[i];
+    compete(beginning);
+    for (int turn = 0; turn < most_turns && best->moves > 0 && !is_long; ++turn) {
+      const auto there = routed(forth, target, routes, beginning).circuit.end_wire;
+      beginning = routed(back, target, routes, there).circuit.end_wire;
+      if (!compete(beginning)) break;
+    }
+  }
+  return std::move(*best);
 }
 
 }  // namespace isinglass

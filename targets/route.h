@@ -39,4 +39,10 @@ class Routes {
 Placed routed(const Circuit& circuit, const Target& target, const Routes& routes,
               const std::vector<std::uint32_t>& ion_of);
 
+/// The cheapest of routed() from several beginnings, each of them improved by going through the program
+/// backwards and forwards again: where the backward way ends is a good place to begin (Li, Ding and Xie
+/// 2019).
+Placed best_routed(const Circuit& circuit, const Target& target, const Routes& routes,
+                   const std::vector<std::vector<std::uint32_t>>& beginnings);
+
 }  // namespace isinglass

@@ -100,9 +100,8 @@ std::string text_of(const Compiled& compiled) {
       {"one-qubit gates / pulses", count(before.one_qubit), count(totals.r)},
   });
   if (compiled.placed.moves > 0) {
-    text +=
-        fmt::format("{} of the interactions are movement ({} swaps): the pairs they join are not reachable\n",
-                    3 * compiled.placed.moves, compiled.placed.moves);
+    text += fmt::format("{} swaps, counted in, bring qubits to where pairs are reachable\n",
+                        compiled.placed.moves);
   }
   text += fmt::format("\nduration {:.6g} us on {}, {} pair{} to calibrate\n", totals.duration,
                       compiled.target.name, totals.pairs, totals.pairs == 1 ? "" : "s");
