@@ -302,15 +302,22 @@ Placed best_routed(const Circuit& circuit, const Target& target, const Routes& r
     best = std::move(candidate);
     return true;
   };
-  for (std::size_t i = 0; i < (is_long ? 1 : beginnings.size()); ++i) {
+  std::optional<Failure> refusal;  // of the best beginning that no way leads on from
+  for (std::size_t i = 0; i < beginnings.size() && !(is_long && best); ++i) {
     std::vector<std::uint32_t> beginning = beginnings[i];
-    compete(beginning);
+    try {
+      compete(beginning);
+    } catch (const Failure& failure) {
+      if (!refusal) refusal = failure;
+      continue;
+    }
     for (int turn = 0; turn < most_turns && best->moves > 0 && !is_long; ++turn) {
       const auto there = routed(forth, target, routes, beginning).circuit.end_wire;
       beginning = routed(back, target, routes, there).circuit.end_wire;
       if (!compete(beginning)) break;
     }
   }
+  if (!best) throw *refusal;
   return std::move(*best);
 }
 
