@@ -28,6 +28,12 @@ struct Order {
 // One sweep and no more: merging takes gates on two wires and lowers them on its way.
 const Order quick_order = {"quick", {"rename-swaps", "choose-constructions", "merge-rotations"}, {}};
 
+// Where effort deep goes on from the best of all until its time is up.
+const Order search_order = {
+    "search",
+    {"rotation-networks", "lower"},
+    {"merge-rotations", "two-qubit-stretches", "trim-start", "trim-end", "mirrored-stretches"}};
+
 // What every order but the quick one begins with, on the source's own gates.
 const Names first_of_all = {"rename-swaps", "known-start", "bits-at-end", "merge-gates"};
 // What every order but the quick one comes back to, on the machine's gates.
@@ -58,6 +64,11 @@ const std::vector<Order>& steady_orders() {
   return orders;
 }
 
+/// All that happens on two wires is one stretch or a few.
+bool is_one_stretch(const Circuit& circuit) {
+  return circuit.wires <= 2 && circuit.inputs.empty();
+}
+
 double seconds_since(Clock::time_point start) {
   return std::chrono::duration<double>(Clock::now() - start).count();
 }
@@ -78,23 +89,25 @@ const Pass& pass_named(std::string_view name) {
 /// Runs one order and writes down what each pass did.
 class Candidate {
  public:
-  Candidate(const Order& order, const PassContext& context) : order_(order), context_(context) {
-    context_.threads = 1;
+  Candidate(const Order& order, const PassContext& context, unsigned threads)
+      : order_(&order), context_(context) {
+    context_.threads = threads;
+    if (&order == &quick_order) context_.effort = Effort::quick;
   }
 
   /// The first candidate runs whatever the time, so that there is a result; the others not once it is over.
   void run(Circuit circuit, bool is_first) {
-    result_.order = order_.name;
+    result_.order = order_->name;
     const auto start = Clock::now();
     const Clock::time_point deadline = context_.deadline;
-    for (const std::string_view name : order_.on_source) {
+    for (const std::string_view name : order_->on_source) {
       if (!is_first && context_.out_of_time()) return;
       // A pass that searches until its deadline leaves a fifth of the time to those after it.
       if (deadline != Clock::time_point::max()) context_.deadline = start + (deadline - start) / 5 * 4;
       step(name, circuit, false);
       context_.deadline = deadline;
     }
-    if (!order_.on_native.empty()) {
+    if (!order_->on_native.empty()) {
       result_.is_complete = improve(circuit);
       if (context_.tolerance > 0) shorten(circuit);
       step("lower", circuit, true);  // the normal form, whatever the last pass left
@@ -108,6 +121,7 @@ class Candidate {
   const TraceResult& result() const { return result_; }
   std::vector<TraceRow>& rows() { return rows_; }
   Circuit& circuit() { return circuit_; }
+  void inherit(double infidelity) { result_.infidelity += infidelity; }
 
  private:
   static constexpr int most_rounds = 20;
@@ -116,7 +130,7 @@ class Candidate {
   bool improve(Circuit& circuit) {
     double error = tally_of(circuit, context_.cost).error;
     for (int round = 0; round < most_rounds; ++round) {
-      for (const std::string_view name : order_.on_native) {
+      for (const std::string_view name : order_->on_native) {
         if (context_.out_of_time()) return false;
         step(name, circuit, true);
       }
@@ -136,7 +150,7 @@ class Candidate {
 
   void step(std::string_view name, Circuit& circuit, bool is_lowered) {
     TraceRow row;
-    row.order = order_.name;
+    row.order = order_->name;
     row.pass = name;
     row.is_lowered = is_lowered;
     row.gates_before = size_of(circuit);
@@ -145,11 +159,11 @@ class Candidate {
     circuit = pass_named(name).run(std::move(circuit), context_);
     row.seconds = seconds_since(start);
     row.gates_after = size_of(circuit);
-    if (is_lowered || name == order_.on_source.back()) row.after = tally_of(circuit, context_.cost);
+    if (is_lowered || name == order_->on_source.back()) row.after = tally_of(circuit, context_.cost);
     rows_.push_back(std::move(row));
   }
 
-  const Order& order_;
+  const Order* order_;
   PassContext context_;
   Circuit circuit_;
   std::vector<TraceRow> rows_;
@@ -180,31 +194,62 @@ void run_all(std::vector<Candidate>& candidates, const Circuit& source, unsigned
 
 }  // namespace
 
-Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace) {
+namespace {
+
+/// Orders that one search is tried in; the quick one first, which ends whatever the time.
+std::vector<Candidate> candidates_for(const Circuit& source, const PassContext& context) {
   std::vector<Candidate> candidates;
-  if (context.effort == Effort::quick) {
-    candidates.emplace_back(quick_order, context);
-  } else {
-    for (const Order& order : steady_orders()) {
-      candidates.emplace_back(order, context);
-      // All that happens on two wires is stretches, and the first order finds their best form.
-      if (source.wires <= 2 && source.inputs.empty()) break;
-    }
+  candidates.emplace_back(quick_order, context, 1);
+  if (context.effort == Effort::quick) return candidates;
+  for (const Order& order : steady_orders()) {
+    candidates.emplace_back(order, context, 1);
+    if (is_one_stretch(source)) break;  // and the first order finds its best form
   }
+  return candidates;
+}
+
+bool is_better(const TraceResult& a, const TraceResult& b) {
+  if (a.is_done != b.is_done) return a.is_done;
+  return a.tally.error + a.infidelity < b.tally.error + b.infidelity;
+}
+
+/// Searches on with other random choices as long as there is time for more than a glance.
+void search_on(Candidate& best, const PassContext& context, std::vector<Candidate>& found) {
+  PassContext more = context;
+  more.tolerance = 0;  // is spent
+  const auto glance = std::chrono::milliseconds(100);
+  while (Clock::now() + glance < context.deadline) {
+    ++more.seed;
+    Candidate candidate(search_order, more, context.threads);
+    candidate.run(found.empty() ? best.circuit() : found.back().circuit(), false);
+    candidate.inherit(best.result().infidelity);
+    const TraceResult& now = found.empty() ? best.result() : found.back().result();
+    if (is_better(candidate.result(), now)) found.push_back(std::move(candidate));
+  }
+}
+
+}  // namespace
+
+Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace) {
+  std::vector<Candidate> candidates = candidates_for(source, context);
   run_all(candidates, source, context.threads);
   // The first of equals wins, so that the outcome does not hang on which thread was faster.
-  const auto best = std::min_element(candidates.begin(), candidates.end(), [](auto& a, auto& b) {
-    if (a.result().is_done != b.result().is_done) return a.result().is_done;
-    return a.result().tally.error + a.result().infidelity < b.result().tally.error + b.result().infidelity;
-  });
+  const auto best = std::min_element(candidates.begin(), candidates.end(),
+                                     [](auto& a, auto& b) { return is_better(a.result(), b.result()); });
+  std::vector<Candidate> found;
+  const bool may_search = context.effort == Effort::deep && context.deadline != Clock::time_point::max();
+  if (may_search && !is_one_stretch(source)) search_on(*best, context, found);
+  Candidate& winner = found.empty() ? *best : found.back();
   if (trace) {
-    for (Candidate& candidate : candidates) {
-      for (TraceRow& row : candidate.rows()) trace->rows.push_back(std::move(row));
-      trace->results.push_back(candidate.result());
-      trace->results.back().is_winner = &candidate == &*best;
+    for (std::vector<Candidate>* group : {&candidates, &found}) {
+      for (Candidate& candidate : *group) {
+        for (TraceRow& row : candidate.rows()) trace->rows.push_back(std::move(row));
+        trace->results.push_back(candidate.result());
+        trace->results.back().is_winner = &candidate == &winner;
+      }
     }
   }
-  return std::move(best->circuit());
+  return std::move(winner.circuit());
 }
 
 }  // namespace isinglass

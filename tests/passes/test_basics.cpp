@@ -259,3 +259,43 @@ TEST_CASE("approximation stays within its tolerance, gains, and does nothing wit
   context.tolerance = 1e-8;
   CHECK(tally_of(optimize(two, context)).xx == 2);
 }
+
+TEST_CASE(
+    "orders compete: the least error wins, whatever the threads; time that is over still gives a result") {
+  support::Random random(16);
+  for (int trial = 0; trial < 20; ++trial) {
+    const Circuit source =
+        support::random_circuit(random, wanted(random, families[static_cast<std::size_t>(random.below(7))]));
+    CAPTURE(listed(source));
+    PassContext context;
+    Trace trace;
+    const Circuit alone = optimize(source, context, &trace);
+    int winners = 0;
+    for (const TraceResult& result : trace.results) {
+      winners += result.is_winner ? 1 : 0;
+      CHECK(result.is_done);
+      CHECK(tally_of(alone).error <= result.tally.error);
+    }
+    CHECK(winners == 1);
+    context.threads = 3;
+    CHECK(listed(optimize(source, context)) == listed(alone));
+    for (const Effort effort : {Effort::steady, Effort::deep}) {
+      PassContext late;
+      late.effort = effort;
+      late.deadline = std::chrono::steady_clock::now();
+      const Circuit hurried = optimize(source, late);
+      check_normal_form(hurried);
+      CHECK(support::distance(source, hurried, some_inputs(random, source)) < 1e-9);
+    }
+  }
+  // Effort deep keeps to its time and keeps the unitary.
+  PassContext deep;
+  deep.effort = Effort::deep;
+  deep.threads = 2;
+  deep.deadline = std::chrono::steady_clock::now() + std::chrono::milliseconds(1500);
+  support::RandomCircuit plan;
+  plan.qubits = 4;
+  plan.gates = 40;
+  const Circuit source = support::random_circuit(random, plan);
+  CHECK(support::distance(source, optimize(source, deep)) < 1e-9);
+}
