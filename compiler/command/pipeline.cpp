@@ -6,6 +6,8 @@
 #include "command/clock.h"
 #include "language/language.h"
 #include "output/native.h"
+#include "passes/lower.h"
+#include "passes/two_qubit_stretches.h"
 #include "verify/memory.h"
 #include "verify/native.h"
 
@@ -101,7 +103,14 @@ Result compile(const std::string& path, const Settings& settings, Progress& prog
   Circuit lowered;
   timed("improve", "improving",
         [&] { lowered = optimize(source, context_for(settings, source, result.target), &result.trace); });
-  timed("place", "placing", [&] { result.placed = place(lowered, result.target, {.seed = settings.seed}); });
+  timed("place", "placing", [&] {
+    result.placed = place(lowered, result.target, {.seed = settings.seed});
+    if (result.placed.moves == 0) return;
+    // A swap that movement put beside interactions of its pair becomes one stretch with them.
+    const PassContext context = context_for(settings, source, result.target);
+    Circuit joined = two_qubit_stretches(std::move(result.placed.circuit), context);
+    result.placed.circuit = lower(std::move(joined), context);
+  });
   timed("schedule", "timing", [&] {
     result.before = before_of(source);
     result.timed = schedule(result.placed, result.target, settings.promise_for(source));
