@@ -122,8 +122,9 @@ struct Circuit {
   std::vector<Branch> branches;
   std::vector<std::uint32_t> pool;  // operand lists longer than three
   Origins origins;
-  std::vector<std::string> pragmas;  // of the source, kept
-  std::vector<std::string> externs;  // declarations that calls in expressions need: "extern f(int[8]) -> bit;"
+  std::vector<std::string> pragmas;  // of the source, kept: each line after the word `pragma`
+  std::vector<std::string>
+      externs;  // declarations that calls in expressions need: "extern f(int[8]) -> bit;"
 
   Block& body() { return blocks[0]; }
   const Block& body() const { return blocks[0]; }

@@ -62,7 +62,10 @@ class NativeWriter {
     out_.add("// rz is a change of frame: no pulse, no time, no error.\n");
     out_.add("include \"stdgates.inc\";\n", definitions);
     placement();
-    for (const std::string& pragma : circuit_.pragmas) out_.add(pragma, "\n");
+    for (const std::string& pragma : circuit_.pragmas) {
+      // A source that is itself a native program says where its own qubits were: not ours.
+      if (!pragma.starts_with("isinglass ")) out_.add("pragma ", pragma, "\n");
+    }
     declarations();
     block(0, "");
   }

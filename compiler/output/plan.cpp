@@ -39,14 +39,16 @@ class PlanReader {
     placed.circuit.pragmas.clear();
     for (const std::string& pragma : native_.pragmas) {
       std::istringstream stream(pragma);
-      std::string word, family, kind, first, second;
-      stream >> word >> family >> kind >> first >> second;
-      if (family != "isinglass" || (kind != "start" && kind != "end")) {
+      std::string family, kind, first, second;
+      stream >> family >> kind >> first >> second;
+      if (family != "isinglass") {
         placed.circuit.pragmas.push_back(pragma);
+      } else if (kind == "name") {
+        rename(placed.circuit, first, second);
       } else if (kind == "start") {
         add_qubit(pragma, first);
         start_.push_back(ion(pragma, second));
-      } else {
+      } else if (kind == "end") {
         ends_.emplace_back(first, ion(pragma, second));
       }
     }
@@ -77,9 +79,19 @@ class PlanReader {
   std::uint32_t ion(const std::string& pragma, const std::string& text) const {
     const auto where = indexed(text);
     if (!where || !where->index || *where->index >= native_.wires) {
-      throw Failure(Exit::source_at_fault, pragma + ": the program has no ion of that name");
+      throw Failure(Exit::source_at_fault, "pragma " + pragma + ": the program has no ion of that name");
     }
     return *where->index;
+  }
+
+  /// What the source called `source` is `name` in this program. Values files use the names of the source.
+  static void rename(Circuit& circuit, const std::string& source, const std::string& name) {
+    for (Input& input : circuit.inputs) {
+      if (input.name == name) input.name = source;
+    }
+    for (Variable& variable : circuit.variables) {
+      if (variable.name == name) variable.source = source;
+    }
   }
 
   /// Qubits come register by register, each from 0 on: the order in which the program was written.
@@ -95,7 +107,8 @@ class PlanReader {
     } else if (opens) {
       registers_.push_back({qubit->name, wire, 1, !qubit->index});
     } else {
-      throw Failure(Exit::source_at_fault, pragma + ": qubits are named in the order of their registers");
+      throw Failure(Exit::source_at_fault,
+                    "pragma " + pragma + ": qubits are named in the order of their registers");
     }
   }
 

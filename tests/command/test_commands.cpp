@@ -1,6 +1,7 @@
 // The commands as a user runs them: what they print, what they write, how they end.
 #include <doctest/doctest.h>
 
+#include <algorithm>
 #include <nlohmann/json.hpp>
 #include <pugixml.hpp>
 #include <string>
@@ -180,4 +181,69 @@ TEST_CASE("a loop until success is followed to its end, and a changed turn insid
   const Ran ran = run_program({"verify", folder.write("changed.qasm", changed), native});
   CHECK(ran.status == 1);
   CHECK(ran.out.find("different") != std::string::npos);
+}
+
+TEST_CASE("pragmas of the source are kept, and a native program can be compiled again") {
+  const Folder folder;
+  const Ran ran = run_program({"compile", "-"}, "OPENQASM 3.0;\ninclude \"stdgates.inc\";\npragma lamp on\n" +
+                                                    bell.substr(bell.find("qubit")));
+  INFO(ran.err);
+  CHECK(ran.status == 0);
+  CHECK(ran.out.find("pragma lamp on\n") != std::string::npos);
+  const std::string once = folder.write("once.qasm", ran.out);
+  const std::string twice = folder.path("twice.qasm");
+  CHECK(run_program({"compile", once, "--out", twice, "--quiet"}).status == 0);
+  CHECK(run_program({"verify", once, twice}).status == 0);
+}
+
+TEST_CASE("bind puts sets of values into a plan") {
+  const Folder folder;
+  const std::string heading = "OPENQASM 3.0;\ninclude \"stdgates.inc\";\n";
+  const std::string body = "qubit[2] q;\nrx(t) q[0];\ncp(3 * u) q[0], q[1];\nry(t - u) q;\n";
+  const std::string source = folder.write("s.qasm", heading + "input float t;\ninput float u;\n" + body);
+  const std::string plan = folder.path("plan.qasm");
+  REQUIRE(run_program({"compile", source, "--out", plan, "--quiet"}).status == 0);
+  const std::string csv = folder.write("v.csv", "t,u\n0.5,1.25\n-2,3\n");
+  const std::string lines = folder.write("v.jsonl", "{\"t\": 0.5, \"u\": 1.25}\n{\"u\": 3, \"t\": -2}\n");
+  for (const std::string& values : {csv, lines}) {
+    REQUIRE(run_program({"bind", plan, "--values", values, "--out", folder.path("bound-{}.qasm")}).status ==
+            0);
+    const char* given[2] = {"const float t = 0.5;\nconst float u = 1.25;\n",
+                            "const float t = -2.0;\nconst float u = 3;\n"};
+    for (int set = 0; set < 2; ++set) {
+      const std::string bound_source = folder.write("b.qasm", heading + given[set] + body);
+      const Ran same =
+          run_program({"verify", bound_source, folder.path(set == 0 ? "bound-1.qasm" : "bound-2.qasm")});
+      INFO(same.out << same.err);
+      CHECK(same.status == 0);
+    }
+  }
+  const Ran tally = run_program({"bind", plan, "--values", csv, "--tally"});
+  CHECK(tally.status == 0);
+  CHECK(tally.out.starts_with("set,xx,"));
+  CHECK(std::count(tally.out.begin(), tally.out.end(), '\n') == 3);
+  CHECK(run_program({"bind", plan, "--values", csv, "--out", folder.path("one.qasm")}).status == 2);
+}
+
+TEST_CASE("faults of a values file are said with their line") {
+  const Folder folder;
+  const std::string source = folder.write(
+      "s.qasm",
+      "OPENQASM 3.0;\ninclude \"stdgates.inc\";\ninput float t;\nqubit q;\nrx(t) q;\nry(2 * t) q;\n");
+  const std::string plan = folder.path("plan.qasm");
+  REQUIRE(run_program({"compile", source, "--out", plan, "--quiet"}).status == 0);
+  const std::pair<std::string, std::string> faults[] = {
+      {"t\n0.5\nhalf\n", ":3:"},   {"u\n0.5\n", ":1:"},
+      {"t\n1,2\n", ":2:"},         {"{\"t\": 1}\n{\"t\": \"x\"}\n", ":2:"},
+      {"{\"t\": 1}\n{}\n", ":2:"}, {"{\"t\": 1, \"v\": 2}\n", ":1:"},
+      {"", "no values"},           {"t\n", "no set"}};
+  for (const auto& [text, place] : faults) {
+    const Ran ran =
+        run_program({"bind", plan, "--values", folder.write("v", text), "--out", folder.path("o{}")});
+    INFO(text << "\n" << ran.err);
+    CHECK(ran.status == 2);
+    CHECK(ran.err.find(place) != std::string::npos);
+  }
+  CHECK(run_program({"bind", source, "--values", folder.write("v", "t\n1\n")}).status == 3);
+  CHECK(run_program({"bind", plan, "--values", folder.path("nowhere")}).status == 5);
 }
