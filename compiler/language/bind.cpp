@@ -55,7 +55,7 @@ std::vector<DeclaredInput> declared_inputs(const Circuit& circuit) {
   for (std::uint32_t i = 0; i < circuit.inputs.size(); ++i) {
     const Input& input = circuit.inputs[i];
     if (input.is_derived) continue;
-    DeclaredInput entry{input.name, input.type, 1, i};
+    DeclaredInput entry{input.source.empty() ? input.name : input.source, input.type, 1, i};
     for (const std::uint32_t size : shape_of(input.type)) entry.count *= size;
     declared.push_back(std::move(entry));
   }

@@ -455,7 +455,8 @@ void Reader::declare_input(const syntax::Declaration& declaration, Symbol symbol
   } else {
     symbol.cells = {of_expression(std::move(reference), symbol.type, false)};
   }
-  input.name = native_name(declare(std::move(symbol)).name, declaration.name.at);
+  input.source = declare(std::move(symbol)).name;
+  input.name = native_name(input.source, declaration.name.at);
   circuit_.inputs.push_back(std::move(input));
 }
 

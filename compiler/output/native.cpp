@@ -85,6 +85,10 @@ class NativeWriter {
     for (std::uint32_t q = 0; q < circuit_.end_wire.size(); ++q) {
       out_.add("pragma isinglass end ", circuit_.wire_name(q), " ", ions_[circuit_.end_wire[q]], "\n");
     }
+    for (const Input& input : circuit_.inputs) {
+      if (input.source.empty() || input.source == input.name) continue;
+      out_.add("pragma isinglass name ", input.source, " ", input.name, "\n");
+    }
     for (const Variable& variable : circuit_.variables) {
       if (variable.source.empty() || variable.source == variable.name) continue;
       out_.add("pragma isinglass name ", variable.source, " ", variable.name, "\n");

@@ -87,7 +87,7 @@ class PlanReader {
   /// What the source called `source` is `name` in this program. Values files use the names of the source.
   static void rename(Circuit& circuit, const std::string& source, const std::string& name) {
     for (Input& input : circuit.inputs) {
-      if (input.name == name) input.name = source;
+      if (input.name == name) input.source = source;
     }
     for (Variable& variable : circuit.variables) {
       if (variable.name == name) variable.source = source;

@@ -5,7 +5,8 @@ namespace isinglass {
 
 std::string angle_text(Angle angle, const Circuit& circuit) {
   if (angle.form == 0) return fmt::format("{}", angle.constant);
-  std::string text = angle.constant == 0 ? "" : fmt::format("{}", angle.constant);
+  const bool is_dust = std::abs(angle.constant) < 1e-15;  // what rounding leaves of constants that cancelled
+  std::string text = is_dust ? "" : fmt::format("{}", angle.constant);
   for (const Term& term : circuit.forms.terms(angle.form)) {
     const Input& input = circuit.inputs[term.input];
     const std::string value = input.is_derived ? "(" + printed(input.expression, circuit) + ")" : input.name;

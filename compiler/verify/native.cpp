@@ -110,7 +110,7 @@ void rename(Circuit& circuit, const std::vector<std::string>& words) {
   }
   for (Input& input : circuit.inputs) {
     if (input.name != words[2]) continue;
-    input.name = words[1];
+    input.source = words[1];
     return;
   }
   fail("pragma isinglass name: the compiled program has no variable " + words[2]);
