@@ -145,11 +145,11 @@ Verdict compare_states(const Job& job) {
   return judged(job, job.promise.zero_start ? "state" : "states", deviation, words + for_inputs(job, sets));
 }
 
-Verdict compare_programs(const Job& job, const Shown& shown) {
+Verdict compare_programs(const Job& job) {
   ProgramCheck check;
   Deviation deviation;
   const int sets = for_each_input_set(job, [&](const InputValues& values) {
-    check = by_branches(job, shown, values);
+    check = by_branches(job, values);
     deviation.include(check.deviation);
   });
   std::string start = "from |0...0>";
@@ -183,26 +183,14 @@ std::vector<std::uint32_t> measured_bits(const Circuit& circuit) {
   return bits;
 }
 
-/// Whether flat bit k of one circuit is flat bit k of the other for all variables that count.
-bool same_bit_numbers(const Job& job, const Shown& shown) {
-  if (shown.source.size() != job.compiled.variables.size()) return false;
-  for (std::size_t k = 0; k < shown.source.size(); ++k) {
-    if (job.source.variables[shown.source[k]].first_bit !=
-        job.compiled.variables[shown.compiled[k]].first_bit) {
-      return false;
-    }
-  }
-  return true;
-}
-
 /// Whether both circuits measure the same bits, at the end only or not at all.
-bool is_simple(const Job& job, const Shown& shown) {
+bool is_simple(const Job& job) {
   return measures_only_at_end(job.source) && measures_only_at_end(job.compiled) &&
-         measured_bits(job.source) == measured_bits(job.compiled) && same_bit_numbers(job, shown);
+         measured_bits(job.source) == measured_bits(job.compiled);
 }
 
 /// The method that decides most at a bearable cost.
-Verdict compare_densely(const Job& job, const Shown& shown) {
+Verdict compare_densely(const Job& job) {
   const unsigned wires = std::max(job.source.wires, job.compiled.wires);
   const bool are_fragments = is_fragment(job.source) && is_fragment(job.compiled);
   if (are_fragments && !job.promise.keep_bits_only) {
@@ -211,8 +199,8 @@ Verdict compare_densely(const Job& job, const Shown& shown) {
     return whole ? compare_unitaries(job) : compare_states(job);
   }
   const bool small = wires <= 6;  // where references can cover every input at once
-  if (is_simple(job, shown) && (job.promise.zero_start || !small)) return compare_states(job);
-  return compare_programs(job, shown);
+  if (is_simple(job) && (job.promise.zero_start || !small)) return compare_states(job);
+  return compare_programs(job);
 }
 
 /// Without amplitudes: what the Pauli rotations of both show.
@@ -272,8 +260,8 @@ Verdict compare_side_by_side(const Job& job) {
 }
 
 /// The methods without amplitudes, the cheaper first.
-Verdict compare_sparsely(const Job& job, const Shown& shown) {
-  if (!is_simple(job, shown)) {
+Verdict compare_sparsely(const Job& job) {
+  if (!is_simple(job)) {
     return not_shown("The programs are too large for state vectors, and measure on the way.");
   }
   if (job.options.most_followed_wires == 0) return compare_rotations(job);
@@ -305,18 +293,18 @@ Verdict compare(const Circuit& source, const Circuit& compiled, const Promise& p
     return different(fmt::format("The source has {} qubits, the compiled program {}.", source.source_qubits,
                                  compiled.source_qubits));
   }
-  const auto [left, right] = without_idle_wires(source, compiled);
+  const Renumbered renumbered = with_variables_of(source, compiled);
+  if (!renumbered.mismatch.empty()) {
+    return different("The variable " + renumbered.mismatch + " has another type in the compiled program.");
+  }
+  const auto [left, right] = without_idle_wires(source, renumbered.circuit);
   const Job job{left, right, promise, options};
   if (const std::string name = missing_input(job); !name.empty()) {
     return different("The compiled program has no input " + name + ".");
   }
-  const Shown shown = shown_variables(left, right);
-  if (!shown.missing.empty() && !(is_fragment(left) && is_fragment(right))) {
-    return different("The compiled program has no variable " + shown.missing + " of the source's type.");
-  }
   const bool is_dense = std::max(left.wires, right.wires) <= options.most_state_wires;
   try {
-    return is_dense ? compare_densely(job, shown) : compare_sparsely(job, shown);
+    return is_dense ? compare_densely(job) : compare_sparsely(job);
   } catch (const Unsupported& limit) {
     return not_shown(fmt::format("The comparison ended without a result: {} was beyond it.", limit.what()));
   }

@@ -2,6 +2,7 @@
 #include "verify/programs.h"
 
 #include <Eigen/Dense>
+#include <algorithm>
 #include <cmath>
 
 #include "verify/outcomes.h"
@@ -65,28 +66,64 @@ Deviation endings_deviation(const Endings& a, const Endings& b) {
   return d;
 }
 
-}  // namespace
-
-Shown shown_variables(const Circuit& source, const Circuit& compiled) {
-  Shown shown;
-  const auto source_name = [](const Variable& v) { return v.source.empty() ? v.name : v.source; };
-  for (std::uint32_t k = 0; k < source.variables.size(); ++k) {
-    const Variable& wanted = source.variables[k];
-    if (wanted.source.empty()) continue;  // made by the compiler
-    bool is_found = false;
-    for (std::uint32_t j = 0; j < compiled.variables.size() && !is_found; ++j) {
-      const Variable& candidate = compiled.variables[j];
-      if (source_name(candidate) != wanted.source || candidate.type != wanted.type) continue;
-      shown.source.push_back(k);
-      shown.compiled.push_back(j);
-      is_found = true;
-    }
-    if (!is_found) shown.missing = wanted.source;
-  }
-  return shown;
+void renumber(Expression& expression, std::span<const std::uint32_t> number) {
+  if (expression.kind == Expression::Kind::variable) expression.variable = number[expression.variable];
+  for (Expression& argument : expression.arguments) renumber(argument, number);
 }
 
-ProgramCheck by_branches(const Job& job, const Shown& shown, const InputValues& inputs) {
+}  // namespace
+
+Renumbered with_variables_of(const Circuit& source, Circuit compiled) {
+  Renumbered result;
+  std::vector<Variable> variables = source.variables;
+  std::uint32_t bits = source.bits;
+  std::vector<std::uint32_t> number(compiled.variables.size());
+  std::vector<std::uint32_t> bit_number(compiled.bits);
+  const auto source_name = [](const Variable& v) { return v.source.empty() ? v.name : v.source; };
+  for (std::uint32_t k = 0; k < compiled.variables.size(); ++k) {
+    Variable variable = compiled.variables[k];
+    const auto same_name = [&](const Variable& v) { return source_name(v) == source_name(variable); };
+    const auto found = std::find_if(source.variables.begin(), source.variables.end(), same_name);
+    number[k] = static_cast<std::uint32_t>(variables.size());
+    if (found != source.variables.end()) {
+      number[k] = static_cast<std::uint32_t>(found - source.variables.begin());
+      if (found->type != variable.type) result.mismatch = source_name(variable);
+    }
+    const bool is_new = number[k] == variables.size();
+    const std::uint32_t first = is_new ? bits : found->first_bit;
+    for (std::uint32_t b = 0; b < variable.bits; ++b) bit_number[variable.first_bit + b] = first + b;
+    if (!is_new) continue;
+    variable.first_bit = first;
+    bits += variable.bits;
+    variables.push_back(std::move(variable));
+  }
+  for (ClassicalStatement& statement : compiled.statements) {
+    renumber(statement.target, number);
+    renumber(statement.value, number);
+  }
+  for (Branch& branch : compiled.branches) {
+    renumber(branch.condition, number);
+    if (branch.kind == Branch::Kind::for_loop) branch.variable = number[branch.variable];
+    for (Branch::Arm& arm : branch.arms) {
+      for (Expression& label : arm.labels) renumber(label, number);
+    }
+  }
+  for (Block& block : compiled.blocks) {
+    for (Operation& op : block) {
+      if (op.kind == Kind::measure && op.payload != no_bit) op.payload = bit_number[op.payload];
+    }
+  }
+  compiled.variables = std::move(variables);
+  compiled.bits = bits;
+  result.circuit = std::move(compiled);
+  return result;
+}
+
+ProgramCheck by_branches(const Job& job, const InputValues& inputs) {
+  std::vector<std::uint32_t> shown;  // what the source declared; the rest was made by the compiler
+  for (std::uint32_t k = 0; k < job.source.variables.size(); ++k) {
+    if (!job.source.variables[k].source.empty()) shown.push_back(k);
+  }
   const std::uint32_t qubits = job.source.source_qubits;
   const std::uint32_t wires = std::max(job.source.wires, job.compiled.wires);
   std::vector<bool> kept = kept_qubits(job.source);
@@ -101,9 +138,8 @@ ProgramCheck by_branches(const Job& job, const Shown& shown, const InputValues& 
     start.with_references = check.with_references;
     if (!job.promise.zero_start && !check.with_references) start.product = random_product(qubits, engine);
     const bool ends_clean = !job.promise.keep_bits_only;
-    const Endings a = endings_of(job.source, start, inputs.source, shown.source, kept, ends_clean, limits);
-    const Endings b =
-        endings_of(job.compiled, start, inputs.compiled, shown.compiled, kept, ends_clean, limits);
+    const Endings a = endings_of(job.source, start, inputs.source, shown, kept, ends_clean, limits);
+    const Endings b = endings_of(job.compiled, start, inputs.compiled, shown, kept, ends_clean, limits);
     check.deviation.include(endings_deviation(a, b));
     check.runs = std::max({check.runs, a.runs, b.runs});
     check.endings = std::max({check.endings, a.by_bits.size(), b.by_bits.size()});

@@ -7,15 +7,14 @@
 
 namespace isinglass {
 
-/// Variables whose values the promise is about, by their index in both circuits; missing: one that the
-/// compiled program lacks.
-struct Shown {
-  std::vector<std::uint32_t> source;
-  std::vector<std::uint32_t> compiled;
-  std::string missing;
+/// The compiled circuit with its variables and bits numbered as the source's; its own follow. A variable that
+/// it does not declare was never written there, so it is zero. `mismatch` names a variable of another type.
+struct Renumbered {
+  Circuit circuit;
+  std::string mismatch;
 };
 
-Shown shown_variables(const Circuit& source, const Circuit& compiled);
+Renumbered with_variables_of(const Circuit& source, Circuit compiled);
 
 struct ProgramCheck {
   Deviation deviation;
@@ -25,7 +24,8 @@ struct ProgramCheck {
   int states = 1;                // else: this many random product states
 };
 
-/// Throws Unsupported (see memory.h) where a limit is reached or the classical code is beyond it.
-ProgramCheck by_branches(const Job& job, const Shown& shown, const InputValues& inputs);
+/// Both circuits have the source's variables under the same numbers. Throws Unsupported (see memory.h) where
+/// a limit is reached or the classical code is beyond it.
+ProgramCheck by_branches(const Job& job, const InputValues& inputs);
 
 }  // namespace isinglass
