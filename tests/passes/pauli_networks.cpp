@@ -1,6 +1,8 @@
 // Synthesis from Pauli rotations against the tests' own simulator.
 #include <doctest/doctest.h>
 
+#include "passes/expand_controls.h"
+#include "passes/lower.h"
 #include "passes/merge_distant.h"
 #include "passes/rotation_networks.h"
 #include "passes/stretch_rotations.h"
@@ -160,17 +162,122 @@ TEST_CASE("window search keeps the unitary and is never dearer") {
   }
 }
 
+/// Estimated error of the interactions, each with two pulses for its basis changes.
+double error_of_interactions(const Circuit& circuit) {
+  const Cost cost;
+  const Tally tally = tally_of(circuit, cost);
+  return tally.error + cost.pulse * (2 * static_cast<double>(tally.xx) - static_cast<double>(tally.r));
+}
+
+/// exp(-i angle/2 P(x)P) as two CNOTs around an rz, P one of X, Y, Z.
+void append_coupling(Circuit& circuit, Letter letter, std::uint32_t a, std::uint32_t b, double angle) {
+  const auto basis = [&](bool back) {
+    for (const std::uint32_t wire : {a, b}) {
+      if (letter == Letter::X) circuit.body().push_back(circuit.make(Kind::h, {wire}));
+      if (letter == Letter::Y)
+        circuit.body().push_back(circuit.make(Kind::r, {wire}, {{back ? -pi / 2 : pi / 2}, {0}}));
+    }
+  };
+  basis(false);
+  circuit.body().push_back(circuit.make(Kind::x, {a, b}));
+  circuit.body().push_back(circuit.make(Kind::rz, {b}, {{angle}}));
+  circuit.body().push_back(circuit.make(Kind::x, {a, b}));
+  basis(true);
+}
+
+/// Edges of a random graph on `qubits` vertices.
+std::vector<std::pair<std::uint32_t, std::uint32_t>> random_graph(support::Random& random, int qubits,
+                                                                  int edges) {
+  std::vector<std::pair<std::uint32_t, std::uint32_t>> graph;
+  while (static_cast<int>(graph.size()) < edges) {
+    const auto ends = random.distinct(2, qubits);
+    const auto edge = std::minmax(ends[0], ends[1]);
+    if (std::find(graph.begin(), graph.end(), std::pair<std::uint32_t, std::uint32_t>(edge)) == graph.end()) {
+      graph.emplace_back(edge);
+    }
+  }
+  return graph;
+}
+
+TEST_CASE("product formulas and QAOA: one interaction a coupling and step, no ladders left") {
+  support::Random random(26);
+  for (int round = 0; round < 8; ++round) {
+    const int qubits = 5 + round % 3, steps = 1 + round % 3;
+    const auto graph = random_graph(random, qubits, qubits + 2);
+    Circuit source;
+    add_register(source, "q", static_cast<std::uint32_t>(qubits));
+    const bool is_xy = round % 2 == 1;  // couplings XX and YY, else ZZ and a transverse field
+    for (int step = 0; step < steps; ++step) {
+      for (const auto& [a, b] : graph) {
+        append_coupling(source, is_xy ? Letter::X : Letter::Z, a, b, random.real(0.1, 0.9));
+        if (is_xy) append_coupling(source, Letter::Y, a, b, random.real(0.1, 0.9));
+      }
+      for (int q = 0; q < qubits && !is_xy; ++q) {
+        source.body().push_back(
+            source.make(Kind::r, {static_cast<std::uint32_t>(q)}, {{0.3 + 0.1 * step}, {0}}));
+      }
+    }
+    const Circuit result = synthesize_rotation_networks(source, {});
+    CHECK(support::distance(source, result) < 1e-8);
+    CHECK(interactions(result) <= graph.size() * static_cast<std::size_t>(steps) * (is_xy ? 2 : 1));
+  }
+}
+
+TEST_CASE("more than 64 wires: parts are solved one after the other") {
+  // Fourteen groups of five wires that never meet, their gates interleaved: each group can be simulated by
+  // itself.
+  support::Random random(27);
+  constexpr int groups = 14, size = 5;
+  Circuit source;
+  add_register(source, "q", groups * size);
+  std::vector<Circuit> alone;
+  for (int g = 0; g < groups; ++g) alone.push_back(random_piece(random, size, 30, Family::pauli));
+  for (int i = 0; i < 30; ++i) {
+    for (int g = 0; g < groups; ++g) {
+      const Block& block = alone[static_cast<std::size_t>(g)].body();
+      const std::size_t from = block.size() * static_cast<std::size_t>(i) / 30;
+      const std::size_t to = block.size() * static_cast<std::size_t>(i + 1) / 30;
+      for (std::size_t k = from; k < to; ++k) {
+        Operation op = block[k];
+        for (std::uint32_t j = 0; j < op.operand_count; ++j)
+          op.operand[j] += static_cast<std::uint32_t>(g * size);
+        source.body().push_back(op);
+      }
+    }
+  }
+  const Circuit result = synthesize_rotation_networks(source, {});
+  CHECK(interactions(lower(result, {})) < interactions(lower(source, {})));
+  for (int g = 0; g < groups; ++g) {
+    Circuit part = alone[static_cast<std::size_t>(g)];
+    part.body().clear();
+    const auto first = static_cast<std::uint32_t>(g * size);
+    for (Operation op : result.body()) {
+      if (op.operand[0] < first || op.operand[0] >= first + size) continue;
+      for (std::uint32_t j = 0; j < op.operand_count; ++j) {
+        REQUIRE(op.operand[j] >= first);
+        op.operand[j] -= first;
+        REQUIRE(op.operand[j] < size);
+      }
+      part.body().push_back(op);
+    }
+    for (std::uint32_t q = 0; q < size; ++q) part.end_wire[q] = result.end_wire[first + q] - first;
+    CHECK(support::distance(alone[static_cast<std::size_t>(g)], part) < 1e-8);
+  }
+}
+
 TEST_CASE("synthesis from rotations: random circuits of every family") {
   support::Random random(25);
   for (int round = 0; round < 300; ++round) {
     const int qubits = 2 + round % 4;
-    const Circuit source = support::random_circuit(random, {qubits, 5 + round % 40, 2, families[round % 6]});
+    const Circuit source = expand_controls(
+        support::random_circuit(random, {qubits, 5 + round % 40, 2, families[round % 6]}), {});
     PassContext context;
     context.seed = static_cast<std::uint64_t>(round);
     context.threads = 1 + round % 2;
     const Circuit result = synthesize_rotation_networks(source, context);
     CHECK_NOTHROW(check_invariants(result));
     CHECK(support::distance(source, result, values) < 1e-8);
+    CHECK(error_of_interactions(lower(result, {})) <= error_of_interactions(lower(source, {})) + 1e-9);
   }
 }
 
