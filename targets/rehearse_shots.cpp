@@ -281,10 +281,10 @@ class Trajectories {
         troubles[t] = std::current_exception();
       }
     };
-    std::vector<std::thread> helpers;
-    for (unsigned t = 1; t < threads; ++t) helpers.emplace_back(work, t);
+    std::vector<std::thread> others;
+    for (unsigned t = 1; t < threads; ++t) others.emplace_back(work, t);
     work(0);
-    for (std::thread& helper : helpers) helper.join();
+    for (std::thread& other : others) other.join();
     for (const std::exception_ptr& trouble : troubles) {
       if (trouble) std::rethrow_exception(trouble);
     }

@@ -473,7 +473,7 @@ std::string picture_of_placement(const Compiled& compiled) {
     const bool is_ancilla = placed.in_use[ion] && start[ion].empty();
     text += fmt::format("<circle class=\"{}\" cx=\"{:.1f}\" cy=\"{:.1f}\" r=\"{:.1f}\"/>",
                         !placed.in_use[ion] ? "free"
-                        : is_ancilla        ? "helper"
+                        : is_ancilla        ? "ancilla"
                                             : "taken",
                         x, y, radius);
     text += fmt::format("<text class=\"{}\" x=\"{:.1f}\" y=\"{:.1f}\" text-anchor=\"middle\">{}</text>",

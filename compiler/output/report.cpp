@@ -49,7 +49,7 @@ rect.was { fill: var(--was); } rect.is { fill: var(--inter); } rect.pulse { fill
 line.inter { stroke: var(--inter); stroke-width: 1.6; } .maybe { opacity: .55; } .grid { stroke: var(--line); stroke-width: 1; } .rail { stroke: var(--line); stroke-width: 2; } .fence { stroke: var(--soft); stroke-width: 1.4; stroke-dasharray: 3 2; }
 .branch { fill: none; stroke: var(--warn); stroke-width: 1.4; stroke-dasharray: 5 3; }
 .cell { fill: var(--idle); } .barred { fill: none; stroke: var(--line); }
-circle.taken { fill: var(--inter); } circle.helper { fill: var(--pulse); } circle.free { fill: var(--idle); stroke: var(--line); }
+circle.taken { fill: var(--inter); } circle.ancilla { fill: var(--pulse); } circle.free { fill: var(--idle); stroke: var(--line); }
 rect.source0, i.source0 { fill: var(--prep); background: var(--prep); } rect.source1, i.source1 { fill: var(--pulse); background: var(--pulse); } rect.source2, i.source2 { fill: var(--inter); background: var(--inter); }
 rect.source3, i.source3 { fill: var(--was); background: var(--was); } rect.source4, i.source4 { fill: var(--warn); background: var(--warn); } rect.source5, i.source5 { fill: var(--read); background: var(--read); }
 .note { color: var(--soft); font-size: .9rem; } .note p { margin: .5em 0; }
