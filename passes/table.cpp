@@ -13,6 +13,7 @@
 #include "passes/recover_toffolis.h"
 #include "passes/rename_swaps.h"
 #include "passes/rotation_networks.h"
+#include "passes/search_blocks.h"
 #include "passes/trim_end.h"
 #include "passes/trim_start.h"
 #include "passes/two_qubit_stretches.h"
@@ -51,6 +52,7 @@ constexpr Pass table[] = {
     {"mirrored-stretches", "the same, where a swap of the wires' names makes it cheaper", mirrored_stretches},
     {"approximate", "within the tolerance, interactions too small to be worth their error are left out",
      approximate},
+    {"search-blocks", "blocks of three and four wires are synthesized numerically", search_blocks},
 };
 
 }  // namespace
