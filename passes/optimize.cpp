@@ -28,7 +28,12 @@ struct Order {
 // One sweep and no more: merging takes gates on two wires and lowers them on its way.
 const Order quick_order = {"quick", {"rename-swaps", "choose-constructions", "merge-rotations"}, {}};
 
-// Where effort deep goes on from the best of all until its time is up.
+// Where effort deep goes on from the best of all: once over its small blocks,
+const Order block_order = {
+    "small blocks",
+    {"search-blocks", "lower"},
+    {"merge-rotations", "two-qubit-stretches", "trim-start", "trim-end", "mirrored-stretches"}};
+// then over and over until its time is up.
 const Order search_order = {
     "search",
     {"rotation-networks", "lower"},
@@ -217,14 +222,20 @@ bool is_better(const TraceResult& a, const TraceResult& b) {
 void search_on(Candidate& best, const PassContext& context, std::vector<Candidate>& found) {
   PassContext more = context;
   more.tolerance = 0;  // is spent
-  const auto glance = std::chrono::milliseconds(100);
-  while (Clock::now() + glance < context.deadline) {
-    ++more.seed;
-    Candidate candidate(search_order, more, context.threads);
+  const auto try_order = [&](const Order& order, const PassContext& given) {
+    Candidate candidate(order, given, context.threads);
     candidate.run(found.empty() ? best.circuit() : found.back().circuit(), false);
     candidate.inherit(best.result().infidelity);
     const TraceResult& now = found.empty() ? best.result() : found.back().result();
     if (is_better(candidate.result(), now)) found.push_back(std::move(candidate));
+  };
+  PassContext blocks = more;
+  blocks.deadline = Clock::now() + (context.deadline - Clock::now()) / 3;
+  try_order(block_order, blocks);
+  const auto glance = std::chrono::milliseconds(100);
+  while (Clock::now() + glance < context.deadline) {
+    ++more.seed;
+    try_order(search_order, more);
   }
 }
 

@@ -231,7 +231,7 @@ class Searcher {
       if (is_over()) return;
       SmallTarget other = target;  // target = exchanges * other
       for (const auto& [a, b] : exchanges) exchange_rows(other.matrix, a, b);
-      scan(other, best, exchanges, static_cast<int>(best.circuit.couplings.size()) - 1, 4);
+      scan(other, best, exchanges, static_cast<int>(best.circuit.couplings.size()) - 1, 2);
     }
   }
 
