@@ -56,10 +56,17 @@ double Forms::value(std::uint32_t form, std::span<const double> inputs) const {
   return total;
 }
 
+double reduced(double x, double period) {
+  constexpr double most_periods = 64;
+  const double periods = x / period;
+  if (std::abs(periods) <= 0.5) return x;
+  if (std::abs(periods) > most_periods) return std::remainder(x, period);
+  return x - std::nearbyint(periods) * period;
+}
+
 double wrapped(double x) {
-  double y = std::remainder(x, 2 * pi);
-  if (y <= -pi + 1e-15) y = pi;
-  return y;
+  const double y = reduced(x, 2 * pi);
+  return y <= -pi + 1e-15 ? pi : y;
 }
 
 bool is_multiple(double x, double period, double tolerance) {

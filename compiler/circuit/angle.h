@@ -64,6 +64,10 @@ class Forms {
   std::map<std::vector<Term>, std::uint32_t> index_;
 };
 
+/// x minus the nearest multiple of the period. Exact like std::remainder where x is large, and much faster
+/// where it is not: then within a rounding of x.
+double reduced(double x, double period);
+
 /// x brought into (-pi, pi]; values within 1e-15 of -pi become pi so that printing is stable.
 double wrapped(double x);
 

@@ -93,11 +93,11 @@ struct Register {
 
 /// A value that is given when the program is bound. A derived input has an expression in declared inputs.
 struct Input {
-  std::string name;    // in the native program
+  std::string name;  // in the native program
   std::string type;  // "float", "angle[32]", "uint[8]", ...
   bool is_derived = false;
-  Expression expression;  // of a derived input
-  std::string source;     // its name in the source; empty: the same
+  Expression expression;    // of a derived input
+  std::string source = {};  // its name in the source; empty: the same
 };
 
 /// Where a program starts and what of it must be kept: INTERFACE "What a compiled program promises".

@@ -59,8 +59,7 @@ class Binding {
     ValueReader::Set values;
     std::size_t number = 0;
     while (reader.next(values)) {
-      placed_.circuit = binder_.bind(values);
-      write_set(++number);
+      write_set(++number, binder_.bind(values));
     }
     if (number > 1 && !is_streamed() && !is_numbered()) {
       throw Failure(Exit::usage,
@@ -79,7 +78,8 @@ class Binding {
     return good(job_.out) && good(job_.timeline);
   }
 
-  void write_set(std::size_t number) {
+  void write_set(std::size_t number, const Circuit& bound) {
+    if (job_.tally || !job_.timeline.empty()) placed_.circuit = bound;
     if (job_.tally) {
       print_row(number, schedule(placed_, target_, promise_).totals);
       return;
@@ -90,10 +90,10 @@ class Binding {
       if (!job_.timeline.empty()) return;
       if (number > 1) std::cout << "\n";
       std::cout << "// set " << number << "\n";
-      write_native(std::cout, placed_, {job_.plan, target_.name});
+      write_native(std::cout, bound, placed_.start, {job_.plan, target_.name});
     } else {
       write_whole(numbered(job_.out, number), [&](std::ostream& out) {
-        write_native(out, placed_, {job_.plan, target_.name});
+        write_native(out, bound, placed_.start, {job_.plan, target_.name});
       });
     }
   }

@@ -48,6 +48,12 @@ double number_of(const Value& value) {
   return value.type.base == Base::bits ? value.integer.to_double() : radians_of(value);
 }
 
+bool leaves_block(const ClassicalStatement& statement) {
+  using Of = ClassicalStatement::Kind;
+  return statement.kind == Of::leave_loop || statement.kind == Of::next_round ||
+         statement.kind == Of::end_program;
+}
+
 }  // namespace
 
 std::vector<DeclaredInput> declared_inputs(const Circuit& circuit) {
@@ -172,7 +178,7 @@ void Binder::settle(std::uint32_t wire, Block& to) {
 void Binder::bind_r(const Operation& op, Block& to) {
   Frame& frame = frame_[op.operand[0]];
   // Pending is rz(turn), perhaps after a flip: r(t, f) rz(turn) = rz(turn) r(t, f - turn).
-  double theta = std::remainder(value(op, 0), 4 * pi);
+  double theta = reduced(value(op, 0), 4 * pi);
   double phi = value(op, 1) - frame.turn;
   if (theta > pi) theta -= 2 * pi;
   if (theta <= -pi) theta += 2 * pi;
@@ -196,7 +202,7 @@ void Binder::bind_r(const Operation& op, Block& to) {
 }
 
 void Binder::bind_xx(const Operation& op, Block& to) {
-  double theta = std::remainder(value(op, 0), 2 * pi);
+  double theta = reduced(value(op, 0), 2 * pi);
   double phi[2];
   for (int side = 0; side < 2; ++side) {
     const Frame& frame = frame_[op.operand[side]];
@@ -244,6 +250,10 @@ void Binder::bind_block(const Block& from, Block& to) {
       case Kind::phase:
         continue;  // of the whole program: of no effect
       case Kind::classical:
+        // What leaves the block must find everything done.
+        if (leaves_block(plan_.statements[op.payload])) {
+          for (std::uint32_t wire = 0; wire < frame_.size(); ++wire) settle(wire, to);
+        }
         break;
       case Kind::barrier:
       case Kind::delay:

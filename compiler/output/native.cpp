@@ -1,7 +1,6 @@
 // The native program; see native.h.
 #include "output/native.h"
 
-#include <sstream>
 #include <stdexcept>
 
 #include "output/text.h"
@@ -44,12 +43,13 @@ std::string one_line(std::string text) {
 
 class NativeWriter {
  public:
-  NativeWriter(std::ostream& out, const Placed& placed)
-      : out_(out), placed_(placed), circuit_(placed.circuit), bits_(bit_names(placed.circuit)) {
+  /// Without a stream the text is kept.
+  NativeWriter(std::ostream* out, const Circuit& circuit, std::span<const std::uint32_t> start)
+      : out_(out), circuit_(circuit), start_(start), bits_(bit_names(circuit)) {
     for (std::uint32_t i = 0; i < circuit_.wires; ++i) ions_.push_back(fmt::format("ion[{}]", i));
   }
 
-  void write(const NativeHeading& heading) {
+  std::string write(const NativeHeading& heading) {
     out_.add("OPENQASM ", uses_switch() ? "3.1" : "3.0", ";\n");
     out_.add("// ", one_line(heading.source), " compiled for ", one_line(heading.target), " by isinglass ",
              ISINGLASS_VERSION, ".\n");
@@ -68,6 +68,7 @@ class NativeWriter {
     }
     declarations();
     block(0, "");
+    return out_.take();
   }
 
  private:
@@ -79,8 +80,8 @@ class NativeWriter {
   }
 
   void placement() {
-    for (std::uint32_t q = 0; q < placed_.start.size(); ++q) {
-      out_.add("pragma isinglass start ", circuit_.wire_name(q), " ", ions_[placed_.start[q]], "\n");
+    for (std::uint32_t q = 0; q < start_.size(); ++q) {
+      out_.add("pragma isinglass start ", circuit_.wire_name(q), " ", ions_[start_[q]], "\n");
     }
     for (std::uint32_t q = 0; q < circuit_.end_wire.size(); ++q) {
       out_.add("pragma isinglass end ", circuit_.wire_name(q), " ", ions_[circuit_.end_wire[q]], "\n");
@@ -205,8 +206,8 @@ class NativeWriter {
   }
 
   TextWriter out_;
-  const Placed& placed_;
   const Circuit& circuit_;
+  std::span<const std::uint32_t> start_;
   std::vector<std::string> ions_;
   std::vector<std::string> bits_;
 };
@@ -214,13 +215,21 @@ class NativeWriter {
 }  // namespace
 
 void write_native(std::ostream& out, const Placed& placed, const NativeHeading& heading) {
-  NativeWriter(out, placed).write(heading);
+  write_native(out, placed.circuit, placed.start, heading);
 }
 
 std::string native_program(const Placed& placed, const NativeHeading& heading) {
-  std::ostringstream text;
-  write_native(text, placed, heading);
-  return std::move(text).str();
+  return native_program(placed.circuit, placed.start, heading);
+}
+
+void write_native(std::ostream& out, const Circuit& circuit, std::span<const std::uint32_t> start,
+                  const NativeHeading& heading) {
+  NativeWriter(&out, circuit, start).write(heading);
+}
+
+std::string native_program(const Circuit& circuit, std::span<const std::uint32_t> start,
+                           const NativeHeading& heading) {
+  return NativeWriter(nullptr, circuit, start).write(heading);
 }
 
 }  // namespace isinglass

@@ -2,6 +2,7 @@
 #pragma once
 
 #include <ostream>
+#include <span>
 #include <string>
 
 #include "targets/place.h"
@@ -22,5 +23,12 @@ void write_native(std::ostream& out, const Placed& placed, const NativeHeading& 
 
 /// The same as a text.
 std::string native_program(const Placed& placed, const NativeHeading& heading);
+
+/// The same for a circuit on ions and where its source qubits start, without a copy of it: for programs bound
+/// again and again.
+void write_native(std::ostream& out, const Circuit& circuit, std::span<const std::uint32_t> start,
+                  const NativeHeading& heading);
+std::string native_program(const Circuit& circuit, std::span<const std::uint32_t> start,
+                           const NativeHeading& heading);
 
 }  // namespace isinglass

@@ -76,7 +76,7 @@ std::string compared(double before, double after) {
 class Page {
  public:
   Page(std::ostream& out, const Compiled& compiled)
-      : out_(out), c_(compiled), totals_(compiled.timed.totals) {}
+      : out_(&out), c_(compiled), totals_(compiled.timed.totals) {}
 
   void write() {
     const std::string title = fmt::format("{} on {}", escaped(c_.source_file), escaped(c_.target.name));

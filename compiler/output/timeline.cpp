@@ -262,7 +262,7 @@ class CsvRows {
 
 void write_timeline_json(std::ostream& stream, const Compiled& compiled) {
   const Placed& placed = compiled.placed;
-  TextWriter out(stream);
+  TextWriter out(&stream);
   out.add("{ \"format\": \"isinglass-timeline\", \"version\": 1,\n");
   out.add("  \"source\": {\"file\": ", json_text(compiled.source_file), ", \"sha256\": \"",
           compiled.source_sha256, "\"},\n");
@@ -283,7 +283,7 @@ void write_timeline_json(std::ostream& stream, const Compiled& compiled) {
 }
 
 void write_timeline_csv(std::ostream& stream, const Compiled& compiled) {
-  TextWriter out(stream);
+  TextWriter out(&stream);
   out.add(CsvRows::heading);
   CsvRows rows(out, compiled);
   Walk(compiled, rows).block(0, 0, "");

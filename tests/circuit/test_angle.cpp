@@ -1,6 +1,8 @@
 // Angles and linear forms.
 #include <doctest/doctest.h>
 
+#include <cmath>
+
 #include "circuit/angle.h"
 #include "circuit/circuit.h"
 
@@ -36,4 +38,11 @@ TEST_CASE("operands beyond three live in the pool") {
   CHECK_NOTHROW(check_invariants(circuit));
   circuit.body().push_back(circuit.make(Kind::x, {5, 5}));
   CHECK_THROWS(check_invariants(circuit));
+}
+
+TEST_CASE("reduced is the remainder up to a rounding") {
+  for (double x = -2000; x < 2000; x += 0.37) {
+    CHECK(std::abs(reduced(x, 2 * pi) - std::remainder(x, 2 * pi)) < 1e-12);
+    CHECK(std::abs(wrapped(x)) <= pi + 1e-12);
+  }
 }
