@@ -1,0 +1,623 @@
+// Everything is assembled from integrals over single segments. Each needs only the frequencies mu + w and mu
+// - w and the segment's starting phase, so one set of kernels serves all pairs of the chain.
+#include "targets/pulses.h"
+
+#include <array>
+#include <cmath>
+#include <complex>
+#include <numbers>
+
+#include "targets/moments.h"
+
+namespace isinglass {
+namespace {
+
+using Complex = std::complex<double>;
+using std::numbers::pi;
+
+// Rows of the closure conditions whose singular value lies below this part of the largest one depend on the
+// others to within rounding and are dropped.
+constexpr double rank_cutoff = 1e-13;
+
+// e^{i x} for large x: the extended type keeps the phase good to 1e-16.
+Complex turn(long double x) {
+  return {double(std::cos(x)), double(std::sin(x))};
+}
+
+// The segments of a pulse seen by one mode, times counted from the middle.
+class SegmentView {
+ public:
+  SegmentView(double mode_hz, double detuning_hz, double duration, int segments)
+      : length_(duration / segments), segments_(segments) {
+    constexpr long double two_pi = 2 * std::numbers::pi_v<long double>;
+    frequency_[0] = two_pi * (static_cast<long double>(mode_hz) + detuning_hz);
+    frequency_[1] = two_pi * (static_cast<long double>(mode_hz) - detuning_hz);
+    step_ = static_cast<long double>(duration) / segments;
+    for (int a = 0; a < 2; ++a) {
+      angle_[a] = double(frequency_[a] * step_);
+      moments_[a] = moments(angle_[a]);
+    }
+  }
+
+  double length() const { return length_; }
+  double start(int s) const { return double((s - 0.5L * segments_) * step_); }
+
+  // e^{i f t} / 2 at the start of segment s for the two frequencies w + mu and w - mu.
+  std::array<Complex, 2> phases(int s) const {
+    const long double t = (s - 0.5L * segments_) * step_;
+    return {0.5 * turn(frequency_[0] * t), 0.5 * turn(frequency_[1] * t)};
+  }
+
+  // int over the segment of u^n cos(mu t) e^{i w t} dt, u from 0 to 1 along the segment, n = 0 to 2.
+  std::array<Complex, 3> integrals(const std::array<Complex, 2>& phase) const {
+    std::array<Complex, 3> a;
+    for (std::size_t n = 0; n < 3; ++n)
+      a[n] = length_ * (phase[0] * moments_[0][n] + phase[1] * moments_[1][n]);
+    return a;
+  }
+
+  // The same from the segment's start to its part x, n = 0 to 1; `partial` holds moments(angle * x).
+  std::array<Complex, 2> partial_integrals(const std::array<Complex, 2>& phase, double x,
+                                           const std::array<Moments, 2>& partial) const {
+    return {length_ * x * (phase[0] * partial[0][0] + phase[1] * partial[1][0]),
+            length_ * x * x * (phase[0] * partial[0][1] + phase[1] * partial[1][1])};
+  }
+  std::array<Moments, 2> partial_moments(double x) const {
+    return {moments(angle_[0] * x), moments(angle_[1] * x)};
+  }
+
+  // For the ordered integrals within one segment.
+  void prepare_ordered() {
+    for (std::size_t a = 0; a < 2; ++a)
+      for (std::size_t b = 0; b < 2; ++b) ordered_[a][b] = isinglass::ordered_moments(angle_[a], angle_[b]);
+  }
+  // int int_{t' < t} u^n u'^m cos(mu t) cos(mu t') e^{i w (t - t')} dt dt' over the segment.
+  OrderedMoments ordered(const std::array<Complex, 2>& phase) const {
+    OrderedMoments sum{};
+    for (std::size_t a = 0; a < 2; ++a) {
+      for (std::size_t b = 0; b < 2; ++b) {
+        const Complex factor = length_ * length_ * phase[a] * std::conj(phase[b]);
+        for (std::size_t n = 0; n < 3; ++n)
+          for (std::size_t m = 0; m < 3; ++m) sum[n][m] += factor * ordered_[a][b][n][m];
+      }
+    }
+    return sum;
+  }
+
+ private:
+  double length_;
+  int segments_;
+  long double step_;
+  std::array<long double, 2> frequency_;
+  std::array<double, 2> angle_;
+  std::array<Moments, 2> moments_;
+  std::array<std::array<OrderedMoments, 2>, 2> ordered_{};
+};
+
+// Amplitude along a segment: from + slope * u.
+struct Line {
+  double from;
+  double slope;
+};
+
+Line line_of(const Pulse& pulse, int segment) {
+  const double omega = 2 * pi * pulse.rabi[segment];
+  if (pulse.shape == Shape::steps) return {omega, 0};
+  return {omega, 2 * pi * pulse.rabi[segment + 1] - omega};
+}
+
+int segments_of(const Pulse& pulse) {
+  return static_cast<int>(pulse.rabi.size()) - (pulse.shape == Shape::ramps ? 1 : 0);
+}
+
+// One basis function on one segment: on unknown `index`, with value from + slope * u.
+struct LocalFunction {
+  Eigen::Index index;
+  Line line;
+};
+
+enum class Parity { even, odd };
+
+// The pulses of a form that are even or odd about their middle: unknowns are the values of the first half.
+class Unknowns {
+ public:
+  Unknowns(const LightForm& form, Parity parity) : form_(form), sign_(parity == Parity::even ? 1 : -1) {
+    values_ = form.shape == Shape::steps ? form.segments : form.segments - 1;
+    count_ = parity == Parity::even ? (values_ + 1) / 2 : values_ / 2;
+  }
+  Eigen::Index count() const { return count_; }
+
+  // The basis functions that live on segment s; `used` of the two entries are valid.
+  std::array<LocalFunction, 2> on_segment(int s, int& used) const {
+    std::array<LocalFunction, 2> local{};
+    used = 0;
+    const auto add = [&](int value, Line line) {
+      const Eigen::Index index = folded(value);
+      if (value < 0 || value >= values_ || index >= count_) return;  // an end, or the middle of an odd pulse
+      const double sign = sign_of(value);
+      local[static_cast<std::size_t>(used++)] = {index, {sign * line.from, sign * line.slope}};
+    };
+    if (form_.shape == Shape::steps) {
+      add(s, {1, 0});
+    } else {
+      add(s - 1, {1, -1});
+      add(s, {0, 1});
+    }
+    return local;
+  }
+
+  // Time mean of Omega^2 as a quadratic form.
+  Eigen::MatrixXd power() const {
+    Eigen::MatrixXd matrix = Eigen::MatrixXd::Zero(count_, count_);
+    for (int s = 0; s < form_.segments; ++s) {
+      int used = 0;
+      const auto local = on_segment(s, used);
+      for (int a = 0; a < used; ++a) {
+        for (int b = 0; b < used; ++b) {
+          const auto& [i, f] = local[static_cast<std::size_t>(a)];
+          const auto& [k, g] = local[static_cast<std::size_t>(b)];
+          matrix(i, k) += f.from * g.from + (f.from * g.slope + f.slope * g.from) / 2 + f.slope * g.slope / 3;
+        }
+      }
+    }
+    return matrix / form_.segments;
+  }
+
+  // From the unknowns to all steps, or to all knots with the zeros at the ends.
+  Eigen::MatrixXd unfold() const {
+    const int shift = form_.shape == Shape::ramps ? 1 : 0;
+    Eigen::MatrixXd matrix = Eigen::MatrixXd::Zero(values_ + 2 * shift, count_);
+    for (int k = 0; k < values_; ++k) {
+      if (folded(k) < count_) matrix(k + shift, folded(k)) = sign_of(k);
+    }
+    return matrix;
+  }
+
+ private:
+  Eigen::Index folded(int k) const { return std::min(k, values_ - 1 - k); }
+
+  double sign_of(int k) const { return 2 * k < values_ ? 1 : sign_; }
+
+  LightForm form_;
+  double sign_;
+  int values_;
+  Eigen::Index count_;
+};
+
+// What the unknowns do to one mode.
+struct ModeKernel {
+  Eigen::VectorXd loop;        // real for even pulses, imaginary (the i left out) for odd ones
+  Eigen::VectorXd loop_slope;  // derivative in w
+  Eigen::MatrixXd area;        // quadratic form
+  Eigen::MatrixXd area_slope;
+};
+
+ModeKernel mode_kernel(double mode_hz, const Unknowns& unknowns, const LightForm& form, double duration,
+                       double detuning, Parity parity) {
+  SegmentView view(mode_hz, detuning, duration, form.segments);
+  view.prepare_ordered();
+  const Eigen::Index n = unknowns.count();
+  Eigen::VectorXcd sum = Eigen::VectorXcd::Zero(n);        // int f cos(mu t) e^{i w t} so far
+  Eigen::VectorXcd slope_sum = Eigen::VectorXcd::Zero(n);  // with another factor t
+  Eigen::MatrixXd area = Eigen::MatrixXd::Zero(n, n);
+  Eigen::MatrixXd area_slope = Eigen::MatrixXd::Zero(n, n);
+  const double h = view.length();
+  for (int s = 0; s < form.segments; ++s) {
+    const auto phase = view.phases(s);
+    const auto a = view.integrals(phase);
+    const OrderedMoments w = view.ordered(phase);
+    const double start = view.start(s);
+    int used = 0;
+    const auto local = unknowns.on_segment(s, used);
+    std::array<Complex, 2> whole{}, moment{};
+    for (std::size_t k = 0; k < static_cast<std::size_t>(used); ++k) {
+      const auto& [index, f] = local[k];
+      whole[k] = f.from * a[0] + f.slope * a[1];
+      moment[k] = start * whole[k] + h * (f.from * a[1] + f.slope * a[2]);
+      // Against all earlier segments: Im(a conj(sum)), and for the slope Re((t - t') e^{i w (t - t')}).
+      area.col(index) += whole[k].imag() * sum.real() - whole[k].real() * sum.imag();
+      area_slope.col(index) += moment[k].real() * sum.real() + moment[k].imag() * sum.imag() -
+                               whole[k].real() * slope_sum.real() - whole[k].imag() * slope_sum.imag();
+      for (std::size_t l = 0; l < static_cast<std::size_t>(used); ++l) {
+        const auto& [other, g] = local[l];
+        // f(u) g(u') u^p u'^q against e^{i w (t - t')}.
+        const auto within = [&](std::size_t p, std::size_t q) {
+          return f.from * g.from * w[p][q] + f.slope * g.from * w[p + 1][q] + f.from * g.slope * w[p][q + 1] +
+                 f.slope * g.slope * w[p + 1][q + 1];
+        };
+        area(other, index) += within(0, 0).imag();
+        area_slope(other, index) += h * (within(1, 0) - within(0, 1)).real();
+      }
+    }
+    for (std::size_t k = 0; k < static_cast<std::size_t>(used); ++k) {
+      sum[local[k].index] += whole[k];
+      slope_sum[local[k].index] += moment[k];
+    }
+  }
+  ModeKernel kernel;
+  if (parity == Parity::even) {
+    kernel.loop = sum.real();
+    kernel.loop_slope = -slope_sum.imag();
+  } else {
+    kernel.loop = sum.imag();
+    kernel.loop_slope = slope_sum.real();
+  }
+  kernel.area = area + area.transpose();
+  kernel.area_slope = area_slope + area_slope.transpose();
+  return kernel;
+}
+
+// Columns: an orthonormal basis of the vectors that all rows annihilate. Rows are normalized first.
+Eigen::MatrixXd null_space(Eigen::MatrixXd rows) {
+  rows.rowwise().normalize();
+  const Eigen::JacobiSVD<Eigen::MatrixXd> svd(rows, Eigen::ComputeFullV);
+  const auto& values = svd.singularValues();
+  Eigen::Index rank = 0;
+  while (rank < values.size() && values[rank] > rank_cutoff * values[0]) ++rank;
+  return svd.matrixV().rightCols(rows.cols() - rank);
+}
+
+// The extreme eigenvector with the eigenvalue of largest size.
+PulseSpace::Best largest(const Eigen::MatrixXd& form) {
+  const Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd> solver(form);
+  const auto& values = solver.eigenvalues();
+  const Eigen::Index last = values.size() - 1;
+  const Eigen::Index best = std::abs(values[0]) > std::abs(values[last]) ? 0 : last;
+  return {solver.eigenvectors().col(best), values[best]};
+}
+
+double value(const Eigen::MatrixXd& form, const Eigen::VectorXd& y) {
+  return y.dot(form * y);
+}
+
+// The unit combination of two vectors on which `form`, of opposite signs on them, vanishes.
+Eigen::VectorXd balanced(const Eigen::MatrixXd& form, const Eigen::VectorXd& plus,
+                         const Eigen::VectorXd& minus) {
+  const double a = value(form, plus), c = value(form, minus), b = plus.dot(form * minus);
+  // a + 2 b t + c t^2 = 0 with a >= 0 >= c.
+  const double root = std::sqrt(b * b - a * c);
+  const double t = c == 0 ? 0 : (-b - root) / c;
+  return (plus + t * minus).normalized();
+}
+
+// max y^T form y over unit y with y^T zero y = 0, by its dual: the least of max eigenvalue(form - x zero)
+// over x, a convex function whose slope is minus y^T zero y. Chi is 0 when there is no such y.
+PulseSpace::Best largest_with_zero(const Eigen::MatrixXd& form, const Eigen::MatrixXd& zero) {
+  struct Point {
+    double x = 0, slope = 0, bound = 0;
+    Eigen::VectorXd y;
+  };
+  const auto at = [&](double x) {
+    const Eigen::SelfAdjointEigenSolver<Eigen::MatrixXd> solver(form - x * zero);
+    const Eigen::Index last = form.rows() - 1;
+    Point point{x, 0, solver.eigenvalues()[last], solver.eigenvectors().col(last)};
+    point.slope = value(zero, point.y);
+    return point;
+  };
+  Point low = at(0);
+  Point high = low;
+  double reach = form.norm() / zero.norm();
+  for (int k = 0; k < 12 && low.slope < 0; ++k, reach *= 3) low = at(-reach);
+  for (int k = 0; k < 12 && high.slope > 0; ++k, reach *= 3) high = at(reach);
+  if (low.slope < 0 || high.slope > 0) return {low.y, 0};
+  PulseSpace::Best best;
+  for (int round = 0; round < 30; ++round) {
+    best.y = balanced(zero, low.y, high.y);
+    best.chi = value(form, best.y);
+    if (best.chi > 0.995 * std::min(low.bound, high.bound)) break;
+    // Where the two tangents meet lies the new point.
+    const double gap = high.x - low.x;
+    const double meet = (high.bound - low.bound + high.slope * gap) / ((high.slope - low.slope) * gap);
+    const double part = std::clamp(std::isfinite(meet) ? meet : 0.5, 0.05, 0.95);
+    const Point middle = at(low.x + part * gap);
+    (middle.slope >= 0 ? low : high) = middle;
+  }
+  return best;
+}
+
+PulseSpace::Best largest_of_both_signs(const Eigen::MatrixXd& form, const Eigen::MatrixXd& zero) {
+  const PulseSpace::Best plus = largest_with_zero(form, zero);
+  PulseSpace::Best minus = largest_with_zero(-form, zero);
+  minus.chi = -minus.chi;
+  return std::abs(minus.chi) > plus.chi ? minus : plus;
+}
+
+}  // namespace
+
+double Pulse::phase() const {
+  constexpr long double half_turn = std::numbers::pi_v<long double>;
+  const long double phi = half_turn * (0.5L - static_cast<long double>(detuning) * duration);
+  const long double wrapped = phi - 2 * half_turn * std::round(phi / (2 * half_turn));
+  return double(wrapped <= -half_turn ? half_turn : wrapped);
+}
+
+double Pulse::peak() const {
+  return rabi.cwiseAbs().maxCoeff();
+}
+
+double Pulse::rms() const {
+  const int segments = segments_of(*this);
+  double sum = 0;
+  for (int s = 0; s < segments; ++s) {
+    const auto [f, g] = line_of(*this, s);
+    sum += f * f + f * g + g * g / 3;
+  }
+  return std::sqrt(sum / segments) / (2 * pi);
+}
+
+double Pulse::mean_absolute() const {
+  const int segments = segments_of(*this);
+  double sum = 0;
+  for (int s = 0; s < segments; ++s) {
+    const auto [f, g] = line_of(*this, s);
+    const double end = f + g;
+    sum += f * end >= 0 ? std::abs(f + end) / 2 : (f * f + end * end) / (2 * std::abs(g));
+  }
+  return sum / segments / (2 * pi);
+}
+
+double Pulse::at(double time) const {
+  const int segments = segments_of(*this);
+  const double place = std::clamp(time / duration * segments, 0.0, double(segments));
+  const int s = std::min(static_cast<int>(place), segments - 1);
+  const auto [f, g] = line_of(*this, s);
+  return (f + g * (place - s)) / (2 * pi);
+}
+
+Response response(const Pulse& pulse, const Eigen::VectorXd& mode_hz) {
+  const int segments = segments_of(pulse);
+  Response result{Eigen::VectorXcd(mode_hz.size()), Eigen::VectorXd(mode_hz.size())};
+  for (Eigen::Index m = 0; m < mode_hz.size(); ++m) {
+    SegmentView view(mode_hz[m], pulse.detuning, pulse.duration, segments);
+    view.prepare_ordered();
+    Complex loop = 0;
+    double area = 0;
+    for (int s = 0; s < segments; ++s) {
+      const auto phase = view.phases(s);
+      const auto a = view.integrals(phase);
+      const OrderedMoments w = view.ordered(phase);
+      const auto [f, g] = line_of(pulse, s);
+      const Complex here = f * a[0] + g * a[1];
+      area += (here * std::conj(loop)).imag();
+      area += (f * f * w[0][0] + f * g * (w[1][0] + w[0][1]) + g * g * w[1][1]).imag();
+      loop += here;
+    }
+    result.loop[m] = loop;
+    result.area[m] = 2 * area;
+  }
+  return result;
+}
+
+Eigen::VectorXd excursion(const Pulse& pulse, const Eigen::VectorXd& mode_hz) {
+  const int segments = segments_of(pulse);
+  Eigen::VectorXd result(mode_hz.size());
+  for (Eigen::Index m = 0; m < mode_hz.size(); ++m) {
+    const SegmentView view(mode_hz[m], pulse.detuning, pulse.duration, segments);
+    std::array<std::array<Moments, 2>, 16> partial;
+    for (std::size_t k = 0; k < 16; ++k) partial[k] = view.partial_moments(gauss_rule()[k].at);
+    Complex loop = 0;
+    double sum = 0;
+    for (int s = 0; s < segments; ++s) {
+      const auto phase = view.phases(s);
+      const auto [f, g] = line_of(pulse, s);
+      for (std::size_t k = 0; k < 16; ++k) {
+        const auto [x, weight] = gauss_rule()[k];
+        const auto a = view.partial_integrals(phase, x, partial[k]);
+        sum += weight * std::norm(loop + f * a[0] + g * a[1]);
+      }
+      const auto a = view.integrals(phase);
+      loop += f * a[0] + g * a[1];
+    }
+    result[m] = sum * view.length();
+  }
+  return result;
+}
+
+Eigen::MatrixXcd paths(const Pulse& pulse, const Eigen::VectorXd& mode_hz, const std::vector<double>& times) {
+  const int segments = segments_of(pulse);
+  Eigen::MatrixXcd result(static_cast<Eigen::Index>(times.size()), mode_hz.size());
+  for (Eigen::Index m = 0; m < mode_hz.size(); ++m) {
+    const SegmentView view(mode_hz[m], pulse.detuning, pulse.duration, segments);
+    std::vector<Complex> before(static_cast<std::size_t>(segments) + 1);
+    for (int s = 0; s < segments; ++s) {
+      const auto a = view.integrals(view.phases(s));
+      const auto [f, g] = line_of(pulse, s);
+      before[static_cast<std::size_t>(s) + 1] = before[static_cast<std::size_t>(s)] + f * a[0] + g * a[1];
+    }
+    for (std::size_t k = 0; k < times.size(); ++k) {
+      const double place = std::clamp(times[k] / pulse.duration * segments, 0.0, double(segments));
+      const int s = std::min(static_cast<int>(place), segments - 1);
+      const double x = place - s;
+      const auto a = view.partial_integrals(view.phases(s), x, view.partial_moments(x));
+      const auto [f, g] = line_of(pulse, s);
+      result(static_cast<Eigen::Index>(k), m) = before[static_cast<std::size_t>(s)] + f * a[0] + g * a[1];
+    }
+  }
+  return result;
+}
+
+PulseSpace::PulseSpace(const Eigen::VectorXd& mode_hz, const LightForm& form, double duration,
+                       double detuning)
+    : form_(form), duration_(duration), detuning_(detuning) {
+  const Eigen::Index modes = mode_hz.size();
+  for (Eigen::MatrixXcd& table : segment_integrals_) table.resize(modes, form.segments);
+  for (Eigen::Index m = 0; m < modes; ++m) {
+    const SegmentView view(mode_hz[m], detuning, duration, form.segments);
+    for (int s = 0; s < form.segments; ++s) {
+      const auto a = view.integrals(view.phases(s));
+      segment_integrals_[0](m, s) = a[0];
+      segment_integrals_[1](m, s) = a[1];
+    }
+  }
+  for (const Parity parity : {Parity::even, Parity::odd}) {
+    const Unknowns unknowns(form, parity);
+    if (unknowns.count() == 0) continue;
+    std::vector<ModeKernel> kernels;
+    for (Eigen::Index m = 0; m < modes; ++m)
+      kernels.push_back(mode_kernel(mode_hz[m], unknowns, form, duration, detuning, parity));
+
+    // Unknowns scaled so that their square sum is the mean power: x = scale * z.
+    const Eigen::LLT<Eigen::MatrixXd> cholesky(unknowns.power());
+    const Eigen::MatrixXd scale =
+        cholesky.matrixU().solve(Eigen::MatrixXd::Identity(unknowns.count(), unknowns.count()));
+    Eigen::MatrixXd rows(form.robust == Robust::none ? modes : 2 * modes, unknowns.count());
+    Eigen::MatrixXd slopes(modes, unknowns.count());
+    for (Eigen::Index m = 0; m < modes; ++m) {
+      const ModeKernel& kernel = kernels[static_cast<std::size_t>(m)];
+      rows.row(m) = kernel.loop.transpose() * scale;
+      slopes.row(m) = kernel.loop_slope.transpose() * scale;
+      if (form.robust != Robust::none) rows.row(modes + m) = slopes.row(m);
+    }
+    const Eigen::MatrixXd free = null_space(rows);
+    const Eigen::MatrixXd basis = scale * free;
+    Part& part = parts_[static_cast<std::size_t>(parity)];
+    const Eigen::Index d = basis.cols();
+    part.knots = unknowns.unfold() * basis;
+    part.loop_slope = slopes * free;
+    part.area.resize(d * d, modes);
+    part.area_slope.resize(d * d, modes);
+    for (Eigen::Index m = 0; m < modes; ++m) {
+      const ModeKernel& kernel = kernels[static_cast<std::size_t>(m)];
+      const Eigen::MatrixXd area = basis.transpose() * kernel.area * basis;
+      part.area.col(m) = area.reshaped();
+      const Eigen::MatrixXd area_slope = basis.transpose() * kernel.area_slope * basis;
+      part.area_slope.col(m) = area_slope.reshaped();
+    }
+  }
+}
+
+Eigen::MatrixXd PulseSpace::form_of(const Eigen::MatrixXd& table, const Eigen::VectorXd& weight) {
+  const Eigen::VectorXd flat = table * weight;
+  const auto size = static_cast<Eigen::Index>(std::lround(std::sqrt(double(flat.size()))));
+  return flat.reshaped(size, size);
+}
+
+PulseSpace::Best PulseSpace::strongest(const Eigen::VectorXd& weight, bool with_angle) const {
+  Best best{Eigen::VectorXd::Zero(dimension()), 0};
+  for (Eigen::Index start = 0; const Part& part : parts_) {
+    const Eigen::Index d = part.knots.cols();
+    if (d > 0) {
+      const Eigen::MatrixXd form = form_of(part.area, weight);
+      const Best own =
+          with_angle ? largest_of_both_signs(form, form_of(part.area_slope, weight)) : largest(form);
+      if (std::abs(own.chi) > std::abs(best.chi)) {
+        best.y.setZero();
+        best.y.segment(start, d) = own.y;
+        best.chi = own.chi;
+      }
+    }
+    start += d;
+  }
+  return best;
+}
+
+PulseSpace::Best PulseSpace::strongest(const Eigen::VectorXd& weight) const {
+  return strongest(weight, form_.robust == Robust::motion_and_angle);
+}
+
+PulseSpace::Best PulseSpace::strongest_unchecked(const Eigen::VectorXd& weight) const {
+  return strongest(weight, false);
+}
+
+// Knots above the limit are made dearer until none is left: the prices are the multipliers of the peak
+// conditions.
+std::optional<PulseSpace::Best> PulseSpace::gentlest(const Eigen::VectorXd& weight, double chi,
+                                                     double peak_hz) const {
+  constexpr int rounds = 16;
+  constexpr double aim = 0.99;  // of the limit, so that the approach from above ends
+  const bool with_angle = form_.robust == Robust::motion_and_angle;
+  const double limit = 2 * pi * peak_hz;
+  const auto reaching = [&](Best best) {
+    const double scale = std::sqrt(chi / std::abs(best.chi));
+    return Best{best.y * scale, best.chi * scale * scale};
+  };
+  Best best = strongest(weight);
+  if (best.chi == 0) return std::nullopt;
+  best = reaching(best);
+  const double least_power = best.y.squaredNorm();
+  if (std::sqrt(least_power) > limit) return std::nullopt;  // the peak is no less than the root mean square
+
+  const Eigen::Index d = dimension();
+  const Eigen::Index even = parts_[0].knots.cols();
+  const auto joined = [&](const Eigen::MatrixXd& first, const Eigen::MatrixXd& second) {
+    Eigen::MatrixXd both = Eigen::MatrixXd::Zero(d, d);
+    if (first.rows() == even) both.topLeftCorner(even, even) = first;
+    if (second.rows() == d - even) both.bottomRightCorner(d - even, d - even) = second;
+    return both;
+  };
+  Eigen::MatrixXd knots(std::max(parts_[0].knots.rows(), parts_[1].knots.rows()), d);
+  if (even > 0) knots.leftCols(even) = parts_[0].knots;
+  if (d > even) knots.rightCols(d - even) = parts_[1].knots;
+  Eigen::MatrixXd form, slope;  // made when the first price is asked
+  Eigen::VectorXd price = Eigen::VectorXd::Ones(knots.rows());
+  std::optional<Best> found;
+  for (int round = 0; round < rounds; ++round) {
+    const Eigen::VectorXd height = (knots * best.y).cwiseAbs() / limit;
+    if (height.maxCoeff() <= 1) {
+      const double before = found ? found->y.norm() : 0;
+      if (!found || best.y.norm() < before) found = best;
+      if (round == 0 || before > 0) break;  // least power, or one step of easing the prices
+    } else if (best.y.norm() > limit || (round >= 5 && height.maxCoeff() > 1.5)) {
+      break;  // out of reach
+    }
+    price = (price.array() * (height.array() / aim).square()).max(1);
+    if (form.size() == 0) {
+      form = joined(form_of(parts_[0].area, weight), form_of(parts_[1].area, weight));
+      if (with_angle)
+        slope = joined(form_of(parts_[0].area_slope, weight), form_of(parts_[1].area_slope, weight));
+    }
+    const Eigen::MatrixXd power =
+        Eigen::MatrixXd::Identity(d, d) +
+        knots.transpose() * ((price.array() - 1) / double(knots.rows())).matrix().asDiagonal() * knots;
+    const Eigen::LLT<Eigen::MatrixXd> cholesky(power);
+    const Eigen::MatrixXd frame = cholesky.matrixU().solve(Eigen::MatrixXd::Identity(d, d));
+    const Eigen::MatrixXd framed = frame.transpose() * form * frame;
+    best = with_angle ? largest_of_both_signs(framed, frame.transpose() * slope * frame) : largest(framed);
+    if (best.chi == 0) break;
+    best.y = frame * best.y;
+    best = reaching(best);
+  }
+  return found;
+}
+
+Eigen::VectorXd PulseSpace::loop_slope_squares(const Eigen::VectorXd& y) const {
+  const Eigen::Index even = parts_[0].knots.cols();
+  Eigen::VectorXd sum =
+      Eigen::VectorXd::Zero(std::max(parts_[0].loop_slope.rows(), parts_[1].loop_slope.rows()));
+  if (even > 0) sum += (parts_[0].loop_slope * y.head(even)).cwiseAbs2();
+  if (y.size() > even) sum += (parts_[1].loop_slope * y.tail(y.size() - even)).cwiseAbs2();
+  return sum;
+}
+
+double PulseSpace::chi_slope(const Eigen::VectorXd& weight, const Eigen::VectorXd& y) const {
+  double sum = 0;
+  for (Eigen::Index start = 0; const Part& part : parts_) {
+    const Eigen::Index d = part.knots.cols();
+    if (d > 0) sum += value(form_of(part.area_slope, weight), y.segment(start, d));
+    start += d;
+  }
+  return sum;
+}
+
+Eigen::VectorXd PulseSpace::rough_excursion(const Pulse& pulse) const {
+  const Eigen::Index modes = segment_integrals_[0].rows();
+  const int segments = segments_of(pulse);
+  Eigen::VectorXcd loop = Eigen::VectorXcd::Zero(modes);
+  Eigen::VectorXd sum = Eigen::VectorXd::Zero(modes);
+  for (int s = 0; s < segments; ++s) {
+    const auto [f, g] = line_of(pulse, s);
+    loop += f * segment_integrals_[0].col(s) + g * segment_integrals_[1].col(s);
+    sum += loop.cwiseAbs2();
+  }
+  return sum * (pulse.duration / segments);
+}
+
+Pulse PulseSpace::pulse(const Eigen::VectorXd& y) const {
+  const Eigen::Index even = parts_[0].knots.cols();
+  Eigen::VectorXd omega = Eigen::VectorXd::Zero(std::max(parts_[0].knots.rows(), parts_[1].knots.rows()));
+  if (even > 0) omega += parts_[0].knots * y.head(even);
+  if (y.size() > even) omega += parts_[1].knots * y.tail(y.size() - even);
+  return {form_.shape, duration_, detuning_, omega / (2 * pi)};
+}
+
+}  // namespace isinglass
