@@ -135,8 +135,8 @@ Eigen::MatrixXd with_fixed_signs(Eigen::MatrixXd vectors) {
 }
 
 void check_ranges(const Trap& trap) {
-  if (trap.ions < 1 || trap.ions > most_ions)
-    throw ImpossibleTrap(fmt::format("a chain has 1 to {} ions, not {}", most_ions, trap.ions));
+  if (trap.ions < 1 || trap.ions > longest_chain)
+    throw ImpossibleTrap(fmt::format("a chain has 1 to {} ions, not {}", longest_chain, trap.ions));
   if (!(trap.species.mass_u > 0) || trap.species.charge < 1)
     throw ImpossibleTrap("the ion's mass and charge must be positive");
   if (!(trap.axial_hz > 0) || !(trap.transverse_hz > 0))

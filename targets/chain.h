@@ -23,7 +23,7 @@ inline constexpr double electron_mass_u = 5.48579909065e-4;    // u
 }  // namespace si
 
 /// The longest chain that is computed.
-inline constexpr int most_ions = 64;
+inline constexpr int longest_chain = 64;
 
 /// What is caught: mass of the ion (electron removed) in atomic mass units, charge in elementary charges.
 struct Species {
@@ -39,7 +39,7 @@ std::span<const std::string_view> species_names();
 
 struct Trap {
   Species species;
-  int ions = 1;              // 1 to most_ions
+  int ions = 1;              // 1 to longest_chain
   double axial_hz = 0;       // harmonic axial frequency, > 0
   double quartic = 0;        // a4 >= 0: potential M wz^2 l^2 (u^2/2 + a4 u^4/4)
   double transverse_hz = 0;  // transverse frequency of one ion at the trap centre, > 0

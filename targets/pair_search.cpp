@@ -6,6 +6,7 @@
 #include <algorithm>
 #include <atomic>
 #include <cmath>
+#include <limits>
 #include <map>
 #include <mutex>
 #include <numbers>
@@ -38,9 +39,11 @@ void remember(std::vector<Candidate>& list, const Candidate& candidate) {
 
 // What one pair has seen in a scan.
 struct Seen {
+  double least_rms = std::numeric_limits<double>::infinity();
   std::vector<Candidate> any;     // reach the angle with an rms within the peak limit
   std::vector<Candidate> within;  // of those, whose least-power pulse keeps the limit already
   void merge(const Seen& other) {
+    least_rms = std::min(least_rms, other.least_rms);
     for (const Candidate& c : other.any) remember(any, c);
     for (const Candidate& c : other.within) remember(within, c);
   }
@@ -135,6 +138,7 @@ class Search {
     PulseSpace::Best best = space.strongest_unchecked(weight(pair));
     if (best.chi == 0) return;
     best.y *= std::sqrt(full_chi / std::abs(best.chi));
+    seen.least_rms = std::min(seen.least_rms, best.y.norm() / (2 * pi));
     if (best.y.norm() > 2 * pi * limits_.peak_hz) return;
     const Pulse pulse = space.pulse(best.y);
     const Candidate candidate{point, score(space, pair, best.y, pulse), pulse.peak()};
@@ -153,6 +157,9 @@ class Search {
     });
     for (std::size_t t = 1; t < seen.size(); ++t)
       for (std::size_t k = 0; k < open.size(); ++k) seen[0][k].merge(seen[t][k]);
+    for (std::size_t k = 0; k < open.size(); ++k)
+      found_.least_rms_hz =
+          k == 0 ? seen[0][k].least_rms : std::min(found_.least_rms_hz, seen[0][k].least_rms);
     settle(duration, points, open, seen[0]);
   }
 
@@ -221,9 +228,14 @@ class Search {
 
 }  // namespace
 
-int freedom(const LightForm& form, int ions) {
+bool can_close(const LightForm& form, int ions) {
   const int values = form.shape == Shape::steps ? form.segments : form.segments - 1;
-  return (values + 1) / 2 - (form.robust == Robust::none ? 1 : 2) * ions;
+  return (values + 1) / 2 > ions;
+}
+
+bool is_fully_robust(const LightForm& form, int ions) {
+  const int values = form.shape == Shape::steps ? form.segments : form.segments - 1;
+  return form.robust == Robust::none || (values + 1) / 2 > 2 * ions;
 }
 
 FoundLight find_light(const Chain& chain, const Eigen::MatrixXd& eta, const LightLimits& limits,
@@ -242,7 +254,7 @@ FoundLight find_light(const Chain& chain, const Eigen::MatrixXd& eta, const Ligh
     place.push_back(entry->second);
   }
   const FoundLight once = Search(chain, eta, limits, noise, solved, threads, progress).run();
-  FoundLight all{std::vector<std::optional<LitPair>>(pairs.size()), once.least_peak_hz};
+  FoundLight all{std::vector<std::optional<LitPair>>(pairs.size()), once.least_rms_hz};
   for (std::size_t k = 0; k < pairs.size(); ++k) {
     all.light[k] = once.light[place[k]];
     if (!all.light[k]) continue;

@@ -21,9 +21,10 @@ struct LightLimits {
   double peak_hz = 0;              // highest |rabi|
 };
 
-/// Free amplitudes that the form leaves after every condition of a chain of `ions`; below 1 nothing can be
-/// reached.
-int freedom(const LightForm& form, int ions);
+/// Whether the segments suffice to close the paths of all modes of a chain.
+bool can_close(const LightForm& form, int ions);
+/// Whether they suffice for all slopes, too, when the form asks for robustness.
+bool is_fully_robust(const LightForm& form, int ions);
 
 /// Called now and then with the part done, 0 to 1; from any thread, one call at a time.
 using Progress = std::function<void(double)>;
@@ -31,8 +32,8 @@ using Progress = std::function<void(double)>;
 /// What was found for the pairs, in their order.
 struct FoundLight {
   std::vector<std::optional<LitPair>> light;  // for a full interaction, theta = pi/2; empty = not reachable
-  double least_peak_hz =
-      0;  // the lowest peak that the reachable or nearly reachable pairs ask for; 0 when unknown
+  // The lowest rms amplitude that any pair without light needs in the longest time; 0 when all have light.
+  double least_rms_hz = 0;
 };
 
 /// Finds them on `threads` threads. The result depends neither on the number of threads nor on which other

@@ -247,14 +247,36 @@ ModeKernel mode_kernel(double mode_hz, const Unknowns& unknowns, const LightForm
   return kernel;
 }
 
-// Columns: an orthonormal basis of the vectors that all rows annihilate. Rows are normalized first.
-Eigen::MatrixXd null_space(Eigen::MatrixXd rows) {
+// Singular value decomposition of normalized rows: columns of V in the order of falling singular values, and
+// how many of these are above rounding.
+struct Conditions {
+  Eigen::MatrixXd v;
+  Eigen::Index rank = 0;
+  Eigen::MatrixXd free() const { return v.rightCols(v.cols() - rank); }
+};
+
+Conditions conditions(Eigen::MatrixXd rows) {
   rows.rowwise().normalize();
   const Eigen::JacobiSVD<Eigen::MatrixXd> svd(rows, Eigen::ComputeFullV);
   const auto& values = svd.singularValues();
-  Eigen::Index rank = 0;
-  while (rank < values.size() && values[rank] > rank_cutoff * values[0]) ++rank;
-  return svd.matrixV().rightCols(rows.cols() - rank);
+  Conditions found{svd.matrixV(), 0};
+  while (found.rank < values.size() && values[found.rank] > rank_cutoff * values[0]) ++found.rank;
+  return found;
+}
+
+// Columns: an orthonormal basis of the vectors on which all loops vanish and, when asked, all their slopes.
+Eigen::MatrixXd closed_space(const Eigen::MatrixXd& loops, const Eigen::MatrixXd& slopes, bool robust) {
+  if (!robust) return conditions(loops).free();
+  Eigen::MatrixXd all(2 * loops.rows(), loops.cols());
+  all << loops, slopes;
+  const Eigen::MatrixXd both = conditions(all).free();
+  if (both.cols() > 0) return both;
+  // Too few segments for all slopes: of the closed pulses those with the smallest slopes.
+  const Eigen::MatrixXd closed = conditions(loops).free();
+  if (closed.cols() == 0) return closed;
+  const Eigen::Index some = std::min(closed.cols(), std::max<Eigen::Index>(1, loops.rows() / 3));
+  const Eigen::JacobiSVD<Eigen::MatrixXd> svd(slopes * closed, Eigen::ComputeFullV);
+  return closed * svd.matrixV().rightCols(some);
 }
 
 // The extreme eigenvector with the eigenvalue of largest size.
@@ -460,15 +482,14 @@ PulseSpace::PulseSpace(const Eigen::VectorXd& mode_hz, const LightForm& form, do
     const Eigen::LLT<Eigen::MatrixXd> cholesky(unknowns.power());
     const Eigen::MatrixXd scale =
         cholesky.matrixU().solve(Eigen::MatrixXd::Identity(unknowns.count(), unknowns.count()));
-    Eigen::MatrixXd rows(form.robust == Robust::none ? modes : 2 * modes, unknowns.count());
+    Eigen::MatrixXd loops(modes, unknowns.count());
     Eigen::MatrixXd slopes(modes, unknowns.count());
     for (Eigen::Index m = 0; m < modes; ++m) {
       const ModeKernel& kernel = kernels[static_cast<std::size_t>(m)];
-      rows.row(m) = kernel.loop.transpose() * scale;
+      loops.row(m) = kernel.loop.transpose() * scale;
       slopes.row(m) = kernel.loop_slope.transpose() * scale;
-      if (form.robust != Robust::none) rows.row(modes + m) = slopes.row(m);
     }
-    const Eigen::MatrixXd free = null_space(rows);
+    const Eigen::MatrixXd free = closed_space(loops, slopes, form.robust != Robust::none);
     const Eigen::MatrixXd basis = scale * free;
     Part& part = parts_[static_cast<std::size_t>(parity)];
     const Eigen::Index d = basis.cols();

@@ -15,6 +15,9 @@
 namespace isinglass {
 
 enum class Shape { steps, ramps };
+/// Against an offset of the modes: not at all; paths that stay closed to first order (d alpha / d w = 0, as
+/// far as the segments allow: with too few, the closed pulses of smallest slope); and an angle that stays,
+/// too.
 enum class Robust { none, motion, motion_and_angle };
 
 /// How the light may be modulated.

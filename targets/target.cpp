@@ -7,6 +7,7 @@
 
 #include "algebra/sha256.h"
 #include "targets/machine_file.h"
+#include "targets/trap_machine.h"
 
 namespace isinglass {
 
@@ -189,8 +190,9 @@ void apply_figures(MachineFile& file, Target& target, bool complete) {
   read_pairs(file, target, conversion, complete);
 }
 
-Target read_target(const std::string& path) {
+Target read_target(const std::string& path, int threads, const std::function<void(double)>& progress) {
   MachineFile file(path);
+  if (is_trap_form(file)) return target_of_trap(file, threads, progress);
   Section top(file, "");
   std::string name;
   top.words("name", name, Need::required);

@@ -9,6 +9,7 @@
 #include <algorithm>
 #include <cmath>
 #include <cstdint>
+#include <functional>
 #include <numbers>
 #include <string>
 #include <vector>
@@ -105,9 +106,12 @@ inline constexpr std::uint32_t most_described_ions = 512;
 /// above.
 Target typical(std::uint32_t ions);
 
-/// Reads a machine description (TOML; keys in README.md beside this file). Throws Failure: file_trouble when
-/// it cannot be read, target_cannot with line and column of each fault when it is wrong.
-Target read_target(const std::string& path);
+/// Reads a machine description (TOML; keys in README.md beside this file), by figures or by the trap; in the
+/// latter case the figures are computed on `threads` threads (0 = as many as cores), or found where they were
+/// kept, and `progress` hears now and then the part done. Throws Failure: file_trouble when it cannot be
+/// read, target_cannot with line and column of each fault when it is wrong.
+Target read_target(const std::string& path, int threads = 0,
+                   const std::function<void(double)>& progress = {});
 
 /// What passes need to know: averages over the addressed ions and the reachable pairs.
 Cost cost_of(const Target& target);
