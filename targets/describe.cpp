@@ -70,7 +70,7 @@ Json pair_json(const TrapMachine& machine, const LitPair& lit, double theta, dou
           {"duration_us", pulse.duration * 1e6},
           {"detuning_mhz", pulse.detuning * 1e-6},
           {"phase_rad", pulse.phase()},
-          {"second_ion_phase_rad", lit.turned ? pulse.phase() + pi : pulse.phase()},
+          {"second_ion_phase_rad", wrapped(lit.turned ? pulse.phase() + pi : pulse.phase())},
           {"shape", pulse.shape == Shape::ramps ? "ramps" : "steps"},
           {"rabi_khz", list_of(pulse.rabi, 1e-3)},
           {"chi", chi},
