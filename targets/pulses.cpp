@@ -577,7 +577,7 @@ std::optional<PulseSpace::Best> PulseSpace::gentlest(const Eigen::VectorXd& weig
     if (height.maxCoeff() <= 1) {
       const double before = found ? found->y.norm() : 0;
       if (!found || best.y.norm() < before) found = best;
-      if (round == 0 || before > 0) break;  // least power, or one step of easing the prices
+      if (round == 0 || (before > 0 && best.y.norm() > 0.998 * before)) break;  // easing gains no more
     } else if (best.y.norm() > limit || (round >= 5 && height.maxCoeff() > 1.5)) {
       break;  // out of reach
     }
