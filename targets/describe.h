@@ -20,7 +20,7 @@ struct TargetQuestion {
   bool all_pairs = false;                          // the figures of every pair
   std::string plot;                                // SVG file to write; empty = none
   int threads = 0;                                 // 0 = as many as cores
-  Progress progress;                               // of the search for light
+  ReportProgress progress;                         // of the search for light
 };
 
 /// The answer for the standard output, ending with a newline; the plot is written when asked for. Throws

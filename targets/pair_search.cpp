@@ -76,7 +76,7 @@ void in_parallel(std::size_t count, int threads, const Work& work) {
 class Search {
  public:
   Search(const Chain& chain, const Eigen::MatrixXd& eta, const LightLimits& limits, const Noise& noise,
-         const std::vector<std::pair<int, int>>& pairs, int threads, const Progress& progress)
+         const std::vector<std::pair<int, int>>& pairs, int threads, const ReportProgress& progress)
       : modes_(chain.transverse_hz),
         eta_(eta),
         limits_(limits),
@@ -219,7 +219,7 @@ class Search {
   const LightLimits& limits_;
   const Noise& noise_;
   int threads_;
-  const Progress& progress_;
+  const ReportProgress& progress_;
   std::mutex progress_lock_;
   double base_ = 0;
   std::vector<std::pair<int, int>> pairs_;
@@ -240,7 +240,7 @@ bool is_fully_robust(const LightForm& form, int ions) {
 
 FoundLight find_light(const Chain& chain, const Eigen::MatrixXd& eta, const LightLimits& limits,
                       const Noise& noise, const std::vector<std::pair<int, int>>& pairs, int threads,
-                      const Progress& progress) {
+                      const ReportProgress& progress) {
   // Of two pairs that mirror each other one is solved.
   const int last = chain.ions() - 1;
   std::map<std::pair<int, int>, std::size_t> index;

@@ -27,7 +27,7 @@ bool can_close(const LightForm& form, int ions);
 bool is_fully_robust(const LightForm& form, int ions);
 
 /// Called now and then with the part done, 0 to 1; from any thread, one call at a time.
-using Progress = std::function<void(double)>;
+using ReportProgress = std::function<void(double)>;
 
 /// What was found for the pairs, in their order.
 struct FoundLight {
@@ -40,6 +40,6 @@ struct FoundLight {
 /// pairs are asked for.
 FoundLight find_light(const Chain& chain, const Eigen::MatrixXd& eta, const LightLimits& limits,
                       const Noise& noise, const std::vector<std::pair<int, int>>& pairs, int threads,
-                      const Progress& progress = {});
+                      const ReportProgress& progress = {});
 
 }  // namespace isinglass

@@ -230,7 +230,7 @@ void add_laws(const TrapMachine& machine, std::vector<PairLight>& found, int thr
 }
 
 std::vector<PairLight> found_light(const TrapMachine& machine, const std::vector<std::pair<int, int>>& pairs,
-                                   int threads, const Progress& progress, double& least_rms_hz) {
+                                   int threads, const ReportProgress& progress, double& least_rms_hz) {
   FoundLight light =
       find_light(machine.chain, machine.eta, machine.limits, machine.noise, pairs, threads, progress);
   least_rms_hz = light.least_rms_hz;
@@ -249,7 +249,7 @@ std::filesystem::path keeping_place(const TrapMachine& machine,
 }
 
 std::vector<PairLight> light_of(const TrapMachine& machine, const std::vector<std::pair<int, int>>& pairs,
-                                int threads, const Progress& progress, double& least_rms_hz) {
+                                int threads, const ReportProgress& progress, double& least_rms_hz) {
   if (auto kept = kept_light_of(machine, pairs)) return *std::move(kept);
   auto found = found_light(machine, pairs, threads_or_cores(threads), progress, least_rms_hz);
   const std::filesystem::path path = keeping_place(machine, pairs);
@@ -341,12 +341,12 @@ std::optional<std::vector<PairLight>> kept_light_of(const TrapMachine& machine,
 }
 
 std::vector<PairLight> light_of(const TrapMachine& machine, const std::vector<std::pair<int, int>>& pairs,
-                                int threads, const Progress& progress) {
+                                int threads, const ReportProgress& progress) {
   double least_rms_hz = 0;
   return light_of(machine, pairs, threads, progress, least_rms_hz);
 }
 
-Target target_of_trap(MachineFile& file, int threads, const Progress& progress) {
+Target target_of_trap(MachineFile& file, int threads, const ReportProgress& progress) {
   const TrapMachine machine = read_trap(file);
   const auto pairs = wanted_pairs(file, machine);
   double least_rms_hz = 0;

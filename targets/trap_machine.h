@@ -45,7 +45,7 @@ TrapMachine read_trap(MachineFile& file);
 /// Light for the given pairs, in their order. The light of all pairs asked for together is kept on disk (see
 /// README.md), named by the content of the description, and found there the next time.
 std::vector<PairLight> light_of(const TrapMachine& machine, const std::vector<std::pair<int, int>>& pairs,
-                                int threads, const Progress& progress = {});
+                                int threads, const ReportProgress& progress = {});
 
 /// What light_of() kept for exactly these pairs, if it did.
 std::optional<std::vector<PairLight>> kept_light_of(const TrapMachine& machine,
@@ -54,7 +54,7 @@ std::optional<std::vector<PairLight>> kept_light_of(const TrapMachine& machine,
 /// The compiler's view: computed figures, overridden by whatever [machine], [ion] and [pair] of the file say.
 /// `threads` 0 = as many as there are cores. Throws Failure(target_cannot) as read_trap does, and when no
 /// pair of a chain can be reached.
-Target target_of_trap(MachineFile& file, int threads = 0, const Progress& progress = {});
+Target target_of_trap(MachineFile& file, int threads = 0, const ReportProgress& progress = {});
 
 /// The pairs that the file lets be used: both ions addressed, within reach.
 std::vector<std::pair<int, int>> wanted_pairs(MachineFile& file, const TrapMachine& machine);

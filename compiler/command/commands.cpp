@@ -49,7 +49,7 @@ int run(int argc, const char* const* argv) {
   add_guard(app, status);
   add_bind(app, status);
   add_verify(app, status);
-  // add_target(app, status);
+  add_target(app, status);
   try {
     const int early = parse(app, argc, argv);
     return early >= 0 ? early : static_cast<int>(status);

@@ -63,9 +63,10 @@ Compiled Result::facts() const {
           rehearsal ? &*rehearsal : nullptr};
 }
 
-Target target_for(const Settings& settings, std::uint32_t qubits) {
-  if (!settings.target.empty()) return read_target(settings.target);
-  return typical(std::max(qubits, 1u));
+Target target_for(const Settings& settings, std::uint32_t qubits,
+                  const std::function<void(double)>& progress) {
+  if (settings.target.empty()) return typical(std::max(qubits, 1u));
+  return read_target(settings.target, static_cast<int>(settings.thread_count()), progress);
 }
 
 void rehearse(Result& result, std::size_t shots, const Settings& settings, Progress& progress) {
@@ -99,7 +100,9 @@ Result compile(const std::string& path, const Settings& settings, Progress& prog
     result.seconds.emplace_back(name, watch.seconds());
   };
 
-  timed("target", "reading the machine", [&] { result.target = target_for(settings, source.source_qubits); });
+  timed("target", "reading the machine", [&] {
+    result.target = target_for(settings, source.source_qubits, [&](double share) { progress.share(share); });
+  });
   Circuit lowered;
   timed("improve", "improving",
         [&] { lowered = optimize(source, context_for(settings, source, result.target), &result.trace); });

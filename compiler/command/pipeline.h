@@ -1,6 +1,7 @@
 // The whole line, from a source file to a checked, placed and timed program, as one function.
 #pragma once
 
+#include <functional>
 #include <optional>
 #include <string>
 #include <utility>
@@ -38,7 +39,8 @@ struct Result {
 };
 
 /// The target named by the settings, or a typical one with an ion for each of `qubits`.
-Target target_for(const Settings& settings, std::uint32_t qubits);
+Target target_for(const Settings& settings, std::uint32_t qubits,
+                  const std::function<void(double)>& progress = {});
 
 /// Runs the compiled program in simulation with the target's errors; see targets/rehearse.h.
 void rehearse(Result& result, std::size_t shots, const Settings& settings, Progress& progress);
