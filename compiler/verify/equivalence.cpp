@@ -245,7 +245,10 @@ Verdict compare_side_by_side(const Job& job) {
                     "nothing.",
                     both, worst.followed, worst.widest));
   }
-  if (worst.state == SideBySide::State::same && worst.distance > job.options.tolerance) {
+  // The bound adds up what every stretch was rounded by, the compiler's own rounding included.
+  CheckOptions options = job.options;
+  options.tolerance = std::max(options.tolerance, 1e-12 * static_cast<double>(worst.gates));
+  if (worst.state == SideBySide::State::same && worst.distance > options.tolerance) {
     return not_shown(fmt::format(
         "{}; what was rounded on the way adds up to {:.1e}, more than the tolerance.", both, worst.distance));
   }
@@ -256,7 +259,8 @@ Verdict compare_side_by_side(const Job& job) {
                 "{}: it never touched more than {} wires together and is nothing at the end, which decides.",
                 both, worst.widest)
           : both + ": at the end it is not nothing.";
-  return judged(job, "following", deviation, words + for_inputs(job, sets));
+  return judged({job.source, job.compiled, job.promise, options}, "following", deviation,
+                words + for_inputs(job, sets));
 }
 
 /// The methods without amplitudes, the cheaper first.
@@ -267,7 +271,13 @@ Verdict compare_sparsely(const Job& job) {
   if (job.options.most_followed_wires == 0) return compare_rotations(job);
   const Verdict followed = compare_side_by_side(job);
   if (followed.answer != Answer::not_shown) return followed;
-  Verdict rotated = compare_rotations(job);
+  Verdict rotated;
+  try {
+    rotated = compare_rotations(job);
+  } catch (const Unsupported& limit) {
+    rotated =
+        not_shown(fmt::format("Pauli rotations came to no end either: {} was beyond them.", limit.what()));
+  }
   if (rotated.answer == Answer::not_shown)
     rotated.explanation = followed.explanation + " " + rotated.explanation;
   return rotated;
