@@ -329,7 +329,10 @@ Ending Reader::run_block(const syntax::Body& body) {
 Ending Reader::run_if(const syntax::If& choice, syntax::Span at) {
   const Value condition = truth(choice.condition);
   if (condition.is_known()) {
-    if (truth_of(condition)) return run_block(choice.then);
+    const bool taken = truth_of(condition);
+    if (!taken) check_unrun(choice.then);
+    if (taken && choice.otherwise) check_unrun(*choice.otherwise);
+    if (taken) return run_block(choice.then);
     return choice.otherwise ? run_block(*choice.otherwise) : Ending::falls;
   }
   std::set<std::string> names = assigned_in(choice.then.statements, 0);
@@ -388,6 +391,9 @@ Ending Reader::run_switch(const syntax::Switch& choice, syntax::Span at) {
   if (choice.cases.empty()) fail(at, "a switch has at least one case");
   if (selector.is_known()) {
     if (chosen == choice.cases.size()) chosen = otherwise;
+    for (std::size_t i = 0; i < choice.cases.size(); ++i) {
+      if (i != chosen) check_unrun(choice.cases[i].body);
+    }
     return chosen == choice.cases.size() ? Ending::falls : run_block(choice.cases[chosen].body);
   }
   std::set<std::string> names;
@@ -658,7 +664,10 @@ Ending Reader::run_while(const syntax::While& loop, syntax::Span at) {
     const bool flagged = !pending_.empty();
     const auto size_before = circuit_.blocks[block_].size();
     const Value condition = flagged ? of_bool(true) : truth(loop.condition);
-    if (condition.is_known() && !truth_of(condition)) break;
+    if (condition.is_known() && !truth_of(condition)) {
+      check_unrun(loop.body);
+      break;
+    }
     if (!condition.is_known() || flagged || waits) {
       if (flagged) {
         result = run_guarded([&] { return run_running_while(loop, at); }, assigned);
@@ -731,6 +740,7 @@ void Reader::define_subroutine(const syntax::Subroutine& definition, syntax::Spa
   symbol.at = definition.name.at;
   symbol.definition = &definition;
   declare(std::move(symbol));
+  check_subroutine(definition);
 }
 
 void Reader::define_extern(const syntax::Extern& definition, syntax::Span at) {

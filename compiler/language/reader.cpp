@@ -318,6 +318,7 @@ void Reader::take(syntax::Statement&& statement) {
     return;
   }
   if (has_ended_) return;
+  checked_.clear();
   if (run_checked(statement) == Ending::ends) has_ended_ = true;
 }
 

@@ -244,6 +244,17 @@ class Reader final : public StatementSink {
   void emit_statement(ClassicalStatement statement, syntax::Span at);
   void emit_assignment(Expression target, Expression value, syntax::Span at);
 
+  // Names in code that is not run (check.cpp).
+  void check_unrun(const syntax::Body& body);
+  void check_subroutine(const syntax::Subroutine& definition);
+  void check_list(const Statements& statements);
+  void check_statement(const syntax::Statement& statement);
+  void check_call(const syntax::GateCall& call);
+  void check_expression(const SyntaxExpression& expression);
+  void check_type(const syntax::Type& type);
+  void check_name(const std::string& name, syntax::Span at, const char* what);
+  bool is_local(const std::string& name) const;
+
   // Timing (timing.cpp).
   void delay(const syntax::Delay& delay, syntax::Span at);
   Ending box(const syntax::Box& box, syntax::Span at);
@@ -362,6 +373,8 @@ class Reader final : public StatementSink {
   std::vector<std::vector<std::uint32_t>> temporaries_ = std::vector<std::vector<std::uint32_t>>(1);
   std::map<std::string, std::uint32_t> derived_;  // by printed expression
 
+  std::vector<std::set<std::string>> check_levels_;  // names declared in code that is not run
+  std::set<const syntax::Body*> checked_;            // of the statement being run
   bool has_ended_ = false;
   std::size_t emitted_ = 0;  // operations, statements and phases so far
   std::string gate_name_;    // of the gate being defined

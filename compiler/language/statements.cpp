@@ -50,28 +50,38 @@ Ending Reader::run_list(const Statements& statements, std::size_t first) {
 Ending Reader::run_checked(const syntax::Statement& statement) {
   count_step(statement.at);
   temporaries_.emplace_back();
-  const auto release = [this] {
-    for (const std::uint32_t variable : temporaries_.back()) {
-      const Variable& native = circuit_.variables[variable];
-      free_variables_[{&temporaries_, native.type}].push_back(variable);
-    }
-    temporaries_.pop_back();
-  };
+  const std::size_t depth = scopes_.depth();
+  const std::size_t frame = scopes_.frame;
+  const std::size_t targets = targets_.size();
+  const std::size_t arms = arms_.size();
+  const std::uint32_t block = block_;
   Ending ending = Ending::falls;
+  std::optional<Trouble> trouble;
   try {
     ending = run_statement(statement);
-  } catch (const Trouble& trouble) {
-    report(trouble);
-    note_broken(statement);
+  } catch (const Trouble& caught) {
+    trouble = caught;
   } catch (const Fault& fault) {
-    report({statement.at, fault.text,
-            fault.help.empty() ? std::vector<std::string>{} : std::vector{"help: " + fault.help}});
-    note_broken(statement);
+    trouble = Trouble{statement.at, fault.text, {}};
+    if (!fault.help.empty()) trouble->notes.push_back("help: " + fault.help);
   } catch (const Split& split) {
-    report({split.at, "an index or angle known only while running cannot stand here", {}});
+    trouble = Trouble{split.at, "an index or angle known only while running cannot stand here", {}};
+  }
+  if (trouble) {
+    // The statement may have been left in the middle of scopes, loops and arms.
+    while (scopes_.depth() > depth) close_scope();
+    scopes_.frame = frame;
+    targets_.resize(targets);
+    arms_.resize(arms);
+    block_ = block;
+    is_statement_call_ = false;
+    report(*trouble);
     note_broken(statement);
   }
-  release();
+  for (const std::uint32_t variable : temporaries_.back()) {
+    free_variables_[{&temporaries_, circuit_.variables[variable].type}].push_back(variable);
+  }
+  temporaries_.pop_back();
   return ending;
 }
 

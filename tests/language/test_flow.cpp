@@ -134,7 +134,7 @@ TEST_CASE("subroutines: qubits by reference, scalars by value, arrays by referen
   CHECK(errors_in("def f(readonly array[int[8], 2] v) { v[0] = 1; } array[int[8], 2] v; f(v);").size() == 1);
   CHECK(errors_in("def f() -> int { } int k = f();").size() == 1);
   CHECK(errors_in("def f() { return 3; } f();").size() == 1);
-  CHECK(errors_in("def f() { g(); } def g() { } f();").size() == 0);  // both are known when f is called
+  CHECK(errors_in("def f() { g(); } def g() { } f();").size() == 1);  // no forward reference
   CHECK(errors_in("g(); def g() { }").size() == 1);
   CHECK(errors_in("{ def g() { } }").size() == 1);
   CHECK(errors_in("return;").size() == 1);
