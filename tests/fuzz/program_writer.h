@@ -5,6 +5,7 @@
 #include <cstddef>
 #include <cstdint>
 #include <string>
+#include <utility>
 #include <vector>
 
 namespace isinglass::fuzz {
@@ -14,7 +15,11 @@ class ProgramWriter {
   ProgramWriter(const std::uint8_t* bytes, std::size_t size) : bytes_(bytes), size_(size) {}
 
   std::string program() {
-    text_ = "OPENQASM 3.1;\ninclude \"stdgates.inc\";\n";
+    text_ = "OPENQASM 3.1;\ninclude \"stdgates.inc\";\nqubit[4] q;\nbit[4] c;\nint n = 3;\nfloat t = 0.25;\n";
+    qubits_ = {{"q", 4}};
+    bits_ = {{"c", 4}};
+    wholes_ = {{"n"}};
+    reals_ = {{"t"}};
     while (!exhausted() && text_.size() < longest) declaration();
     while (!exhausted() && text_.size() < longest) statement(0);
     return text_;
@@ -59,25 +64,35 @@ class ProgramWriter {
         const unsigned size = choose(6);
         bits_.push_back({fresh("c"), size});
         text_ +=
-            "bit" + width(size) + " " + bits_.back().name + (choose(3) == 0 ? " = " + value(0) : "") + ";\n";
+            "bit" + width(size) + " " + bits_.back().name + (choose(6) == 1 ? " = " + value(0) : "") + ";\n";
         break;
       }
-      case 4:
-        numbers_.push_back({fresh("n")});
-        text_ +=
-            "const " +
-            pick({"int", "uint", "uint[8]", "int[16]", "float", "float[32]", "angle", "angle[8]", "bool"}) +
-            " " + numbers_.back().name + " = " + value(0) + ";\n";
+      case 4: {
+        const auto variables = std::exchange(wholes_, {});  // a constant sees none
+        const std::string expression = whole(2);
+        wholes_ = variables;
+        wholes_.push_back({fresh("n")});
+        text_ += "const " + pick({"int", "uint", "uint[8]", "int[16]"}) + " " + wholes_.back().name + " = " +
+                 expression + ";\n";
         break;
-      case 5:
+      }
+      case 5: {
+        const auto variables = std::exchange(reals_, {});
+        const auto integers = std::exchange(wholes_, {});
+        const std::string expression = real(2);
+        reals_ = variables;
+        wholes_ = integers;
+        reals_.push_back({fresh("e")});
+        text_ += "const " + pick({"float", "float[32]", "angle", "angle[8]"}) + " " + reals_.back().name +
+                 " = " + expression + ";\n";
+        break;
+      }
       case 6:
-        numbers_.push_back({fresh("v")});
-        text_ += type() + " " + numbers_.back().name + " = " + value(0) + ";\n";
+        variable();
         break;
       case 7:
-        numbers_.push_back({fresh("t")});
-        text_ += "input " + pick({"float", "angle", "angle[16]", "int", "bool", "bit[3]"}) + " " +
-                 numbers_.back().name + ";\n";
+        reals_.push_back({fresh("t")});
+        text_ += "input " + pick({"float", "angle", "angle[16]"}) + " " + reals_.back().name + ";\n";
         break;
       case 8:
         text_ +=
@@ -111,16 +126,34 @@ class ProgramWriter {
     }
   }
 
+  /// A classical variable; now and then of a type that its value does not fit.
+  void variable() {
+    if (choose(6) == 1) {
+      numbers_.push_back({fresh("w")});
+      text_ += type() + " " + numbers_.back().name + pick({"", " = " + value(1)}) + ";\n";
+    } else if (choose(2) == 0) {
+      const std::string expression = whole(1);
+      wholes_.push_back({fresh("v")});
+      text_ +=
+          pick({"int ", "uint ", "int[8] ", "uint[4] "}) + wholes_.back().name + " = " + expression + ";\n";
+    } else {
+      const std::string expression = real(1);
+      reals_.push_back({fresh("v")});
+      text_ += pick({"float ", "float[64] ", "angle ", "angle[6] "}) + reals_.back().name + " = " +
+               expression + ";\n";
+    }
+  }
+
   void gate() {
     const std::string name = fresh("g");
     const unsigned angles = choose(3);
     const unsigned arity = 1 + choose(3);
     std::vector<Named> outer_qubits = std::move(qubits_);
-    std::vector<Named> outer_numbers = numbers_;
+    std::vector<Named> outer_reals = std::exchange(reals_, {});
     qubits_.clear();
     text_ += "gate " + name + "(";
     for (unsigned i = 0; i < angles; ++i) {
-      numbers_.push_back({"p" + std::to_string(i)});
+      reals_.push_back({"p" + std::to_string(i)});
       text_ += (i > 0 ? ", p" : "p") + std::to_string(i);
     }
     text_ += ") ";
@@ -132,17 +165,20 @@ class ProgramWriter {
     for (unsigned i = choose(4); i > 0; --i) choose(8) == 0 ? statement(2) : gate_call();
     text_ += "}\n";
     qubits_ = std::move(outer_qubits);
-    numbers_ = std::move(outer_numbers);
+    reals_ = std::move(outer_reals);
     gates_.push_back({name, arity, angles});
   }
 
   void subroutine() {
+    const ProgramWriter outside = *this;  // its names come back at the end
+    qubits_ = bits_ = wholes_ = reals_ = numbers_ = arrays_ = {};
     const std::string name = fresh("f");
     text_ += "def " + name + "(" +
              pick({"", "int k", "qubit z", "qubit[2] z, float k", "readonly array[int[8], #dim = 1] z"}) +
              ")" + pick({"", " -> int", " -> bit", " -> float[32]"}) + " {";
     for (unsigned i = choose(4); i > 0; --i) statement(2);
     text_ += pick({"", "return 1;", "return;", "return measure z;", "return k + 1;"}) + "}\n";
+    restore(outside);
     subroutines_.push_back({name});
   }
 
@@ -166,10 +202,7 @@ class ProgramWriter {
                  ";\n";
         break;
       case 6:
-        text_ += pick(numbers_, "n") + pick({"", "", index()}) +
-                 pick({" = ", " += ", " -= ", " *= ", " /= ", " %= ", " **= ", " &= ", " |= ", " ^= ",
-                       " <<= ", " >>= "}) +
-                 value(0) + ";\n";
+        assignment();
         break;
       case 7:
         text_ += pick(arrays_, "arr") + index() + pick({"", index()}) + " = " + value(0) + ";\n";
@@ -192,10 +225,10 @@ class ProgramWriter {
         break;
       case 12:
       case 13: {
-        numbers_.push_back({fresh("i")});
-        text_ += "for " + pick({"int", "uint", "uint[4]", "bit", "float", "angle[4]"}) + " " +
-                 numbers_.back().name + " in " +
-                 pick({"[0:2]", "{1, 2, 5}", "[" + value(3) + ":" + value(3) + "]", "[3:-1:0]",
+        wholes_.push_back({fresh("i")});
+        text_ += "for " + pick({"int", "int", "uint", "uint[4]", "bit"}) + " " + wholes_.back().name +
+                 " in " +
+                 pick({"[0:2]", "{1, 2, 5}", "[" + whole(3) + ":" + whole(3) + "]", "[3:-1:0]",
                        pick(bits_, "c"), pick(arrays_, "arr"), "{" + value(2) + "}"}) +
                  " ";
         body(depth);
@@ -206,7 +239,7 @@ class ProgramWriter {
         body(depth);
         break;
       case 15:
-        text_ += "switch (" + value(2) + ") { case 0, 1 ";
+        text_ += "switch (" + whole(3) + ") { case 0, 1 ";
         block(depth);
         if (choose(2) == 0) {
           text_ += " case 2 ";
@@ -224,15 +257,33 @@ class ProgramWriter {
         break;
       case 17:
       case 18:
-        numbers_.push_back({fresh("w")});
-        text_ += type() + " " + numbers_.back().name + pick({"", " = " + value(0)}) + ";\n";
+        variable();
         break;
       case 19:
+        if (choose(4) != 1) break;
         text_ += pick(
             {"cal { x }\n", "defcal x $0 { }\n", "h $0;\n", "include \"stdgates.inc\";\n", "x q\n", "(;\n"});
         break;
       default:
         gate_call();
+    }
+  }
+
+  void assignment() {
+    switch (choose(4)) {
+      case 0:
+        text_ += pick(wholes_, "n") + pick({" = ", " += ", " -= ", " *= ", " %= "}) + whole(1) + ";\n";
+        break;
+      case 1:
+        text_ += pick(reals_, "t") + pick({" = ", " += ", " -= ", " *= ", " /= "}) + real(1) + ";\n";
+        break;
+      case 2:
+        text_ += bit() + pick({" = ", " = !", " |= ", " ^= "}) + bit() + ";\n";
+        break;
+      default:
+        text_ += pick(numbers_, "n") + pick({"", "", index()}) +
+                 pick({" = ", " += ", " /= ", " **= ", " &= ", " |= ", " ^= ", " <<= ", " >>= "}) + value(0) +
+                 ";\n";
     }
   }
 
@@ -244,10 +295,21 @@ class ProgramWriter {
     }
   }
 
+  void restore(const ProgramWriter& outside) {
+    qubits_ = outside.qubits_;
+    bits_ = outside.bits_;
+    wholes_ = outside.wholes_;
+    reals_ = outside.reals_;
+    numbers_ = outside.numbers_;
+    arrays_ = outside.arrays_;
+  }
+
   void block(int depth) {
+    const ProgramWriter outside = *this;
     text_ += "{ ";
     for (unsigned i = choose(4); i > 0; --i) statement(depth + 1);
     text_ += "} ";
+    restore(outside);
   }
 
   void gate_call() {
@@ -271,10 +333,15 @@ class ProgramWriter {
     text_ += gate.name;
     if (gate.angles > 0) {
       text_ += "(";
-      for (unsigned i = 0; i < gate.angles; ++i) text_ += (i > 0 ? ", " : "") + value(1);
+      for (unsigned i = 0; i < gate.angles; ++i) text_ += (i > 0 ? ", " : "") + real(2);
       text_ += ")";
     }
-    for (unsigned i = 0; i < operands; ++i) text_ += (i > 0 ? ", " : " ") + operand();
+    const unsigned first = choose(4);
+    const bool distinct = choose(8) != 1;
+    for (unsigned i = 0; i < operands; ++i) {
+      text_ += i > 0 ? ", " : " ";
+      text_ += distinct ? distinct_operand(first + i) : operand();
+    }
     text_ += ";\n";
   }
 
@@ -294,6 +361,12 @@ class ProgramWriter {
     return one.name + "[" + std::to_string(choose(one.size)) + "]";
   }
 
+  std::string distinct_operand(unsigned k) {
+    if (qubits_.empty()) return "q";
+    if (qubits_[0].name == "q") return "q[" + std::to_string(k % 4) + "]";
+    return qubits_[k % qubits_.size()].name;
+  }
+
   std::string bit() { return pick(bits_, "c") + pick({"", "[0]", "[1]", index()}); }
 
   std::string index() {
@@ -304,10 +377,30 @@ class ProgramWriter {
   }
 
   std::string condition() {
+    if (choose(8) == 1) return value(2);
     return pick({"true", bit() + " == 1", bit(), "!" + bit(),
-                 value(2) + pick({" < ", " == ", " != ", " >= "}) + value(2), "false"});
+                 whole(3) + pick({" < ", " == ", " != ", " >= "}) + whole(3), "false"});
   }
 
+  /// An expression of whole numbers.
+  std::string whole(int depth) {
+    const unsigned form = choose(depth >= deepest ? 6 : 9);
+    if (form < 2) return pick({"0", "1", "2", "3", "5", "0x1F", "0b101", "-1"});
+    if (form < 6) return pick(wholes_, "4");
+    return whole(depth + 1) + pick({" + ", " - ", " * ", " % ", " / ", " ** "}) + whole(depth + 1);
+  }
+
+  /// An expression of floats and angles.
+  std::string real(int depth) {
+    const unsigned form = choose(depth >= deepest ? 6 : 10);
+    if (form < 3) return pick({"pi", "pi/2", "-pi/4", "0.5", "1e-3", "2.", "tau", "1/2"});
+    if (form < 6) return pick(reals_, "0.25");
+    if (form == 6) return pick({"sin(", "cos(", "sqrt(", "exp(", "arctan("}) + real(depth + 1) + ")";
+    return real(depth + 1) + pick({" + ", " - ", " * ", " / "}) +
+           (choose(3) == 0 ? whole(depth + 1) : real(depth + 1));
+  }
+
+  /// An expression of anything.
   std::string value(int depth) {
     const bool leaf = depth >= deepest;
     switch (choose(leaf ? 6 : 14)) {
@@ -340,8 +433,7 @@ class ProgramWriter {
                      "imag", "sizeof"}) +
                "(" + value(depth + 1) + ")";
       default:
-        return pick({"mod(", "rotl(", "rotr(", "sizeof(", "pow("}) + value(depth + 1) + ", " +
-               value(depth + 1) + ")";
+        return pick({"mod(", "rotl(", "rotr(", "sizeof("}) + value(depth + 1) + ", " + value(depth + 1) + ")";
     }
   }
 
@@ -350,7 +442,7 @@ class ProgramWriter {
   std::size_t at_ = 0;
   std::string text_;
   unsigned names_ = 0;
-  std::vector<Named> qubits_, bits_, numbers_, arrays_, gates_, subroutines_;
+  std::vector<Named> qubits_, bits_, wholes_, reals_, numbers_, arrays_, gates_, subroutines_;
 };
 
 }  // namespace isinglass::fuzz
