@@ -15,6 +15,8 @@
 #include <optional>
 #include <stdexcept>
 
+#include "passes/rename_swaps.h"
+
 namespace isinglass {
 
 namespace {
@@ -633,6 +635,7 @@ AxisForm axis_form(const Circuit& circuit) {
   for (std::size_t b = 0; b < circuit.blocks.size(); ++b) {
     AxisBlock& block = form.blocks[b];
     block.is_body = b == 0;
+    block.may_rename = b == 0 && !may_end_early(circuit);
     block.items.reserve(circuit.blocks[b].size());
     Reader reader(form, block);
     for (const Operation& op : circuit.blocks[b]) reader.read(circuit, op);

@@ -66,7 +66,8 @@ struct AxisBlock {
   std::vector<Item> items;
   std::vector<Fence> fences;
   std::vector<Su2> end_frames;  // one a wire, applied at the end of the block
-  bool is_body = false;         // the program itself: wires may be renamed, edges known
+  bool is_body = false;         // the program itself: its edges are known
+  bool may_rename = false;      // wires may change their names: the body of a program with one end
 };
 
 struct AxisForm {

@@ -4,6 +4,8 @@
 #include <cmath>
 #include <numeric>
 
+#include "passes/rename_swaps.h"
+
 namespace isinglass {
 
 namespace {
@@ -262,11 +264,12 @@ void append_gates(Circuit& circuit, const LocalRotation& rotation, Block& block)
 }
 
 void rewrite_pieces(Circuit& circuit, const PieceRewriter& rewrite) {
+  const bool ends_early = may_end_early(circuit);
   // The children first: renaming in the program's block then reaches into finished blocks.
   for (std::size_t b = circuit.blocks.size(); b-- > 0;) {
     const Block block = std::move(circuit.blocks[b]);
     circuit.blocks[b].clear();
-    Block result = rewritten_block(circuit, block, b == 0, rewrite);
+    Block result = rewritten_block(circuit, block, b == 0 && !ends_early, rewrite);
     circuit.blocks[b] = std::move(result);
   }
 }

@@ -4,7 +4,8 @@
 //         |        ==>
 //     b --x--B--        b ----A--       and the ends change places
 //
-// Only in the body: the arms of a branch must bring every qubit back to its wire. (Common practice.)
+// Only in the body: the arms of a branch must bring every qubit back to its wire; and not in a program that
+// may end early, whose ends must agree. (Common practice.)
 #include "passes/rename_swaps.h"
 
 #include <utility>
@@ -29,7 +30,18 @@ bool is_swap(const Operation& op) {
 
 }  // namespace
 
+bool may_end_early(const Circuit& circuit) {
+  for (const Block& block : circuit.blocks) {
+    for (const Operation& op : block) {
+      if (op.kind != Kind::classical) continue;
+      if (circuit.statements[op.payload].kind == ClassicalStatement::Kind::end_program) return true;
+    }
+  }
+  return false;
+}
+
 Circuit rename_swaps(Circuit circuit, const PassContext&) {
+  if (may_end_early(circuit)) return circuit;
   bool any = false;
   for (const Operation& op : circuit.body()) any = any || is_swap(op);
   if (!any) return circuit;

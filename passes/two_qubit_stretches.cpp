@@ -38,7 +38,7 @@ class Resynthesis {
 
   void run(AxisBlock& block, Direction direction) {
     const Stretches stretches = gathered(block, direction);
-    const bool may_rename = may_rename_ && block.is_body;
+    const bool may_rename = may_rename_ && block.may_rename;
     Pusher pusher(form_.shell.wires);
     std::vector<Item> out;
     out.reserve(block.items.size());
