@@ -611,6 +611,7 @@ Circuit shell_of(const Circuit& circuit) {
   shell.pool = circuit.pool;
   shell.origins = circuit.origins;
   shell.pragmas = circuit.pragmas;
+  shell.externs = circuit.externs;
   return shell;
 }
 

@@ -98,6 +98,7 @@ class NativeWriter {
 
   void declarations() {
     out_.add("\n");
+    for (const std::string& declaration : circuit_.externs) out_.add(declaration, "\n");
     for (const Input& input : circuit_.inputs) {
       if (!input.is_derived) out_.add("input ", input.type, " ", input.name, ";\n");
     }

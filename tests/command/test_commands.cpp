@@ -247,3 +247,14 @@ TEST_CASE("faults of a values file are said with their line") {
   CHECK(run_program({"bind", source, "--values", folder.write("v", "t\n1\n")}).status == 3);
   CHECK(run_program({"bind", plan, "--values", folder.path("nowhere")}).status == 5);
 }
+
+TEST_CASE("an extern is kept as a call, and its declaration with it") {
+  const Ran ran =
+      run_program({"compile", "-"},
+                  "OPENQASM 3.0;\ninclude \"stdgates.inc\";\nextern weigh(bit[2]) -> bool;\nqubit[2] q;\n"
+                  "bit[2] c;\nh q;\nc = measure q;\nif (weigh(c)) { x q[0]; }\n");
+  INFO(ran.err);
+  CHECK(ran.status == 0);
+  CHECK(ran.out.find("extern weigh(bit[2]) -> bool;") != std::string::npos);
+  CHECK(ran.out.find("weigh(c)") != std::string::npos);
+}
