@@ -299,3 +299,37 @@ TEST_CASE(
   const Circuit source = support::random_circuit(random, plan);
   CHECK(support::distance(source, optimize(source, deep)) < 1e-9);
 }
+
+TEST_CASE("a program that may end early keeps the names of its wires") {
+  // if (c) end; swap, and a mirrored pair after it: both ends must find the qubits on the same wires.
+  Circuit source;
+  add_register(source, "q", 2);
+  const std::uint32_t c = add_bits(source, "c", 1, true);
+  Operation measure = source.make(Kind::measure, {0});
+  measure.payload = 0;
+  source.body().push_back(measure);
+  source.statements.push_back({});
+  source.statements[0].kind = ClassicalStatement::Kind::end_program;
+  source.blocks.push_back({source.make(Kind::classical, {})});
+  Branch branch;
+  branch.condition.kind = Expression::Kind::variable;
+  branch.condition.variable = c;
+  branch.arms.push_back({{}, 1});
+  source.branches.push_back(branch);
+  source.body().push_back(source.make(Kind::branch, {}));
+  source.body().push_back(source.make(Kind::swap, {0, 1}));
+  source.body().push_back(source.make(Kind::r, {0}, {{0.3}, {0.1}}));
+  source.body().push_back(source.make(Kind::swap, {0, 1}));
+  source.body().push_back(source.make(Kind::x, {0, 1}));
+  source.body().push_back(source.make(Kind::swap, {0, 1}));
+  for (const Effort effort : {Effort::quick, Effort::steady}) {
+    PassContext context;
+    context.effort = effort;
+    const Circuit result = optimize(source, context);
+    CHECK(result.end_wire == source.end_wire);
+    CHECK(tally_of(result).xx >= 2);
+  }
+  // Without the early end all is renamed: one interaction is left.
+  source.statements[0].kind = ClassicalStatement::Kind::raw;
+  CHECK(tally_of(optimize(source, {})).xx == 1);
+}
