@@ -544,7 +544,7 @@ PulseSpace::Best PulseSpace::strongest_unchecked(const Eigen::VectorXd& weight) 
 // conditions.
 std::optional<PulseSpace::Best> PulseSpace::gentlest(const Eigen::VectorXd& weight, double chi,
                                                      double peak_hz) const {
-  constexpr int rounds = 16;
+  constexpr int rounds = 40;
   constexpr double aim = 0.99;  // of the limit, so that the approach from above ends
   const bool with_angle = form_.robust == Robust::motion_and_angle;
   const double limit = 2 * pi * peak_hz;
@@ -578,7 +578,8 @@ std::optional<PulseSpace::Best> PulseSpace::gentlest(const Eigen::VectorXd& weig
       const double before = found ? found->y.norm() : 0;
       if (!found || best.y.norm() < before) found = best;
       if (round == 0 || (before > 0 && best.y.norm() > 0.998 * before)) break;  // easing gains no more
-    } else if (best.y.norm() > limit || (round >= 5 && height.maxCoeff() > 1.5)) {
+    } else if (best.y.norm() > limit || (round >= 5 && height.maxCoeff() > 1.5) ||
+               (round >= 12 && height.maxCoeff() > 1.15)) {
       break;  // out of reach
     }
     price = (price.array() * (height.array() / aim).square()).max(1);
