@@ -2,7 +2,7 @@
 # which say what they do; not to be run by itself.
 
 packages=(antlr4 libantlr4-runtime-dev libeigen3-dev libfmt-dev doctest-dev libcli11-dev libtomlplusplus-dev
-  nlohmann-json3-dev libbenchmark-dev librapidcheck-dev libpugixml-dev ninja-build cmake g++ ccache "$@")
+  nlohmann-json3-dev libbenchmark-dev librapidcheck-dev libpugixml-dev uuid-dev ninja-build cmake g++ ccache "$@")
 
 say() { printf '== %s\n' "$*"; }
 
