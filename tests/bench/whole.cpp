@@ -1,6 +1,7 @@
-// The whole line on random circuits of 20 qubits: reading, improving, placing, timing, writing; without the check.
-// Counters: microseconds a gate, gates a second, and the peak memory of the process so far a gate. Sizes ascend, so
-// the last row of a benchmark is its own peak. Growth from size to size: the ratio of the "us_per_gate" column.
+// The whole line on random circuits of 20 qubits: reading, improving, placing, timing, writing; without the
+// check. Counters: microseconds a gate, gates a second, and the peak memory of the process so far a gate.
+// Sizes ascend, so the last row of a benchmark is its own peak. Growth from size to size: the ratio of the
+// "us_per_gate" column.
 #include <benchmark/benchmark.h>
 #include <fmt/format.h>
 #include <sys/resource.h>
@@ -22,7 +23,9 @@ constexpr int qubits = 20;
 /// Gates as circuits in circulation have them: half of them on two qubits.
 std::string random_text(std::int64_t gates) {
   std::mt19937_64 random(7);
-  const auto below = [&](int limit) { return static_cast<int>(random() % static_cast<std::uint64_t>(limit)); };
+  const auto below = [&](int limit) {
+    return static_cast<int>(random() % static_cast<std::uint64_t>(limit));
+  };
   std::string text = fmt::format("OPENQASM 3.0;\ninclude \"stdgates.inc\";\nqubit[{}] q;\n", qubits);
   for (std::int64_t i = 0; i < gates; ++i) {
     const int a = below(qubits);
@@ -105,7 +108,11 @@ void placing_and_timing(benchmark::State& state) {
 constexpr int small = 1000;
 constexpr int large = 100'000;
 
-BENCHMARK(reading_alone)->RangeMultiplier(10)->Range(small, large)->Complexity()->Unit(benchmark::kMillisecond);
+BENCHMARK(reading_alone)
+    ->RangeMultiplier(10)
+    ->Range(small, large)
+    ->Complexity()
+    ->Unit(benchmark::kMillisecond);
 BENCHMARK_CAPTURE(improving_alone, quick, Effort::quick)
     ->RangeMultiplier(10)
     ->Range(small, large)
@@ -115,7 +122,11 @@ BENCHMARK_CAPTURE(improving_alone, steady, Effort::steady)
     ->RangeMultiplier(10)
     ->Range(small, large)
     ->Unit(benchmark::kMillisecond);
-BENCHMARK(placing_and_timing)->RangeMultiplier(10)->Range(small, large)->Complexity()->Unit(benchmark::kMillisecond);
+BENCHMARK(placing_and_timing)
+    ->RangeMultiplier(10)
+    ->Range(small, large)
+    ->Complexity()
+    ->Unit(benchmark::kMillisecond);
 BENCHMARK_CAPTURE(whole, quick, Effort::quick)
     ->RangeMultiplier(10)
     ->Range(small, large)
