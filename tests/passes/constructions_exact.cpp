@@ -252,6 +252,23 @@ TEST_CASE("the pass finds idle wires where the promise allows it") {
   CHECK(lowered(with_spare).xx == 11 + 1);
 }
 
+TEST_CASE("a clean wire is not lent a second time as a dirty one") {
+  for (std::uint32_t k = 4; k <= 7; ++k) {
+    for (const std::uint32_t idle : {1u, 2u, 3u}) {
+      Circuit source;
+      add_register(source, "q", k + 1 + idle);
+      for (std::uint32_t w = 0; w <= k; ++w) source.body().push_back(source.make(Kind::h, {w}));
+      source.body().push_back(source.make(Kind::x, range(k + 1)));
+      PassContext context;
+      context.promise.zero_start = true;
+      const Circuit result = choose_constructions(source, context);
+      CAPTURE(k);
+      CAPTURE(idle);
+      CHECK(support::distance_from_zero(source, result) < 1e-9);
+    }
+  }
+}
+
 TEST_CASE("random circuits through the pass alone") {
   support::Random random(13);
   for (int trial = 0; trial < 60; ++trial) {

@@ -97,6 +97,7 @@ TEST_CASE("counts of the families from Toffolis") {
     CAPTURE(sizes[i]);
     CHECK(count(support::tof(sizes[i])) <= tof[i]);
     CHECK(count(support::barenco_tof(sizes[i])) <= barenco[i]);
+    CHECK(count(support::barenco_tof(sizes[i])) == (sizes[i] == 3 ? 14 : 8 * sizes[i] - 10));  // reached here
   }
   CHECK(count(support::vbe_adder(3)) <= 44);
   CHECK(count(support::cuccaro_adder(6)) <= 62);
@@ -106,6 +107,19 @@ TEST_CASE("counts of the families from Toffolis") {
     const std::size_t textbook = multiplier.body().size() + 5 * toffolis;
     CHECK(static_cast<double>(count(multiplier)) <= 0.845 * static_cast<double>(textbook));
   }
+}
+
+TEST_CASE("a target that is known to be 0 takes a Toffoli of three interactions") {
+  PassContext zero;
+  zero.promise.zero_start = true;
+  Circuit source;
+  add_register(source, "q", 3);
+  source.body().push_back(source.make(Kind::h, {0}));
+  source.body().push_back(source.make(Kind::h, {1}));
+  source.body().push_back(source.make(Kind::x, {0, 1, 2}));
+  CHECK(tally_of(through(source, zero)).xx == 3);
+  CHECK(tally_of(through(source)).xx == 5);
+  CHECK(support::distance_from_zero(source, through(source, zero)) < 1e-12);
 }
 
 TEST_CASE("random circuits of Toffolis and other gates keep their unitaries") {
