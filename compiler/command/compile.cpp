@@ -119,6 +119,8 @@ void print_summary(const CompileJob& job, const Result& result) {
   if (job.settings.quiet) return;
   out << text_of(result.facts());
   if (result.rehearsal) out << text_of(*result.rehearsal);
+  out << "\ncheck: " << (result.is_checked ? name(result.verdict.answer) : "not checked");
+  out << ". " << result.verdict.explanation << "\n";
   out << "seconds";
   for (const auto& [stage, spent] : result.seconds) out << fmt::format("  {} {:.3f}", stage, spent);
   out << "\n";

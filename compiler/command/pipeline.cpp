@@ -120,7 +120,7 @@ Result compile(const std::string& path, const Settings& settings, Progress& prog
     result.native = native_program(result.placed, {path, result.target.name});
   });
   if (!settings.check) {
-    result.verdict.explanation = "not checked, as asked by --no-verify";
+    result.verdict.explanation = "--no-verify was given.";
   } else {
     result.is_checked = true;
     timed("check", "checking", [&] { result.verdict = check(result, settings); });
