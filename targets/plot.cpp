@@ -136,7 +136,7 @@ void draw_spectrum(std::string& svg, const TrapMachine& machine, const std::opti
   const double margin = std::max(0.05 * (high - low), 2e-3);
   const Panel panel(80, 250, page_width - 120, 110, {low - margin, high + margin}, {0, 1});
   panel.frame(svg, "Transverse modes", "frequency, MHz", "");
-  for (const double mode : mhz) panel.upright(svg, mode, colours[0], 1.6, 0.7);
+  for (const double mode : mhz) panel.upright(svg, mode, colours[0], 1.6, 0.6);
   panel.note(svg, 0, colours[0], "modes of the chain");
   if (!lit) return;
   panel.upright(svg, lit->pulse.detuning * 1e-6, colours[1], 2, 1, "6 4");

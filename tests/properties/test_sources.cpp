@@ -46,10 +46,10 @@ void check_sources(int count, Effort effort, std::uint64_t seed, bool read_back)
 }
 
 TEST_CASE("sources: random texts, quick") {
-  check_sources(600, Effort::quick, 51, true);
+  check_sources(1200, Effort::quick, 51, true);
 }
 TEST_CASE("sources: random texts, steady") {
-  check_sources(500, Effort::steady, 52, true);
+  check_sources(800, Effort::steady, 52, true);
 }
 
 TEST_CASE("sources: the reader alone") {
