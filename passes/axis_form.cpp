@@ -633,10 +633,11 @@ AxisForm axis_form(const Circuit& circuit) {
   AxisForm form;
   form.shell = shell_of(circuit);
   form.blocks.resize(circuit.blocks.size());
+  const bool may_rename = may_rename_wires(circuit);
   for (std::size_t b = 0; b < circuit.blocks.size(); ++b) {
     AxisBlock& block = form.blocks[b];
     block.is_body = b == 0;
-    block.may_rename = b == 0 && !may_end_early(circuit);
+    block.may_rename = b == 0 && may_rename;
     block.items.reserve(circuit.blocks[b].size());
     Reader reader(form, block);
     for (const Operation& op : circuit.blocks[b]) reader.read(circuit, op);

@@ -14,6 +14,8 @@
 #include <string>
 #include <utility>
 
+#include "circuit/physical.h"
+
 namespace isinglass {
 
 namespace {
@@ -22,6 +24,7 @@ class Bits {
  public:
   explicit Bits(Circuit& circuit)
       : circuit_(circuit),
+        swaps_(!has_pinned(circuit)),
         bit_(circuit.wires, no_bit),
         is_open_(circuit.wires),
         is_last_(circuit.wires, true) {}
@@ -79,7 +82,7 @@ class Bits {
     return std::all_of(operands.begin(), operands.end(), [&](std::uint32_t w) { return is_open_[w]; });
   }
 
-  static bool permutes(const Operation& op) {
+  bool permutes(const Operation& op) const {
     switch (op.kind) {
       case Kind::phase:
       case Kind::z:
@@ -90,7 +93,7 @@ class Bits {
       case Kind::y:
         return true;
       case Kind::swap:
-        return op.control_count() == 0;
+        return op.control_count() == 0 && swaps_;
       default:
         return false;
     }
@@ -163,6 +166,7 @@ class Bits {
   }
 
   Circuit& circuit_;
+  bool swaps_;                      // whether a swap may be done on bits: not of physical qubits
   std::vector<std::uint32_t> bit_;  // into which a wire is measured at its end
   std::vector<bool> is_open_;
   std::vector<bool> is_last_;    // the wire's final measurement is still to come, looking back

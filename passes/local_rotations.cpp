@@ -264,12 +264,12 @@ void append_gates(Circuit& circuit, const LocalRotation& rotation, Block& block)
 }
 
 void rewrite_pieces(Circuit& circuit, const PieceRewriter& rewrite) {
-  const bool ends_early = may_end_early(circuit);
+  const bool may_rename = may_rename_wires(circuit);
   // The children first: renaming in the program's block then reaches into finished blocks.
   for (std::size_t b = circuit.blocks.size(); b-- > 0;) {
     const Block block = std::move(circuit.blocks[b]);
     circuit.blocks[b].clear();
-    Block result = rewritten_block(circuit, block, b == 0 && !ends_early, rewrite);
+    Block result = rewritten_block(circuit, block, b == 0 && may_rename, rewrite);
     circuit.blocks[b] = std::move(result);
   }
 }

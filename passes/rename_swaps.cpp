@@ -4,11 +4,14 @@
 //         |        ==>
 //     b --x--B--        b ----A--       and the ends change places
 //
-// Only in the body: the arms of a branch must bring every qubit back to its wire; and not in a program that
-// may end early, whose ends must agree. (Common practice.)
+// Only in the body: the arms of a branch must bring every qubit back to its wire; not in a program that may
+// end early, whose ends must agree; and not where the source says which ion is which qubit: a swap of
+// physical qubits is work. (Common practice.)
 #include "passes/rename_swaps.h"
 
 #include <utility>
+
+#include "circuit/physical.h"
 
 namespace isinglass {
 
@@ -40,8 +43,12 @@ bool may_end_early(const Circuit& circuit) {
   return false;
 }
 
+bool may_rename_wires(const Circuit& circuit) {
+  return !may_end_early(circuit) && !has_pinned(circuit);
+}
+
 Circuit rename_swaps(Circuit circuit, const PassContext&) {
-  if (may_end_early(circuit)) return circuit;
+  if (!may_rename_wires(circuit)) return circuit;
   bool any = false;
   for (const Operation& op : circuit.body()) any = any || is_swap(op);
   if (!any) return circuit;

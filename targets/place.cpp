@@ -10,6 +10,7 @@
 #include <random>
 
 #include "circuit/message.h"
+#include "circuit/physical.h"
 #include "targets/route.h"
 
 namespace isinglass {
@@ -110,8 +111,6 @@ class Objective {
     return sum;
   }
 
-  static constexpr std::uint32_t no_ion = 0xffffffffu;
-
  private:
   const std::vector<WireUse>& uses_;
   const Target& target_;
@@ -121,6 +120,26 @@ class Objective {
 
 using Assignment = std::vector<std::uint32_t>;  // ion of each wire
 
+/// Where wires may sit: some are pinned to an ion, the others share the ions that are free, in any way.
+struct Seating {
+  Assignment pinned;                // by wire; no_ion where the wire is free
+  std::vector<std::uint32_t> free;  // ions, ascending
+
+  bool is_free(std::uint32_t wire) const { return pinned[wire] == no_ion; }
+  std::vector<std::uint32_t> ions_for(std::uint32_t wire) const {
+    return is_free(wire) ? free : std::vector<std::uint32_t>{pinned[wire]};
+  }
+  /// The free wires on these ions, one after the other.
+  Assignment filled(const std::vector<std::uint32_t>& ions) const {
+    Assignment ion_of = pinned;
+    std::size_t next = 0;
+    for (std::uint32_t& ion : ion_of) {
+      if (ion == no_ion) ion = ions[next++];
+    }
+    return ion_of;
+  }
+};
+
 /// Two ions that the build-up begins with.
 struct Seat {
   double cost;
@@ -129,11 +148,11 @@ struct Seat {
 };
 
 /// All ordered pairs of ions for the busiest pair of wires, the cheapest first.
-std::vector<Seat> seats_of(std::uint32_t wire, const Neighbour& partner,
-                           const std::vector<std::uint32_t>& ions, const Objective& objective) {
+std::vector<Seat> seats_of(std::uint32_t wire, const Neighbour& partner, const Seating& seating,
+                           const Objective& objective) {
   std::vector<Seat> seats;
-  for (const std::uint32_t a : ions) {
-    for (const std::uint32_t b : ions) {
+  for (const std::uint32_t a : seating.ions_for(wire)) {
+    for (const std::uint32_t b : seating.ions_for(partner.wire)) {
       if (a == b) continue;
       seats.push_back({objective.alone(wire, a) + objective.alone(partner.wire, b) +
                            objective.together(partner.use, a, b),
@@ -145,33 +164,31 @@ std::vector<Seat> seats_of(std::uint32_t wire, const Neighbour& partner,
 }
 
 /// Continues from those that sit: always the wire that interacts most with them, on the ion that adds least.
-void build_up(Assignment& ion_of, const std::vector<WireUse>& uses, const std::vector<std::uint32_t>& ions,
+void build_up(Assignment& ion_of, const std::vector<WireUse>& uses, const Seating& seating,
               const Objective& objective) {
   const auto wires = static_cast<std::uint32_t>(uses.size());
   std::vector<double> bound(wires, 0);  // interactions with wires that sit
   std::vector<std::uint32_t> free;
-  for (const std::uint32_t ion : ions) {
+  for (const std::uint32_t ion : seating.free) {
     if (std::find(ion_of.begin(), ion_of.end(), ion) == ion_of.end()) free.push_back(ion);
   }
   const auto tell_neighbours = [&](std::uint32_t wire) {
     for (const Neighbour& other : uses[wire].neighbours) bound[other.wire] += other.use.count;
   };
   for (std::uint32_t w = 0; w < wires; ++w) {
-    if (ion_of[w] != Objective::no_ion) tell_neighbours(w);
+    if (ion_of[w] != no_ion) tell_neighbours(w);
   }
   while (true) {
     std::uint32_t next = wires;
     for (std::uint32_t w = 0; w < wires; ++w) {
-      if (ion_of[w] != Objective::no_ion) continue;
+      if (ion_of[w] != no_ion) continue;
       if (next == wires ||
           std::pair(bound[w], uses[w].interactions) > std::pair(bound[next], uses[next].interactions)) {
         next = w;
       }
     }
     if (next == wires) return;
-    const auto cost = [&](std::uint32_t ion) {
-      return objective.of_wire(next, ion, ion_of, Objective::no_ion);
-    };
+    const auto cost = [&](std::uint32_t ion) { return objective.of_wire(next, ion, ion_of, no_ion); };
     std::size_t best = 0;
     for (std::size_t i = 1; i < free.size(); ++i) {
       if (cost(free[i]) < cost(free[best])) best = i;
@@ -182,32 +199,35 @@ void build_up(Assignment& ion_of, const std::vector<WireUse>& uses, const std::v
   }
 }
 
-/// Exchanges two wires, or moves one to a free ion, as long as that helps.
-void improve(Assignment& ion_of, const std::vector<std::uint32_t>& ions, const Objective& objective) {
+/// Exchanges two wires, or moves one to an empty ion, as long as that helps.
+void improve(Assignment& ion_of, const Seating& seating, const Objective& objective) {
   constexpr double least_gain = 1e-12;
   constexpr int most_rounds = 50;
   const auto wires = static_cast<std::uint32_t>(ion_of.size());
-  std::vector<std::uint32_t> wire_on(ions.empty() ? 0 : ions.back() + 1, Objective::no_ion);
-  for (std::uint32_t w = 0; w < wires; ++w) wire_on[ion_of[w]] = w;
+  std::vector<std::uint32_t> wire_on(seating.free.empty() ? 0 : seating.free.back() + 1, no_ion);
+  for (std::uint32_t w = 0; w < wires; ++w) {
+    if (seating.is_free(w)) wire_on[ion_of[w]] = w;
+  }
 
   bool has_changed = true;
   for (int round = 0; has_changed && round < most_rounds; ++round) {
     has_changed = false;
     for (std::uint32_t a = 0; a < wires; ++a) {
-      for (const std::uint32_t ion : ions) {
+      if (!seating.is_free(a)) continue;
+      for (const std::uint32_t ion : seating.free) {
         const std::uint32_t from = ion_of[a];
         const std::uint32_t b = wire_on[ion];
-        if (ion == from || (b != Objective::no_ion && b < a)) continue;
+        if (ion == from || (b != no_ion && b < a)) continue;
         // The pair (a, b) itself keeps its two ions and drops out of the difference.
         double gain = objective.of_wire(a, from, ion_of, b) - objective.of_wire(a, ion, ion_of, b);
-        if (b != Objective::no_ion) {
+        if (b != no_ion) {
           gain += objective.of_wire(b, ion, ion_of, a) - objective.of_wire(b, from, ion_of, a);
         }
         if (gain <= least_gain) continue;
         ion_of[a] = ion;
         wire_on[ion] = a;
         wire_on[from] = b;
-        if (b != Objective::no_ion) ion_of[b] = from;
+        if (b != no_ion) ion_of[b] = from;
         has_changed = true;
       }
     }
@@ -215,15 +235,15 @@ void improve(Assignment& ion_of, const std::vector<std::uint32_t>& ions, const O
 }
 
 /// The results of all beginnings, the best first; of equal ones the earlier.
-std::vector<Assignment> assignments(const std::vector<WireUse>& uses, const std::vector<std::uint32_t>& ions,
+std::vector<Assignment> assignments(const std::vector<WireUse>& uses, const Seating& seating,
                                     const Objective& objective, const PlaceOptions& options) {
   std::vector<std::pair<double, Assignment>> found;
   const auto compete = [&](Assignment candidate) {
-    improve(candidate, ions, objective);
+    improve(candidate, seating, objective);
     const double cost = objective.whole(candidate);
     found.emplace_back(cost, std::move(candidate));
   };
-  const Assignment in_order(ions.begin(), ions.begin() + static_cast<std::ptrdiff_t>(uses.size()));
+  const Assignment in_order = seating.filled(seating.free);
   found.emplace_back(objective.whole(in_order), in_order);
   compete(in_order);
 
@@ -237,28 +257,64 @@ std::vector<Assignment> assignments(const std::vector<WireUse>& uses, const std:
     const auto partner =
         std::max_element(busiest->neighbours.begin(), busiest->neighbours.end(),
                          [](const Neighbour& a, const Neighbour& b) { return a.use.count < b.use.count; });
-    for (const Seat& seat : seats_of(wire, *partner, ions, objective)) {
+    for (const Seat& seat : seats_of(wire, *partner, seating, objective)) {
       if (begun >= std::max(options.starts / 2, 2u)) break;
-      Assignment candidate(uses.size(), Objective::no_ion);
+      Assignment candidate = seating.pinned;
       candidate[wire] = seat.a;
       candidate[partner->wire] = seat.b;
-      build_up(candidate, uses, ions, objective);
+      build_up(candidate, uses, seating, objective);
       compete(std::move(candidate));
       ++begun;
     }
   }
   std::mt19937_64 random(options.seed);
   for (; begun < options.starts; ++begun) {
-    std::vector<std::uint32_t> shuffled = ions;
+    std::vector<std::uint32_t> shuffled = seating.free;
     for (std::size_t k = shuffled.size(); k > 1; --k) std::swap(shuffled[k - 1], shuffled[random() % k]);
-    shuffled.resize(uses.size());
-    compete(std::move(shuffled));
+    compete(seating.filled(shuffled));
   }
   std::stable_sort(found.begin(), found.end(),
                    [](const auto& a, const auto& b) { return a.first < b.first - 1e-12; });
   std::vector<Assignment> list;
   for (auto& [cost, assignment] : found) list.push_back(std::move(assignment));
   return list;
+}
+
+/// Throws where the machine has too few ions, or not the one that a physical qubit names.
+Seating seating_of(const Circuit& circuit, const Target& target) {
+  Seating seating;
+  seating.pinned = pinned_ions(circuit);
+  std::vector<bool> is_free(target.ions);
+  std::size_t reached = 0;
+  for (std::uint32_t ion = 0; ion < target.ions; ++ion) {
+    is_free[ion] = target.ion[ion].addressed;
+    if (is_free[ion]) ++reached;
+  }
+  for (std::uint32_t wire = 0; wire < circuit.wires; ++wire) {
+    const std::uint32_t ion = seating.pinned[wire];
+    if (ion == no_ion) continue;
+    const std::string qubit = circuit.wire_name(wire);
+    if (ion >= target.ions) {
+      throw Failure(Exit::target_cannot,
+                    fmt::format("{} is ion {} of the machine, and {} has ions 0 to {} only", qubit, ion,
+                                target.name, target.ions - 1));
+    }
+    if (!target.ion[ion].addressed) {
+      throw Failure(Exit::target_cannot,
+                    fmt::format("{} is ion {} of the machine, which light does not reach on {}", qubit, ion,
+                                target.name));
+    }
+    is_free[ion] = false;
+  }
+  if (circuit.wires > reached) {
+    throw Failure(Exit::target_cannot,
+                  fmt::format("the program needs {} ions, the machine {} has {}{}", circuit.wires,
+                              target.name, reached, reached < target.ions ? " that light reaches" : ""));
+  }
+  for (std::uint32_t ion = 0; ion < target.ions; ++ion) {
+    if (is_free[ion]) seating.free.push_back(ion);
+  }
+  return seating;
 }
 
 void refuse_missing_abilities(const Circuit& circuit, const Target& target) {
@@ -279,24 +335,19 @@ void refuse_missing_abilities(const Circuit& circuit, const Target& target) {
 }  // namespace
 
 Placed place(const Circuit& circuit, const Target& target, const PlaceOptions& options) {
-  std::vector<std::uint32_t> ions;
-  for (std::uint32_t ion = 0; ion < target.ions; ++ion) {
-    if (target.ion[ion].addressed) ions.push_back(ion);
-  }
-  if (circuit.wires > ions.size()) {
-    throw Failure(Exit::target_cannot, fmt::format("the program needs {} ions, the machine {} has {}{}",
-                                                   circuit.wires, target.name, ions.size(),
-                                                   ions.size() < target.ions ? " that light reaches" : ""));
-  }
+  const Seating seating = seating_of(circuit, target);
   refuse_missing_abilities(circuit, target);
+  std::vector<std::uint32_t> held;
+  for (const std::uint32_t ion : seating.pinned) {
+    if (ion != no_ion) held.push_back(ion);
+  }
+  const Routes routes(target, held);
   if (target.pairs.empty()) {  // all pairs alike: everybody stays in the order of the source
-    ions.resize(circuit.wires);
-    return routed(circuit, target, Routes(target), ions);
+    return routed(circuit, target, routes, seating.filled(seating.free));
   }
   const std::vector<WireUse> uses = uses_of(circuit);
-  const Routes routes(target);
   const Objective objective(uses, target, routes);
-  const auto list = assignments(uses, ions, objective, options);
+  const auto list = assignments(uses, seating, objective, options);
   return routes.is_complete() ? routed(circuit, target, routes, list.front())
                               : best_routed(circuit, target, routes, list);
 }

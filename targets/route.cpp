@@ -15,10 +15,13 @@
 #include <optional>
 
 #include "circuit/message.h"
+#include "circuit/physical.h"
 
 namespace isinglass {
 
-Routes::Routes(const Target& target) : ions_(target.ions) {
+Routes::Routes(const Target& target, const std::vector<std::uint32_t>& held) : ions_(target.ions) {
+  if (!held.empty()) held_.assign(ions_, false);
+  for (const std::uint32_t ion : held) held_[ion] = true;
   if (target.pairs.empty()) return;
   error_.assign(ions_ * ions_, unconnected);
   next_.assign(ions_ * ions_, 0);
@@ -35,7 +38,8 @@ Routes::Routes(const Target& target) : ions_(target.ions) {
       next_[a * ions_ + b] = b;
     }
   }
-  for (std::size_t k = 0; k < ions_ && !is_complete_; ++k) {
+  for (std::uint32_t k = 0; k < ions_ && !is_complete_; ++k) {
+    if (is_held(k)) continue;
     for (std::size_t a = 0; a < ions_; ++a) {
       const double first = error_[a * ions_ + k];
       if (first >= unconnected) continue;
@@ -150,14 +154,16 @@ class Router {
     const std::uint32_t b = ion_of_[op.operand[1]];
     if (target_.pair(a, b).reachable) return;
     const auto way = routes_.way(a, b);
-    if (way.empty()) refuse(op, a, b);
+    if (way.empty() || (routes_.is_held(a) && routes_.is_held(b))) refuse(op, a, b);
 
-    // The pair way[m], way[m+1] is where they meet.
-    std::size_t best = 0;
+    // The pair way[m], way[m+1] is where they meet; who is held does not move.
+    const std::size_t first = routes_.is_held(b) ? way.size() - 2 : 0;
+    const std::size_t last = routes_.is_held(a) ? 0 : way.size() - 2;
+    std::size_t best = first;
     double least = 0;
-    for (std::size_t m = 0; m + 1 < way.size(); ++m) {
+    for (std::size_t m = first; m <= last; ++m) {
       const double cost = cost_of_meeting(block, at, way, m);
-      if (m == 0 || cost < least) {
+      if (m == first || cost < least) {
         best = m;
         least = cost;
       }
@@ -230,12 +236,17 @@ class Router {
 
   [[noreturn]] void refuse(const Operation& op, std::uint32_t a, std::uint32_t b) const {
     const auto lines = source_.origins.lines(op.origin);
+    const char* reason = "no chain of reachable pairs joins them";
+    if (routes_.is_held(a) && routes_.is_held(b)) {
+      reason = "this pair is not reachable, and physical qubits do not move";
+    } else if (has_pinned(source_)) {
+      reason = "no chain of reachable pairs joins them without moving a physical qubit";
+    }
     throw Failure(
         Exit::target_cannot,
-        fmt::format("the machine {} cannot bring ions {} and {} together ({} and {}{}): no chain of "
-                    "reachable pairs joins them",
-                    target_.name, a, b, source_.wire_name(op.operand[0]), source_.wire_name(op.operand[1]),
-                    lines.empty() ? "" : fmt::format(", line {} of the source", lines.front())));
+        fmt::format("the machine {} cannot bring ions {} and {} together ({} and {}{}): {}", target_.name, a,
+                    b, source_.wire_name(op.operand[0]), source_.wire_name(op.operand[1]),
+                    lines.empty() ? "" : fmt::format(", line {} of the source", lines.front()), reason));
   }
 
   const Circuit& source_;

@@ -13,8 +13,11 @@ namespace isinglass {
 /// The least-error ways between ions over reachable pairs. Where all pairs are alike nobody asks for ways.
 class Routes {
  public:
-  explicit Routes(const Target& target);
+  /// Ions in `held` keep what they hold: ways end at them and never lead through them.
+  explicit Routes(const Target& target, const std::vector<std::uint32_t>& held = {});
 
+  /// Whether what an ion holds must stay on it.
+  bool is_held(std::uint32_t ion) const { return !held_.empty() && held_[ion]; }
   /// Whether every addressed pair is reachable: nothing ever moves.
   bool is_complete() const { return is_complete_; }
   /// Estimated error of bringing a and b together and letting them interact; large but finite where no way
@@ -30,6 +33,7 @@ class Routes {
  private:
   std::size_t ions_;
   bool is_complete_ = true;
+  std::vector<bool> held_;           // by ion; empty: none is
   std::vector<double> error_;        // ions x ions: of the cheapest way
   std::vector<std::uint32_t> next_;  // ions x ions: next ion on the way from a to b
 };

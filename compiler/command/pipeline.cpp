@@ -3,6 +3,9 @@
 
 #include <fmt/format.h>
 
+#include <algorithm>
+
+#include "circuit/physical.h"
 #include "command/clock.h"
 #include "language/language.h"
 #include "output/native.h"
@@ -25,7 +28,9 @@ PassContext context_for(const Settings& settings, const Circuit& source, const T
   context.tolerance = settings.tolerance;
   context.seed = settings.seed;
   context.threads = settings.thread_count();
-  if (target.ions > source.source_qubits) context.spare_wires = target.ions - source.source_qubits;
+  const auto reached = static_cast<std::uint32_t>(std::count_if(
+      target.ion.begin(), target.ion.end(), [](const IonFigures& ion) { return ion.addressed; }));
+  if (reached > source.source_qubits) context.spare_wires = reached - source.source_qubits;
   std::optional<double> spend = settings.spend;
   if (!spend && settings.effort == Effort::deep) spend = deep_seconds;
   if (spend) {
@@ -63,9 +68,8 @@ Compiled Result::facts() const {
           rehearsal ? &*rehearsal : nullptr};
 }
 
-Target target_for(const Settings& settings, std::uint32_t qubits,
-                  const std::function<void(double)>& progress) {
-  if (settings.target.empty()) return typical(std::max(qubits, 1u));
+Target target_for(const Settings& settings, std::uint32_t ions, const std::function<void(double)>& progress) {
+  if (settings.target.empty()) return typical(std::max(ions, 1u));
   return read_target(settings.target, static_cast<int>(settings.thread_count()), progress);
 }
 
@@ -101,7 +105,7 @@ Result compile(const std::string& path, const Settings& settings, Progress& prog
   };
 
   timed("target", "reading the machine", [&] {
-    result.target = target_for(settings, source.source_qubits, [&](double share) { progress.share(share); });
+    result.target = target_for(settings, ions_wanted(source), [&](double share) { progress.share(share); });
   });
   Circuit lowered;
   timed("improve", "improving",

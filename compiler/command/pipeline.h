@@ -38,8 +38,8 @@ struct Result {
   Compiled facts() const;
 };
 
-/// The target named by the settings, or a typical one with an ion for each of `qubits`.
-Target target_for(const Settings& settings, std::uint32_t qubits,
+/// The target named by the settings, or a typical one of `ions` ions.
+Target target_for(const Settings& settings, std::uint32_t ions,
                   const std::function<void(double)>& progress = {});
 
 /// Runs the compiled program in simulation with the target's errors; see targets/rehearse.h.

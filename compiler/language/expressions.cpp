@@ -531,15 +531,21 @@ std::vector<std::uint32_t> Reader::indices(const SyntaxExpression& item, std::ui
 
 Symbol& Reader::hardware_qubit(const SyntaxExpression& expression) {
   if (capture_ != nullptr) fail(expression.at, "a gate acts on its own qubits only, not on physical ones");
-  Symbol* known = scopes_.find_anywhere(expression.text);
+  const auto ion = Integer::parsed(std::string_view(expression.text).substr(1), 10).small();
+  if (!ion || *ion >= most_qubits) {
+    fail(expression.at, fmt::format("no machine has an ion {}: physical qubits are $0 to ${}",
+                                    expression.text.substr(1), most_qubits - 1));
+  }
+  const std::string name = fmt::format("${}", *ion);  // $01 is $1
+  Symbol* known = scopes_.find_anywhere(name);
   if (known != nullptr) return *known;
   Symbol symbol;
   symbol.kind = Symbol::Kind::qubits;
-  symbol.name = expression.text;
+  symbol.name = name;
   symbol.at = expression.at;
   symbol.is_scalar = true;
   symbol.wires = {circuit_.wires};
-  add_register(circuit_, expression.text, 1, true);
+  add_register(circuit_, name, 1, true);
   hardware_.push_back(std::make_unique<Symbol>(std::move(symbol)));
   return scopes_.add_everywhere(*hardware_.back());
 }

@@ -9,7 +9,6 @@ namespace isinglass {
 
 namespace {
 
-constexpr std::uint32_t most_qubits = 1'000'000;
 constexpr std::uint32_t most_flat_bits = 1u << 24;
 
 template <class... Alternatives>

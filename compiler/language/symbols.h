@@ -15,6 +15,7 @@
 namespace isinglass {
 
 inline constexpr std::uint32_t no_variable = 0xffffffffu;
+inline constexpr std::uint32_t most_qubits = 1'000'000;  // of a program, and of the machines it may name
 
 struct Symbol;
 

@@ -90,6 +90,10 @@ TEST_CASE("a target that is too small") {
   expect_fault(heading + "qubit[6] q;\nx q;\n", 4, "", "6", {"--target", tree_path("targets/wherry-5.toml")});
 }
 
+TEST_CASE("a physical qubit that the machine does not have") {
+  expect_fault(heading + "x $5;\n", 4, "", "$5 is ion 5", {"--target", tree_path("targets/wherry-5.toml")});
+}
+
 TEST_CASE("an output that cannot be written") {
   const Folder folder;
   const std::string file = folder.write("source.qasm", bell);

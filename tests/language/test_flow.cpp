@@ -149,6 +149,9 @@ TEST_CASE("qubit indices: negative ones, ranges as they are written, sets") {
   CHECK(wires_of("x q[6:];") == "6 7");
   CHECK(wires_of("let r = q[0:2:6]; x r[1:2]; let s = r[{3, 0}]; x s;") == "2 4 6 0");
   CHECK(wires_of("x $0; x $3; x $0;") == "9 10 9");
+  CHECK(wires_of("def f() { x $7; } f(); x $07; x $999999;") == "9 9 10");
+  CHECK(errors_in("x $1000000;").size() == 1);
+  CHECK(errors_in("x $99999999999999999999;").size() == 1);
   CHECK(errors_in("x q[0:-1];").size() == 1);  // empty as it is written
   CHECK(errors_in("x q[-1:-3];").size() == 1);
   CHECK(errors_in("x q[2:4];").size() == 1);

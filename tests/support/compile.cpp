@@ -3,6 +3,7 @@
 
 #include <stdexcept>
 
+#include "circuit/physical.h"
 #include "language/language.h"
 #include "output/native.h"
 #include "targets/target.h"
@@ -24,7 +25,7 @@ Compiled compile(const std::string& source, PassContext context, std::uint32_t s
   context.spare_wires = spare;
   result.promise = context.promise;
   result.optimized = optimize(result.source, context);
-  const Target target = typical(result.source.source_qubits + spare);
+  const Target target = typical(ions_wanted(result.source) + spare);
   result.placed = place(result.optimized, target);
   result.text = native_program(result.placed, {"test.qasm", target.name});
   return result;

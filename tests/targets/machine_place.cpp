@@ -6,6 +6,8 @@
 #include <numeric>
 
 #include "circuit/message.h"
+#include "circuit/physical.h"
+#include "passes/optimize.h"
 #include "support/random_circuits.h"
 #include "support/simulator.h"
 #include "targets/place.h"
@@ -234,4 +236,100 @@ TEST_CASE("two islands: what fits on one of them is put there") {
   const Placed placed = place(circuit, target);
   CHECK(placed.moves == 0);
   CHECK(all_reachable(placed, target));
+}
+
+// Physical qubits.
+
+namespace {
+
+/// Its qubits become physical ones: wire w is `$ions[w]`; those beyond the list stay free.
+void pin(Circuit& circuit, const std::vector<std::uint32_t>& ions) {
+  circuit.registers.clear();
+  for (std::uint32_t w = 0; w < circuit.wires; ++w) {
+    const bool is_pinned = w < ions.size();
+    circuit.registers.push_back(
+        {is_pinned ? fmt::format("${}", ions[w]) : fmt::format("free{}", w), w, 1, true});
+  }
+}
+
+}  // namespace
+
+TEST_CASE("physical qubits start and end on their ions, whatever machine, passes and movement") {
+  Random random(23);
+  int moved = 0;
+  for (int round = 0; round < 200; ++round) {
+    const int qubits = random.between(2, 4);
+    Circuit source = support::random_circuit(random, {qubits, 14, 1, support::Family::any});
+    const std::uint32_t ions = 5;
+    auto pinned = random.distinct(random.between(1, qubits), ions);
+    pin(source, pinned);
+    source.body().push_back(source.make(Kind::swap, {0, 1}));
+    Target target = typical(ions);
+    const int kind = random.below(3);
+    if (kind == 1) target.pair(0, 1).slope.value = 1e-4;  // worth sitting on
+    if (kind == 2) {                                      // all but one pair of pinned ions
+      pinned.resize(1);
+      pin(source, pinned);
+      reach_only_neighbours(target);
+      target.pair(0, 4).reachable = true;
+    }
+    PassContext context;
+    context.effort = random.chance(0.5) ? Effort::quick : Effort::steady;
+    const Placed placed = place(optimize(source, context), target, {.seed = random.bits()});
+    CHECK(all_reachable(placed, target));
+    moved += placed.moves > 0 ? 1 : 0;
+    for (std::uint32_t w = 0; w < pinned.size(); ++w) {
+      CHECK(placed.start[w] == pinned[w]);
+      CHECK(placed.circuit.end_wire[w] == pinned[w]);
+    }
+    CHECK(support::distance(source, on_source_wires(placed)) < 1e-8);
+  }
+  CHECK(moved > 10);
+}
+
+TEST_CASE("others move around a physical qubit, which does not move") {
+  // 0 - 1 - 2 - 3 in a ring with 4; $2 stays, so that the way from 1 to 3 leads over 0 and 4.
+  Target target = typical(5);
+  reach_only_neighbours(target);
+  target.pair(0, 4).reachable = true;
+  Circuit circuit;
+  add_register(circuit, "q", 4);
+  pin(circuit, {2});
+  for (const auto& [a, b] : {std::pair(1u, 2u), std::pair(2u, 3u), std::pair(1u, 3u), std::pair(0u, 1u),
+                             std::pair(0u, 2u), std::pair(0u, 3u)}) {
+    circuit.body().push_back(circuit.make(Kind::xx, {a, b}, {{0.4}, {0}, {0}}));
+  }
+  const Placed placed = place(circuit, target);
+  CHECK(placed.moves > 0);
+  CHECK(placed.start[0] == 2);
+  CHECK(placed.circuit.end_wire[0] == 2);
+  CHECK(support::distance(circuit, on_source_wires(placed)) < 1e-9);
+  // A swap is the only thing with three full interactions on one pair in a row: none touches ion 2.
+  const Block& body = placed.circuit.body();
+  for (const Operation& op : body) {
+    const bool touches = op.operand[0] == 2 || (op.kind == Kind::xx && op.operand[1] == 2);
+    if (op.kind == Kind::xx && touches) CHECK(op.value[0] == doctest::Approx(0.4));
+  }
+}
+
+TEST_CASE("physical qubits that a machine cannot give are refused") {
+  Circuit circuit;
+  add_register(circuit, "q", 2);
+  circuit.body().push_back(circuit.make(Kind::xx, {0, 1}, {{0.4}, {0}, {0}}, Origins::line(7)));
+  pin(circuit, {1, 5});
+  CHECK(ions_wanted(circuit) == 6);
+  CHECK(has_pinned(circuit));
+  CHECK(refusal(circuit, typical(5)) == "$5 is ion 5 of the machine, and typical-5 has ions 0 to 4 only");
+  Target dark = typical(6);
+  dark.ion[5].addressed = false;
+  CHECK(refusal(circuit, dark) == "$5 is ion 5 of the machine, which light does not reach on typical-6");
+  Target cut = typical(6);
+  reach_only_neighbours(cut);
+  CHECK(
+      refusal(circuit, cut) ==
+      "the machine typical-6 cannot bring ions 1 and 5 together ($1 and $5, line 7 of the source): this pair "
+      "is not reachable, and physical qubits do not move");
+  pin(circuit, {});
+  CHECK_FALSE(has_pinned(circuit));
+  CHECK(ions_wanted(circuit) == 2);
 }
