@@ -112,6 +112,10 @@ struct Counter {
 
 }  // namespace
 
+std::size_t two_qubit_gates(const Operation& op) {
+  return textbook(op).two;
+}
+
 Before before_of(const Circuit& source) {
   std::vector<std::size_t> depth(source.wires, 0);
   const Gates gates = Counter{source}.count(0, depth);

@@ -24,4 +24,7 @@ struct Before {
 /// counts 10^12 at most.
 Before before_of(const Circuit& source);
 
+/// How many of these CNOTs one operation counts.
+std::size_t two_qubit_gates(const Operation& op);
+
 }  // namespace isinglass

@@ -11,10 +11,12 @@
 
 namespace isinglass {
 
-SourceFile read_source(const std::string& path, bool quiet) {
+SourceFile read_source(const std::string& path, bool quiet, const std::function<GateTimes()>& times) {
   const Stopwatch watch;
   const std::string text = read_text(path);
-  Reading reading = read(path == "-" ? "<stdin>" : path, text);
+  ReadOptions options;
+  options.times = times;
+  Reading reading = read(path == "-" ? "<stdin>" : path, text, options);
   if (!reading.ok()) throw Failure(Exit::source_at_fault, std::move(reading.messages));
   if (!quiet) {
     for (const Message& message : reading.messages) std::cerr << printed(message);

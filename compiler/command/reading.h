@@ -1,9 +1,11 @@
 // A source file on the way in: its bytes, its circuit, and the messages said about it.
 #pragma once
 
+#include <functional>
 #include <string>
 
 #include "circuit/circuit.h"
+#include "language/language.h"
 
 namespace isinglass {
 
@@ -15,7 +17,8 @@ struct SourceFile {
 };
 
 /// Reads and understands one program; "-" is the standard input. Warnings go to stderr unless `quiet`.
-/// Throws Failure: file_trouble, or source_at_fault with all errors of the file.
-SourceFile read_source(const std::string& path, bool quiet);
+/// `times` tells the machine's figures where the program asks for lengths of gates; without it they are those
+/// of the typical machine. Throws Failure: file_trouble, or source_at_fault with all errors of the file.
+SourceFile read_source(const std::string& path, bool quiet, const std::function<GateTimes()>& times = {});
 
 }  // namespace isinglass

@@ -387,10 +387,10 @@ Angle Reader::wrapped_angle(Angle angle) {
 
 Angle Reader::angle_of(const Value& value, syntax::Span at) {
   if (value.is_known()) return at_place(at, [&] { return Angle{radians_of(value), 0}; });
-  if (value.is_affine()) return {value.real, value.form};
   const Base base = value.type.base;
   const bool is_angle = base == Base::real || base == Base::angle || base == Base::integer ||
                         base == Base::natural || base == Base::boolean || base == Base::bit;
+  if (value.is_affine() && is_angle) return {value.real, value.form};
   if (!is_angle) fail(at, fmt::format("an angle is expected here, not {}", text_of(value.type)));
   if (!value.runs) {
     if (value.expression->kind == Expression::Kind::input) {

@@ -6,6 +6,7 @@
 #pragma once
 
 #include <cstddef>
+#include <functional>
 #include <optional>
 #include <string>
 #include <string_view>
@@ -16,6 +17,15 @@
 
 namespace isinglass {
 
+/// What durationof() and boxes reckon with, in nanoseconds: the figures of the typical machine, or those of a
+/// target.
+struct GateTimes {
+  double pulse = 5'000;          // one gate on one qubit; changes of frame take no time
+  double interaction = 200'000;  // one xx
+  double measure = 120'000;
+  double reset = 20'000;
+};
+
 struct ReadOptions {
   /// More operations than this, after unrolling and inlining, is an error that says where it happened.
   std::size_t most_operations = 20'000'000;
@@ -25,9 +35,9 @@ struct ReadOptions {
   std::size_t most_depth = 256;
   /// Length of the time unit `dt`, which the standard leaves to the machine, in nanoseconds.
   double dt_ns = 1.0;
-  /// What durationof() reckons for one gate, in nanoseconds: without and with a second qubit.
-  double one_qubit_ns = 5'000;
-  double more_qubits_ns = 200'000;
+  /// Asked for once, and only where lengths of gates matter: machines may be slow to read. What it throws
+  /// comes out of read().
+  std::function<GateTimes()> times;
 };
 
 /// What reading gave. `circuit` is there exactly if no message is an error; it satisfies check_invariants().

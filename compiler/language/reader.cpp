@@ -89,6 +89,7 @@ Reading Reader::run(const std::string& file_name, std::string_view text) {
   } catch (const Overflow& overflow) {
     report(overflow.trouble);
   } catch (const Failure& failure) {
+    if (times_asked_ && !times_) throw;  // the caller's own trouble, not the source's
     messages_.insert(messages_.end(), failure.messages.begin(), failure.messages.end());
     ++errors_;
   } catch (const std::bad_alloc&) {
@@ -343,6 +344,7 @@ void Reader::finish_values() {
 void Reader::finish() {
   if (errors_ > 0) return;
   if (!has_ended_) finish_values();
+  solve_stretches();
   for (std::uint32_t block = 0; block < circuit_.blocks.size(); ++block) {
     Angle phase = phase_[block];
     if (phase.is_known()) phase.constant = wrapped(phase.constant);

@@ -23,6 +23,7 @@
 #include "language/language.h"
 #include "language/parser.h"
 #include "language/source.h"
+#include "language/stretch.h"
 #include "language/symbols.h"
 #include "language/value.h"
 
@@ -151,7 +152,7 @@ class Reader final : public StatementSink {
                                      const char* what);
   std::vector<std::uint32_t> range_indices(const SyntaxExpression& range, std::uint32_t size,
                                            const char* what);
-  Rules rules() { return {forms_, version_ == 20}; }
+  Rules rules() { return {forms_, &lengths_, version_ == 20}; }
 
   // Qubits (expressions.cpp).
   Qubits qubits_of(const SyntaxExpression& expression);
@@ -233,6 +234,7 @@ class Reader final : public StatementSink {
   void declare_variable(const syntax::Declaration& declaration, syntax::Span at);
   void declare_input(const syntax::Declaration& declaration, Symbol symbol, syntax::Span at);
   Value constant_value(const SyntaxExpression& expression, Type type);
+  Value new_stretch(double least);
   void initialize(Symbol symbol, const syntax::Declaration& declaration, syntax::Span at);
   void declare_alias(const syntax::Alias& alias);
   void measure(const syntax::Measurement& measurement, syntax::Span at);
@@ -259,7 +261,13 @@ class Reader final : public StatementSink {
   void delay(const syntax::Delay& delay, syntax::Span at);
   Ending box(const syntax::Box& box, syntax::Span at);
   Value duration_of(const SyntaxExpression& expression);
-  double length_of(std::uint32_t block, std::size_t first) const;
+  double length_of(std::uint32_t block, std::size_t first);
+  double time_of(const Operation& op);
+  const GateTimes& times();
+  bool can_stretch(const Operation& op) const { return op.kind == Kind::delay && op.form[0] != 0; }
+  std::vector<TimedPiece> pieces_of(std::uint32_t block, const std::vector<std::size_t>& which);
+  void add_spans_between_barriers(std::uint32_t block);
+  void solve_stretches();
 
   // Control flow (flow.cpp).
 
@@ -375,6 +383,15 @@ class Reader final : public StatementSink {
 
   std::vector<std::set<std::string>> check_levels_;  // names declared in code that is not run
   std::set<const syntax::Body*> checked_;            // of the statement being run
+  bool times_asked_ = false;
+  std::optional<GateTimes> times_;
+  Forms lengths_;  // over the stretches; the form of a delay until they are solved
+  std::vector<Stretch> stretches_;
+  std::vector<StretchedSpan> spans_;
+  std::vector<std::optional<double>>
+      boxes_;                         // their lengths; the barriers around a box carry its number from 1
+  std::vector<syntax::Span> delays_;  // that can stretch: their payload until they are solved
+
   bool has_ended_ = false;
   std::size_t emitted_ = 0;  // operations, statements and phases so far
   std::string gate_name_;    // of the gate being defined

@@ -372,6 +372,14 @@ Value Reader::constant_value(const SyntaxExpression& expression, Type type) {
   return assigned_value(value, type, expression.at);
 }
 
+/// A length of its own that is found at the end; at least so many nanoseconds.
+Value Reader::new_stretch(double least) {
+  Value value = of_real(least, {Base::stretch, 0});
+  value.form = lengths_.of_input(static_cast<std::uint32_t>(stretches_.size()));
+  stretches_.push_back({least});
+  return value;
+}
+
 /// Declares the variable, the value being evaluated before the name is seen.
 void Reader::initialize(Symbol symbol, const syntax::Declaration& declaration, syntax::Span at) {
   const bool native_bits = symbol.shape.empty() &&
@@ -384,6 +392,7 @@ void Reader::initialize(Symbol symbol, const syntax::Declaration& declaration, s
     return declared;
   };
   if (!declaration.value) {
+    if (symbol.type.base == Base::stretch) symbol.cells = {new_stretch(0)};
     announce();
     return;
   }
@@ -414,9 +423,16 @@ void Reader::initialize(Symbol symbol, const syntax::Declaration& declaration, s
       return;
     }
   }
-  const Value result = assigned_value(evaluated(value), symbol.type, value.at);
-  if (!result.is_known() && (symbol.type.base == Base::duration || symbol.type.base == Base::stretch)) {
-    fail(value.at, "a duration must be known while compiling");
+  Value result = assigned_value(evaluated(value), symbol.type, value.at);
+  const bool is_stretch = symbol.type.base == Base::stretch;
+  if (result.runs || (is_stretch && !result.is_known())) {
+    if (is_stretch || symbol.type.base == Base::duration) {
+      fail(value.at, "a duration must be known while compiling");
+    }
+  }
+  if (is_stretch) {
+    if (result.real < 0) fail(value.at, "a stretch cannot be negative");
+    result = new_stretch(result.real);
   }
   Symbol& declared = announce();
   write(whole(declared), result, at);
@@ -628,9 +644,8 @@ void Reader::assign(const syntax::Assignment& assignment, syntax::Span at) {
     const Value before = read(target, assignment.target.at);
     value = at_place(at, [&] { return binary(syntax::spelling(assignment.op), before, value, rules()); });
   }
-  if (target.type.base == Base::duration && !value.is_known()) {
-    fail(assignment.value.at, "a duration must be known while compiling");
-  }
+  if (target.type.base == Base::stretch)
+    fail(assignment.target.at, "a stretch is found by the compiler, not assigned");
   write(target, assigned_value(value, target.type, assignment.value.at), at);
 }
 

@@ -278,18 +278,19 @@ Value of_affine(Angle angle, Type type) {
 /// Sums and multiples of affine values stay affine; nothing else does.
 std::optional<Value> affine(std::string_view op, const Value& a, const Value& b, Type type,
                             const Rules& rules) {
-  if (rules.forms == nullptr || a.expression || b.expression) return std::nullopt;
-  if (type.base != Base::real && !is_free_angle(type)) return std::nullopt;
-  if (op == "+") return of_affine(rules.forms->sum(affine_of(a), affine_of(b)), type);
-  if (op == "-") return of_affine(rules.forms->difference(affine_of(a), affine_of(b)), type);
-  if (op == "*" && b.form == 0) return of_affine(rules.forms->scaled(affine_of(a), real_of(b)), type);
-  if (op == "*" && a.form == 0) return of_affine(rules.forms->scaled(affine_of(b), real_of(a)), type);
+  Forms* const forms = type.base == Base::duration ? rules.lengths : rules.forms;
+  if (forms == nullptr || a.expression || b.expression) return std::nullopt;
+  if (type.base != Base::real && type.base != Base::duration && !is_free_angle(type)) return std::nullopt;
+  if (op == "+") return of_affine(forms->sum(affine_of(a), affine_of(b)), type);
+  if (op == "-") return of_affine(forms->difference(affine_of(a), affine_of(b)), type);
+  if (op == "*" && b.form == 0) return of_affine(forms->scaled(affine_of(a), real_of(b)), type);
+  if (op == "*" && a.form == 0) return of_affine(forms->scaled(affine_of(b), real_of(a)), type);
   if (op == "/" && b.form == 0) {
     const double divisor = real_of(b);
     if (divisor == 0) refuse("division by zero");
     const Angle whole = affine_of(a);
     // The constant is divided and not multiplied by the reciprocal, as it is when nothing is symbolic.
-    return of_affine({whole.constant / divisor, rules.forms->scaled(whole.form, 1 / divisor)}, type);
+    return of_affine({whole.constant / divisor, forms->scaled(whole.form, 1 / divisor)}, type);
   }
   return std::nullopt;
 }
@@ -385,8 +386,15 @@ Value time_binary(std::string_view op, const Value& a, const Value& b, const Rul
     refuse_operands(op, a.type, b.type);
   }
   if (!a.is_known() || !b.is_known()) {
-    if (type.base == Base::duration) refuse("a duration must be known while compiling");
-    return postponed(op, a, b, type, rules);
+    if (type.base != Base::duration) {
+      refuse(
+          "the length of a stretch is found when the whole program is read; it can be used in delays only");
+    }
+    for (const Value* v : {&a, &b}) {
+      if (!v->is_known() && !is_time(v->type.base)) refuse("a duration must be known while compiling");
+    }
+    if (auto value = affine(op, a, b, type, rules)) return *value;
+    refuse("a duration must be known while compiling");
   }
   if (is_comparison(op)) return of_bool(ordered(op, order_of(a.real, b.real)));
   return real_arithmetic(op, real_of(a), real_of(b), type);
@@ -671,7 +679,9 @@ Value unary(std::string_view op, const Value& a, const Rules& rules) {
   Type type = a.type;
   if (base == Base::bit || base == Base::boolean) type = {Base::integer, 0};
   if (is_time(base)) type = {Base::duration, 0};
-  if (a.is_affine()) return of_affine(rules.forms->negated(affine_of(a)), type);
+  if (a.is_affine()) {
+    return of_affine((is_time(base) ? rules.lengths : rules.forms)->negated(affine_of(a)), type);
+  }
   if (!a.is_known()) return of_expression(operation("-", {expression_of(a, rules)}), type, a.runs);
   Value value = known(type);
   value.real = -a.real;
@@ -917,7 +927,7 @@ Value changed(const Value& a, Type to) {
 Value retyped(const Value& value, Type type, const Rules& rules, bool is_explicit) {
   if (value.type == type) return value;
   if (value.is_known()) return changed(value, type);
-  if (value.is_affine() && (type.base == Base::real || is_free_angle(type))) {
+  if (value.is_affine() && (type.base == Base::real || is_free_angle(type) || is_time(type.base))) {
     Value result = value;
     result.type = type;
     return result;
@@ -1077,6 +1087,8 @@ Expression affine_expression(const Value& value, const Rules& rules) {
 
 Expression expression_of(const Value& value, const Rules& rules) {
   if (value.expression) return *value.expression;
+  if (value.is_affine() && is_time(value.type.base))
+    refuse("the length of a stretch can be used in delays only");
   if (value.is_affine()) return affine_expression(value, rules);
   switch (value.type.base) {
     case Base::bit:

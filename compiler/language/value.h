@@ -58,8 +58,9 @@ struct Fault {
 /// (nanoseconds).
 struct Value {
   Type type;
-  std::uint32_t form = 0;  // float or unsized angle: + forms[form], affine in the inputs
-  bool runs = false;       // the expression names variables, so only the running program knows it
+  std::uint32_t form =
+      0;  // float or unsized angle: + forms[form], affine in the inputs; duration: + lengths[form]
+  bool runs = false;  // the expression names variables, so only the running program knows it
   Integer integer;
   double real = 0;
   double imaginary = 0;
@@ -82,8 +83,9 @@ bool truth_of(const Value& value);
 
 /// What operators need besides their operands.
 struct Rules {
-  Forms* forms = nullptr;  // where affine values live
-  bool version2 = false;   // OpenQASM 2: `/` divides, `^` is a power
+  Forms* forms = nullptr;    // where affine values live
+  Forms* lengths = nullptr;  // and durations that are affine in the stretches, which are solved at the end
+  bool version2 = false;     // OpenQASM 2: `/` divides, `^` is a power
 };
 
 /// op: "-", "~", "!".

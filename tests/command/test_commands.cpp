@@ -258,3 +258,27 @@ TEST_CASE("an extern is kept as a call, and its declaration with it") {
   CHECK(ran.out.find("extern weigh(bit[2]) -> bool;") != std::string::npos);
   CHECK(ran.out.find("weigh(c)") != std::string::npos);
 }
+
+TEST_CASE("durationof takes the figures of the target, and a missing target is the target's fault") {
+  const Folder folder;
+  const std::string source = folder.write(
+      "s.qasm",
+      "OPENQASM 3.1;\ninclude \"stdgates.inc\";\nqubit[2] q;\n"
+      "delay[durationof({ x q[0]; reset q[0]; })] q[1];\nstretch a;\nbox[1ms] { x q[0]; delay[a] q[0]; }\n");
+  const auto compiled = [&](const std::string& figures) {
+    const std::string target = folder.write(
+        "m.toml", "name = \"m\"\n[machine]\nions = 3\n[ion]\npulse_error = 1e-4\nmeasure_error = 1e-3\n" +
+                      figures + "[pair]\ninteraction_us = 300\nerror_floor = 1e-3\nerror_slope = 1e-3\n");
+    const Ran ran = run_program({"compile", source, "--quiet", "--target", target});
+    INFO(ran.err);
+    CHECK(ran.status == 0);
+    return ran.out;
+  };
+  const std::string typical = run_program({"compile", source, "--quiet"}).out;
+  CHECK(typical.find("delay[25us]") != std::string::npos);
+  CHECK(typical.find("delay[995us]") != std::string::npos);
+  const std::string slow = compiled("pulse_us = 8\nreset_us = 100\n");
+  CHECK(slow.find("delay[108us]") != std::string::npos);
+  CHECK(slow.find("delay[992us]") != std::string::npos);
+  CHECK(run_program({"compile", source, "--quiet", "--target", folder.path("none.toml")}).status == 5);
+}
