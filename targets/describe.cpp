@@ -27,6 +27,11 @@ Json rows_of(const Eigen::MatrixXd& matrix) {
   return rows;
 }
 
+constexpr const char* robust_names[] = {"none", "motion", "motion+angle"};  // by Robust
+
+constexpr const char* left_out =
+    "orders beyond Lamb-Dicke, noise within a gate faster than the drift, light noise, the axial motion";
+
 Json chain_json(const TrapMachine& machine) {
   const Chain& chain = machine.chain;
   return {{"name", machine.name},
@@ -38,7 +43,10 @@ Json chain_json(const TrapMachine& machine) {
           {"axial_khz", list_of(chain.axial_hz, 1e-3)},
           {"transverse_khz", list_of(chain.transverse_hz, 1e-3)},
           {"lamb_dicke", rows_of(machine.eta)},
-          {"critical_ratio", critical_ratio(chain.trap)}};
+          {"critical_ratio", critical_ratio(chain.trap)},
+          {"robust", robust_names[static_cast<std::size_t>(machine.limits.form.robust)]},
+          {"fully_robust", is_fully_robust(machine.limits.form, chain.ions())},
+          {"left_out", left_out}};
 }
 
 Json budget_json(const ErrorBudget& budget) {
@@ -185,12 +193,6 @@ std::string figures_text(const Json& pairs) {
   return text;
 }
 
-constexpr const char* left_out =
-    "\nErrors are probabilities (1 - Fe). Left out: orders beyond Lamb-Dicke, noise within a gate faster "
-    "than the drift,\n"
-    "light noise, the axial motion. Ultraviolet light and high voltage harm: site rules and trained staff "
-    "decide.\n";
-
 [[noreturn]] void unsuitable(std::string text) {
   throw Failure(Exit::usage, std::move(text));
 }
@@ -306,7 +308,11 @@ std::string answer(const TargetQuestion& question) {
     const std::string svg = plot_of(machine, lit);
     write_whole(question.plot, [&](std::ostream& out) { out << svg; });
   }
-  return question.as_json ? json.dump(2) + "\n" : text + left_out;
+  if (question.as_json) return json.dump(2) + "\n";
+  return text + fmt::format(
+                    "\nErrors are probabilities (1 - Fe). Left out: {}.\nUltraviolet light and high voltage "
+                    "harm: site rules and trained staff decide.\n",
+                    left_out);
 }
 
 }  // namespace isinglass

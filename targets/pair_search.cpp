@@ -1,6 +1,6 @@
 // First a scan over detunings: at each one the kernels are built once and every pair asks for its pulse of
-// least power. Each pair remembers its few best detunings; there the peak limit (and the robust angle) are
-// imposed in full, best first. Pairs that mirror each other in the chain share their pulse.
+// least power. Each pair looks closer around its few best valleys; there the peak limit (and the robust
+// angle) are imposed in full, best first. Pairs that mirror each other in the chain share their pulse.
 #include "targets/pair_search.h"
 
 #include <algorithm>
@@ -10,6 +10,7 @@
 #include <map>
 #include <mutex>
 #include <numbers>
+#include <numeric>
 #include <thread>
 
 namespace isinglass {
@@ -18,58 +19,53 @@ namespace {
 using std::numbers::pi;
 
 constexpr double full_chi = pi / 4;
-constexpr std::size_t kept = 4;           // candidates that a pair remembers
-constexpr double points_per_width = 4;    // of the scan, in units of 1 / duration
-constexpr double margin_in_widths = 2.5;  // scanned beyond the outermost modes
+constexpr double margin_in_widths = 2.5;  // scanned beyond the outermost modes; a width is 1 / duration
+constexpr double points_per_width = 16;   // of the grid of detunings
+constexpr std::size_t valleys_kept = 4;   // where a pair looks closer
 
-struct Candidate {
-  std::size_t point = 0;  // of the scan
-  double score = 0;       // estimated error: a lower bound until the limits are imposed
-  double peak = 0;
-};
-
-bool better(const Candidate& a, const Candidate& b) {
-  return a.score != b.score ? a.score < b.score : a.point < b.point;
+// All pairs look at every so many points of the grid first: at all of them where that is cheap.
+std::size_t first_stride(int ions) {
+  return ions <= 12 ? 1 : ions <= 24 ? 2 : 4;
 }
 
-void remember(std::vector<Candidate>& list, const Candidate& candidate) {
-  list.insert(std::upper_bound(list.begin(), list.end(), candidate, better), candidate);
-  if (list.size() > kept) list.pop_back();
-}
+constexpr float unseen = std::numeric_limits<float>::quiet_NaN();
+constexpr float out_of_reach = std::numeric_limits<float>::infinity();
 
-// What one pair has seen in a scan.
-struct Seen {
-  double least_rms = std::numeric_limits<double>::infinity();
-  std::vector<Candidate> any;     // reach the angle with an rms within the peak limit
-  std::vector<Candidate> within;  // of those, whose least-power pulse keeps the limit already
-  void merge(const Seen& other) {
-    least_rms = std::min(least_rms, other.least_rms);
-    for (const Candidate& c : other.any) remember(any, c);
-    for (const Candidate& c : other.within) remember(within, c);
-  }
-  // Best first, each once.
-  std::vector<Candidate> all() const {
-    std::vector<Candidate> list = any;
-    for (const Candidate& c : within) {
-      const bool known =
-          std::any_of(any.begin(), any.end(), [&](const Candidate& d) { return d.point == c.point; });
-      if (!known) list.push_back(c);
-    }
-    std::sort(list.begin(), list.end(), better);
-    return list;
-  }
+// What a pair sees at one detuning: its pulse of least power.
+struct Look {
+  float rms = unseen;          // Hz
+  float peak = out_of_reach;   // Hz
+  float score = out_of_reach;  // estimated error: a lower bound until the limits are imposed
 };
 
-// Runs work(k, thread) for k = 0 to count - 1 on several threads.
+// The grid points where `value` of what was seen has its lowest valleys, at most `count`.
+template <typename Value>
+std::vector<std::size_t> valleys(const std::vector<Look>& looks, std::size_t count, const Value& value) {
+  std::vector<std::pair<float, std::size_t>> seen, low;
+  for (std::size_t p = 0; p < looks.size(); ++p)
+    if (!std::isnan(looks[p].rms)) seen.emplace_back(value(looks[p]), p);
+  for (std::size_t k = 0; k < seen.size(); ++k) {
+    const float left = k == 0 ? out_of_reach : seen[k - 1].first;
+    const float right = k + 1 == seen.size() ? out_of_reach : seen[k + 1].first;
+    if (seen[k].first < out_of_reach && seen[k].first <= left && seen[k].first <= right)
+      low.push_back(seen[k]);
+  }
+  std::sort(low.begin(), low.end());
+  std::vector<std::size_t> points;
+  for (std::size_t k = 0; k < std::min(count, low.size()); ++k) points.push_back(low[k].second);
+  return points;
+}
+
+// Runs work(k) for k = 0 to count - 1 on several threads.
 template <typename Work>
 void in_parallel(std::size_t count, int threads, const Work& work) {
   std::atomic<std::size_t> next{0};
-  const auto run = [&](std::size_t thread) {
-    for (std::size_t k = next++; k < count; k = next++) work(k, thread);
+  const auto run = [&] {
+    for (std::size_t k = next++; k < count; k = next++) work(k);
   };
   std::vector<std::thread> others;
-  for (int t = 1; t < threads; ++t) others.emplace_back(run, static_cast<std::size_t>(t));
-  run(0);
+  for (int t = 1; t < threads; ++t) others.emplace_back(run);
+  run();
   for (std::thread& other : others) other.join();
 }
 
@@ -91,10 +87,13 @@ class Search {
       std::vector<std::size_t> open;
       for (std::size_t k = 0; k < pairs_.size(); ++k)
         if (!found_.light[k]) open.push_back(k);
-      base_ = double(d) / double(limits_.durations.size());
+      share_ = 1 / double(limits_.durations.size());
+      base_ = double(d) * share_;
       if (!open.empty()) try_duration(limits_.durations[d], open);
     }
-    report(1, 1);
+    base_ = 0;
+    share_ = 1;
+    report(1);
     return std::move(found_);
   }
 
@@ -104,7 +103,7 @@ class Search {
     return eta_.row(a).cwiseProduct(eta_.row(b)).transpose();
   }
 
-  std::vector<double> scan_points(double duration) const {
+  std::vector<double> grid_of(double duration) const {
     if (limits_.detuning) return {*limits_.detuning};
     const double step = 1 / (points_per_width * duration);
     const double low = modes_[0] - margin_in_widths / duration;
@@ -134,71 +133,131 @@ class Search {
     return sum;
   }
 
-  void look(const PulseSpace& space, std::size_t point, std::size_t pair, Seen& seen) const {
+  Look look(const PulseSpace& space, std::size_t pair) const {
     PulseSpace::Best best = space.strongest_unchecked(weight(pair));
-    if (best.chi == 0) return;
+    if (best.chi == 0) return {out_of_reach};
     best.y *= std::sqrt(full_chi / std::abs(best.chi));
-    seen.least_rms = std::min(seen.least_rms, best.y.norm() / (2 * pi));
-    if (best.y.norm() > 2 * pi * limits_.peak_hz) return;
+    Look seen{float(best.y.norm() / (2 * pi))};
+    if (best.y.norm() > 2 * pi * limits_.peak_hz) return seen;
     const Pulse pulse = space.pulse(best.y);
-    const Candidate candidate{point, score(space, pair, best.y, pulse), pulse.peak()};
-    remember(seen.any, candidate);
-    if (candidate.peak <= limits_.peak_hz) remember(seen.within, candidate);
+    seen.peak = float(pulse.peak());
+    seen.score = float(score(space, pair, best.y, pulse));
+    return seen;
+  }
+
+  // One duration: its grid of detunings, the pairs that still have no light, and what each has seen.
+  struct Scan {
+    double duration = 0;
+    std::vector<double> grid;
+    std::vector<std::size_t> open;
+    std::vector<std::vector<Look>> looks;  // a row a pair, a column a grid point
+  };
+  // Which pairs (places in Scan::open) have work at which grid points.
+  using Work = std::map<std::size_t, std::vector<std::size_t>>;
+
+  // Where a pair may find its best pulse: valleys of the score, of the score among pulses that keep the peak
+  // limit already, and of the peak; best first.
+  std::vector<std::size_t> promising(const std::vector<Look>& looks) const {
+    const auto score = [](const Look& seen) { return seen.score; };
+    const auto score_within = [&](const Look& seen) {
+      return seen.peak <= limits_.peak_hz ? seen.score : out_of_reach;
+    };
+    const auto peak = [](const Look& seen) { return seen.peak; };
+    std::vector<std::size_t> points = valleys(looks, valleys_kept, score);
+    for (const auto& more : {valleys(looks, valleys_kept, score_within), valleys(looks, valleys_kept, peak)})
+      points.insert(points.end(), more.begin(), more.end());
+    std::sort(points.begin(), points.end());
+    points.erase(std::unique(points.begin(), points.end()), points.end());
+    std::stable_sort(points.begin(), points.end(),
+                     [&](std::size_t p, std::size_t q) { return looks[p].score < looks[q].score; });
+    return points;
+  }
+
+  // Builds the kernels of each grid point once and calls act(space, k, point) for the pairs that want it. The
+  // progress goes from `from` to `to`.
+  template <typename Act>
+  void at_points(const Scan& scan, const Work& work, double from, double to, const Act& act) {
+    const std::vector<Work::value_type> list(work.begin(), work.end());
+    std::atomic<std::size_t> done{0};
+    in_parallel(list.size(), threads_, [&](std::size_t w) {
+      const auto& [point, pairs] = list[w];
+      const PulseSpace space(modes_, limits_.form, scan.duration, scan.grid[point]);
+      for (const std::size_t k : pairs) act(space, k, point);
+      report(from + (to - from) * double(++done) / double(list.size()));
+    });
   }
 
   void try_duration(double duration, const std::vector<std::size_t>& open) {
-    const std::vector<double> points = scan_points(duration);
-    std::vector<std::vector<Seen>> seen(static_cast<std::size_t>(threads_), std::vector<Seen>(open.size()));
-    std::atomic<std::size_t> done{0};
-    in_parallel(points.size(), threads_, [&](std::size_t point, std::size_t thread) {
-      const PulseSpace space(modes_, limits_.form, duration, points[point]);
-      for (std::size_t k = 0; k < open.size(); ++k) look(space, point, open[k], seen[thread][k]);
-      report(0.7 * double(++done), double(points.size()));
-    });
-    for (std::size_t t = 1; t < seen.size(); ++t)
-      for (std::size_t k = 0; k < open.size(); ++k) seen[0][k].merge(seen[t][k]);
-    for (std::size_t k = 0; k < open.size(); ++k)
-      found_.least_rms_hz =
-          k == 0 ? seen[0][k].least_rms : std::min(found_.least_rms_hz, seen[0][k].least_rms);
-    settle(duration, points, open, seen[0]);
+    Scan scan{duration, grid_of(duration), open, {}};
+    scan.looks.assign(open.size(), std::vector<Look>(scan.grid.size()));
+    const auto see = [&](const PulseSpace& space, std::size_t k, std::size_t point) {
+      scan.looks[k][point] = look(space, open[k]);
+    };
+    std::vector<std::size_t> everyone(open.size());
+    std::iota(everyone.begin(), everyone.end(), 0);
+    Work work;
+    const std::size_t first = first_stride(static_cast<int>(modes_.size()));
+    for (std::size_t point = 0; point < scan.grid.size(); point += first) work[point] = everyone;
+    at_points(scan, work, 0, 0.5, see);
+    for (std::size_t stride = first / 2; stride > 0; stride /= 2)
+      at_points(scan, closer(scan, stride), stride > 1 ? 0.5 : 0.6, stride > 1 ? 0.6 : 0.7, see);
+
+    found_.least_rms_hz = std::numeric_limits<double>::infinity();
+    for (const std::vector<Look>& looks : scan.looks)
+      for (const Look& seen : looks)
+        if (seen.rms < found_.least_rms_hz) found_.least_rms_hz = double(seen.rms);
+    settle(scan);
+  }
+
+  // The points on both sides of each pair's valleys that it has not seen yet.
+  Work closer(const Scan& scan, std::size_t stride) const {
+    Work work;
+    for (std::size_t k = 0; k < scan.open.size(); ++k) {
+      std::vector<std::size_t> points;
+      for (const std::size_t valley : promising(scan.looks[k])) {
+        if (valley >= stride) points.push_back(valley - stride);
+        points.push_back(valley + stride);
+      }
+      std::sort(points.begin(), points.end());
+      points.erase(std::unique(points.begin(), points.end()), points.end());
+      for (const std::size_t point : points)
+        if (point < scan.grid.size() && std::isnan(scan.looks[k][point].rms)) work[point].push_back(k);
+    }
+    return work;
   }
 
   // Imposes all limits, a rank of candidates at a time, until each pair has its pulse or no candidate is left
   // that could be better.
-  void settle(double duration, const std::vector<double>& points, const std::vector<std::size_t>& open,
-              const std::vector<Seen>& seen) {
+  void settle(const Scan& scan) {
+    constexpr std::size_t ranks = 3 * valleys_kept;
     struct State {
-      std::vector<Candidate> list;
+      std::vector<std::size_t> points;
       double score = 0;
       std::optional<LitPair> lit;
     };
-    std::vector<State> states(open.size());
-    for (std::size_t k = 0; k < open.size(); ++k) states[k].list = seen[k].all();
-    for (std::size_t rank = 0; rank < 2 * kept; ++rank) {
-      std::map<std::size_t, std::vector<std::size_t>> at_point;
-      for (std::size_t k = 0; k < open.size(); ++k) {
+    std::vector<State> states(scan.open.size());
+    for (std::size_t k = 0; k < states.size(); ++k) states[k].points = promising(scan.looks[k]);
+    for (std::size_t rank = 0; rank < ranks; ++rank) {
+      Work work;
+      for (std::size_t k = 0; k < states.size(); ++k) {
         const State& state = states[k];
-        if (rank < state.list.size() && (!state.lit || state.list[rank].score < state.score))
-          at_point[state.list[rank].point].push_back(k);
+        if (rank >= state.points.size()) continue;
+        const std::size_t point = state.points[rank];
+        if (!state.lit || double(scan.looks[k][point].score) < state.score) work[point].push_back(k);
       }
-      const std::vector<std::pair<std::size_t, std::vector<std::size_t>>> work(at_point.begin(),
-                                                                               at_point.end());
-      in_parallel(work.size(), threads_, [&](std::size_t w, std::size_t) {
-        const PulseSpace space(modes_, limits_.form, duration, points[work[w].first]);
-        for (const std::size_t k : work[w].second) {
-          const auto best = space.gentlest(weight(open[k]), full_chi, limits_.peak_hz);
-          if (!best) continue;
-          const Pulse pulse = space.pulse(best->y);
-          const double exact = score(space, open[k], best->y, pulse);
-          if (!states[k].lit || exact < states[k].score) {
-            states[k].score = exact;
-            states[k].lit = finished(open[k], pulse);
-          }
-        }
-      });
-      report(0.7 + 0.3 * double(rank + 1) / (2 * kept), 1);
+      at_points(scan, work, 0.7 + 0.3 * double(rank) / ranks, 0.7 + 0.3 * double(rank + 1) / ranks,
+                [&](const PulseSpace& space, std::size_t k, std::size_t) {
+                  const std::size_t pair = scan.open[k];
+                  const auto best = space.gentlest(weight(pair), full_chi, limits_.peak_hz);
+                  if (!best) return;
+                  const Pulse pulse = space.pulse(best->y);
+                  const double exact = score(space, pair, best->y, pulse);
+                  if (states[k].lit && exact >= states[k].score) return;
+                  states[k].score = exact;
+                  states[k].lit = finished(pair, pulse);
+                });
     }
-    for (std::size_t k = 0; k < open.size(); ++k) found_.light[open[k]] = states[k].lit;
+    for (std::size_t k = 0; k < states.size(); ++k) found_.light[scan.open[k]] = states[k].lit;
   }
 
   // Takes out what rounding has left in the angle, and finds which sign it has: theta = -2 chi.
@@ -208,10 +267,11 @@ class Search {
     return {pairs_[pair].first, pairs_[pair].second, chi > 0, pulse};
   }
 
-  void report(double part, double whole) {
+  // part: of the present duration, 0 to 1.
+  void report(double part) {
     if (!progress_) return;
     const std::lock_guard lock(progress_lock_);
-    progress_(std::min(1.0, base_ + part / whole / double(limits_.durations.size())));
+    progress_(std::min(1.0, base_ + part * share_));
   }
 
   const Eigen::VectorXd& modes_;
@@ -221,7 +281,8 @@ class Search {
   int threads_;
   const ReportProgress& progress_;
   std::mutex progress_lock_;
-  double base_ = 0;
+  double base_ = 0;   // done before the present duration, of all
+  double share_ = 1;  // the present duration's part
   std::vector<std::pair<int, int>> pairs_;
   FoundLight found_;
 };

@@ -103,6 +103,9 @@ class PulseSpace {
     Eigen::MatrixXd loop_slope;  // modes x dimension
   };
   Best strongest(const Eigen::VectorXd& weight, bool with_angle) const;
+  // Over both parts at once, y as it stands.
+  Eigen::MatrixXd joined_knots() const;
+  Eigen::MatrixXd joined_form(Eigen::MatrixXd Part::*table, const Eigen::VectorXd& weight) const;
   static Eigen::MatrixXd form_of(const Eigen::MatrixXd& table, const Eigen::VectorXd& weight);
 
   LightForm form_;

@@ -125,7 +125,7 @@ Noise read_noise_table(MachineFile& file) {
 
 // ---- keeping what was found ----
 
-constexpr std::string_view store_format = "isinglass-light 1";
+constexpr std::string_view store_format = "isinglass-light 2";
 
 // Where found light is kept: empty = nowhere.
 std::filesystem::path store() {

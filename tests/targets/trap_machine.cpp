@@ -210,8 +210,19 @@ TEST_CASE("the answer has the chain, a pair's light and the global drive") {
   CHECK(json["transverse_khz"][0].get<double>() < json["transverse_khz"][1].get<double>());
   CHECK(json["lamb_dicke"].size() == 4);
   CHECK(json["lamb_dicke"][0].size() == 4);
+  CHECK(json["robust"] == "none");
+  CHECK(json["fully_robust"] == true);
+  CHECK(json["left_out"].get<std::string>().find("Lamb-Dicke") != std::string::npos);
   CHECK(json["length_scale_um"].get<double>() ==
         doctest::Approx(4.351 * std::pow(500.0 / 420, 2.0 / 3)).epsilon(1e-4));
+
+  // Sixteen ramps leave eight even values: not enough for the paths of four modes and their slopes.
+  TargetQuestion partly = question;
+  partly.path = harbour.file(replaced(good, "segments = 20", "segments = 16\nrobust = \"motion\""));
+  json = nlohmann::json::parse(answer(partly));
+  CHECK(json["robust"] == "motion");
+  CHECK(json["fully_robust"] == false);
+  question.path = harbour.file(good);
 
   question.pair = {{0, 2}};
   question.theta = 0.4;

@@ -120,17 +120,15 @@ TEST_CASE("all paths close and every pair gets its angle") {
   struct Row {
     int ions;
     double duration;
-    std::optional<double> detuning;
     int reachable;
   };
-  for (const Row& row : {Row{2, 200e-6, {}, 1}, Row{5, 200e-6, {}, 10}, Row{10, 300e-6, {}, 45},
-                         Row{15, 500e-6, 2.905e6, 105}, Row{20, 500e-6, 2.9e6, 150}}) {
+  for (const Row& row : {Row{2, 200e-6, 1}, Row{5, 200e-6, 10}, Row{10, 300e-6, 45}, Row{15, 300e-6, 105},
+                         Row{20, 300e-6, 190}}) {
     CAPTURE(row.ions);
     const Chain chain = standard_chain(row.ions);
     const Eigen::MatrixXd eta = standard_eta(chain);
     for (const Shape shape : {Shape::ramps, Shape::steps}) {
-      const LightLimits limits{
-          {shape, std::max(4 * row.ions, 12), Robust::none}, {row.duration}, row.detuning, 800e3};
+      const LightLimits limits{{shape, std::max(4 * row.ions, 12), Robust::none}, {row.duration}, {}, 800e3};
       std::vector<std::pair<int, int>> pairs;
       for (int a = 0; a < row.ions; ++a)
         for (int b = a + 1; b < row.ions; ++b) pairs.emplace_back(a, b);
