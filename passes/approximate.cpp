@@ -47,7 +47,7 @@ Approximation approximated(Circuit circuit, const PassContext& context) {
   for (std::size_t k = 0; k < best_count; ++k) is_left_out[known[k]] = true;
   std::size_t i = 0;
   std::erase_if(body.items, [&](const Item&) { return is_left_out[i++]; });
-  Circuit shorter = native_form(form, context.promise);
+  Circuit shorter = native_form(std::move(form), context.promise);
   const bool is_gain =
       tally_of(shorter, context.cost).error + infidelity < tally_of(circuit, context.cost).error;
   if (!is_gain) return {std::move(circuit), 0};

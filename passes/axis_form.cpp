@@ -15,6 +15,7 @@
 #include <optional>
 #include <stdexcept>
 
+#include "circuit/long_list.h"
 #include "passes/rename_swaps.h"
 
 namespace isinglass {
@@ -450,8 +451,9 @@ class Writer {
                                               : static_cast<std::size_t>(item.wire_count());
       for (int side = 0; side < item.wire_count(); ++side) ++longest[item.wire[side]];
     }
-    poles_.assign(total, z_axis);
-    for (std::uint32_t w = 0; w < wires_; ++w) open[w].reserve(longest[w] + 1);
+    reserve_long(poles_, total);
+    poles_.resize(total);
+    for (std::uint32_t w = 0; w < wires_; ++w) reserve_long(open[w], longest[w] + 1);
     const auto close = [&](std::uint32_t wire, const Su2& frame, bool is_free) {
       Need need;
       need.what = Need::What::end;
@@ -638,7 +640,7 @@ AxisForm axis_form(const Circuit& circuit) {
     AxisBlock& block = form.blocks[b];
     block.is_body = b == 0;
     block.may_rename = b == 0 && may_rename;
-    block.items.reserve(circuit.blocks[b].size());
+    reserve_long(block.items, circuit.blocks[b].size());
     Reader reader(form, block);
     for (const Operation& op : circuit.blocks[b]) reader.read(circuit, op);
     reader.finish();
@@ -646,10 +648,10 @@ AxisForm axis_form(const Circuit& circuit) {
   return form;
 }
 
-Circuit native_form(const AxisForm& form, const Promise& promise) {
-  Circuit circuit = form.shell;
+Circuit native_form(AxisForm form, const Promise& promise) {
+  Circuit circuit = std::move(form.shell);
   for (std::size_t b = 0; b < form.blocks.size(); ++b) {
-    circuit.blocks[b].reserve(form.blocks[b].items.size() * 2);
+    reserve_long(circuit.blocks[b], form.blocks[b].items.size() * 2);
     Writer(form.blocks[b], circuit, circuit.blocks[b], promise).write();
   }
   return circuit;

@@ -82,7 +82,7 @@ AxisForm axis_form(const Circuit& circuit);
 
 /// Back to r, xx, rz in the normal form of optimize(), with the fewest r pulses that the axes allow: at most
 /// one between two other operations of a wire. Frames that the promise does not keep are dropped.
-Circuit native_form(const AxisForm& form, const Promise& promise);
+Circuit native_form(AxisForm form, const Promise& promise);
 
 /// `changed` where its estimated error is lower than that of `circuit`, else `circuit`: no pass makes worse.
 Circuit better_of(Circuit circuit, Circuit changed, const Cost& cost);

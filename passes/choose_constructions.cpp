@@ -19,7 +19,7 @@ namespace {
 constexpr std::size_t never = std::numeric_limits<std::size_t>::max();
 
 bool needs_construction(const Operation& op) {
-  return op.is_unitary() && op.operand_count > 2;
+  return op.operand_count > 2 && op.is_unitary();
 }
 
 /// Position of the first operation of the program's body on each wire.
@@ -136,6 +136,15 @@ Circuit choose_constructions(Circuit circuit, const PassContext& context) {
     break;
   }
   return circuit;
+}
+
+std::optional<Circuit> choose_constructions_beside(const Circuit& circuit, const PassContext& context) {
+  for (const Block& block : circuit.blocks) {
+    if (std::any_of(block.begin(), block.end(), needs_construction)) {
+      return choose_constructions(circuit, context);
+    }
+  }
+  return std::nullopt;
 }
 
 }  // namespace isinglass

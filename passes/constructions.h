@@ -29,6 +29,7 @@ void simplify(Circuit& circuit, const Operation& op, const IdleWires& idle, cons
 /// idle where it stands: clean ones are wires that are still in the |0> of the start and the target's spare
 /// ions, dirty ones all others.
 Circuit choose_constructions(Circuit circuit, const PassContext& context);
+std::optional<Circuit> choose_constructions_beside(const Circuit& circuit, const PassContext& context);
 
 /// How a Toffoli is written. The phases are those the form leaves besides the Toffoli itself.
 enum class Toffoli : std::uint8_t {

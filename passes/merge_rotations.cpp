@@ -123,17 +123,24 @@ class Merger {
 
 }  // namespace
 
-Circuit merge_rotations(Circuit circuit, const PassContext& context) {
+std::optional<Circuit> merge_rotations_beside(const Circuit& circuit, const PassContext& context) {
   AxisForm form = axis_form(circuit);
   Merger merger(form);
-  const int most_sweeps = context.effort == Effort::quick ? 1 : 20;
+  const bool is_quick = context.effort == Effort::quick;
+  const int most_sweeps = is_quick ? 1 : 20;
   for (AxisBlock& block : form.blocks) {
     for (int sweep = 0; sweep < most_sweeps && merger.sweep(block); ++sweep) {
     }
   }
+  Circuit merged = native_form(std::move(form), context.promise);
   // The quick order lowers with this pass: it wants the normal form, whatever it was given.
-  if (context.effort == Effort::quick) return native_form(form, context.promise);
-  return better_of(std::move(circuit), native_form(form, context.promise), context.cost);
+  if (is_quick || tally_of(merged, context.cost).error < tally_of(circuit, context.cost).error) return merged;
+  return std::nullopt;
+}
+
+Circuit merge_rotations(Circuit circuit, const PassContext& context) {
+  if (auto merged = merge_rotations_beside(circuit, context)) return std::move(*merged);
+  return circuit;
 }
 
 }  // namespace isinglass

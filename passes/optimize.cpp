@@ -6,6 +6,7 @@
 #include <chrono>
 #include <stdexcept>
 #include <thread>
+#include <utility>
 
 #include "passes/approximate.h"
 
@@ -101,7 +102,8 @@ class Candidate {
   }
 
   /// The first candidate runs whatever the time, so that there is a result; the others not once it is over.
-  void run(Circuit circuit, bool is_first) {
+  void run(const Circuit& source, bool is_first) {
+    source_ = &source;
     result_.order = order_->name;
     const auto start = Clock::now();
     const Clock::time_point deadline = context_.deadline;
@@ -109,18 +111,19 @@ class Candidate {
       if (!is_first && context_.out_of_time()) return;
       // A pass that searches until its deadline leaves a fifth of the time to those after it.
       if (deadline != Clock::time_point::max()) context_.deadline = start + (deadline - start) / 5 * 4;
-      step(name, circuit, false);
+      step(name, false);
       context_.deadline = deadline;
     }
+    result_.tally = rows_.back().after;
     if (!order_->on_native.empty()) {
-      result_.is_complete = improve(circuit);
-      if (context_.tolerance > 0) shorten(circuit);
-      step("lower", circuit, true);  // the normal form, whatever the last pass left
+      result_.is_complete = improve();
+      if (context_.tolerance > 0) shorten();
+      step("lower", true);  // the normal form, whatever the last pass left
+      result_.tally = rows_.back().after;
     }
+    if (source_) circuit_ = *std::exchange(source_, nullptr);
     result_.is_done = true;
-    result_.tally = tally_of(circuit, context_.cost);
     result_.seconds = seconds_since(start);
-    circuit_ = std::move(circuit);
   }
 
   const TraceResult& result() const { return result_; }
@@ -131,45 +134,61 @@ class Candidate {
  private:
   static constexpr int most_rounds = 20;
 
+  /// What the passes so far have made of the source.
+  const Circuit& now() const { return source_ ? *source_ : circuit_; }
+
   /// Returns false where time ran out first.
-  bool improve(Circuit& circuit) {
-    double error = tally_of(circuit, context_.cost).error;
+  bool improve() {
+    double error = tally_of(now(), context_.cost).error;
     for (int round = 0; round < most_rounds; ++round) {
       for (const std::string_view name : order_->on_native) {
         if (context_.out_of_time()) return false;
-        step(name, circuit, true);
+        step(name, true);
       }
-      const double now = tally_of(circuit, context_.cost).error;
-      if (now >= error * (1 - 1e-9)) return true;
-      error = now;
+      const double after = tally_of(now(), context_.cost).error;
+      if (after >= error * (1 - 1e-9)) return true;
+      error = after;
     }
     return true;
   }
 
   /// Spends the tolerance, once, and goes round again with what that has opened.
-  void shorten(Circuit& circuit) {
-    result_.infidelity = approximated(circuit, context_).infidelity;
-    step("approximate", circuit, true);
-    result_.is_complete = improve(circuit) && result_.is_complete;
+  void shorten() {
+    result_.infidelity = approximated(now(), context_).infidelity;
+    step("approximate", true);
+    result_.is_complete = improve() && result_.is_complete;
   }
 
-  void step(std::string_view name, Circuit& circuit, bool is_lowered) {
+  void step(std::string_view name, bool is_lowered) {
     TraceRow row;
     row.order = order_->name;
     row.pass = name;
     row.is_lowered = is_lowered;
-    row.gates_before = size_of(circuit);
-    if (is_lowered) row.before = tally_of(circuit, context_.cost);
+    row.gates_before = size_of(now());
+    if (is_lowered) row.before = tally_of(now(), context_.cost);
     const auto start = Clock::now();
-    circuit = pass_named(name).run(std::move(circuit), context_);
+    apply(pass_named(name));
     row.seconds = seconds_since(start);
-    row.gates_after = size_of(circuit);
-    if (is_lowered || name == order_->on_source.back()) row.after = tally_of(circuit, context_.cost);
+    row.gates_after = size_of(now());
+    if (is_lowered || name == order_->on_source.back()) row.after = tally_of(now(), context_.cost);
     rows_.push_back(std::move(row));
+  }
+
+  /// The source is copied only for a pass that cannot do without.
+  void apply(const Pass& pass) {
+    if (source_ && pass.run_beside) {
+      std::optional<Circuit> changed = pass.run_beside(*source_, context_);
+      if (!changed) return;
+      circuit_ = std::move(*changed);
+    } else {
+      circuit_ = pass.run(source_ ? *source_ : std::move(circuit_), context_);
+    }
+    source_ = nullptr;
   }
 
   const Order* order_;
   PassContext context_;
+  const Circuit* source_ = nullptr;  // until a pass has changed it: then circuit_ holds what it has become
   Circuit circuit_;
   std::vector<TraceRow> rows_;
   TraceResult result_;

@@ -3,6 +3,7 @@
 
 #include <chrono>
 #include <cstdint>
+#include <optional>
 #include <span>
 #include <string_view>
 
@@ -34,6 +35,9 @@ struct Pass {
   std::string_view name;      // "merge-rotations"
   std::string_view sentence;  // what it does, one line
   Circuit (*run)(Circuit circuit, const PassContext& context);
+  /// The same for a circuit that is still wanted, nullopt where nothing changes: spares the copy that `run`
+  /// would be given. Null: there is no such shortcut.
+  std::optional<Circuit> (*run_beside)(const Circuit& circuit, const PassContext& context) = nullptr;
 };
 
 /// The table of all passes, in the order of their rooms; defined in passes/table.cpp.

@@ -9,8 +9,10 @@
 // physical qubits is work. (Common practice.)
 #include "passes/rename_swaps.h"
 
+#include <algorithm>
 #include <utility>
 
+#include "circuit/long_list.h"
 #include "circuit/physical.h"
 
 namespace isinglass {
@@ -18,9 +20,13 @@ namespace isinglass {
 namespace {
 
 void rename(Circuit& circuit, Operation& op, const std::vector<std::uint32_t>& name) {
-  std::vector<std::uint32_t> operands(circuit.operands(op).begin(), circuit.operands(op).end());
-  for (std::uint32_t& wire : operands) wire = name[wire];
-  circuit.set_operands(op, operands);
+  if (op.operand_count <= 3) {
+    for (std::uint32_t k = 0; k < op.operand_count; ++k) op.operand[k] = name[op.operand[k]];
+  } else {
+    std::vector<std::uint32_t> operands(circuit.operands(op).begin(), circuit.operands(op).end());
+    for (std::uint32_t& wire : operands) wire = name[wire];
+    circuit.set_operands(op, operands);
+  }
   if (op.kind != Kind::branch) return;
   for (const Branch::Arm& arm : circuit.branches[op.payload].arms) {
     for (Operation& inner : circuit.blocks[arm.block]) rename(circuit, inner, name);
@@ -34,28 +40,34 @@ bool is_swap(const Operation& op) {
 }  // namespace
 
 bool may_end_early(const Circuit& circuit) {
-  for (const Block& block : circuit.blocks) {
-    for (const Operation& op : block) {
-      if (op.kind != Kind::classical) continue;
-      if (circuit.statements[op.payload].kind == ClassicalStatement::Kind::end_program) return true;
-    }
-  }
-  return false;
+  const auto ends = [](const ClassicalStatement& statement) {
+    return statement.kind == ClassicalStatement::Kind::end_program;
+  };
+  // Most programs have no such statement at all, and are not searched for where it stands.
+  if (std::none_of(circuit.statements.begin(), circuit.statements.end(), ends)) return false;
+  return std::any_of(circuit.blocks.begin(), circuit.blocks.end(), [&](const Block& block) {
+    return std::any_of(block.begin(), block.end(), [&](const Operation& op) {
+      return op.kind == Kind::classical && ends(circuit.statements[op.payload]);
+    });
+  });
 }
 
 bool may_rename_wires(const Circuit& circuit) {
   return !may_end_early(circuit) && !has_pinned(circuit);
 }
 
+std::optional<Circuit> rename_swaps_beside(const Circuit& circuit, const PassContext& context) {
+  const Block& body = circuit.body();
+  if (!may_rename_wires(circuit) || std::none_of(body.begin(), body.end(), is_swap)) return std::nullopt;
+  return rename_swaps(circuit, context);
+}
+
 Circuit rename_swaps(Circuit circuit, const PassContext&) {
   if (!may_rename_wires(circuit)) return circuit;
-  bool any = false;
-  for (const Operation& op : circuit.body()) any = any || is_swap(op);
-  if (!any) return circuit;
   std::vector<std::uint32_t> name(circuit.wires);
   for (std::uint32_t w = 0; w < circuit.wires; ++w) name[w] = w;
   Block kept;
-  kept.reserve(circuit.body().size());
+  reserve_long(kept, circuit.body().size());
   for (Operation op : circuit.body()) {
     if (is_swap(op)) {
       std::swap(name[op.operand[0]], name[op.operand[1]]);

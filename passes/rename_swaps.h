@@ -15,5 +15,6 @@ bool may_rename_wires(const Circuit& circuit);
 
 /// No swap without controls is left in the body; those of child blocks stay.
 Circuit rename_swaps(Circuit circuit, const PassContext& context);
+std::optional<Circuit> rename_swaps_beside(const Circuit& circuit, const PassContext& context);
 
 }  // namespace isinglass

@@ -323,7 +323,7 @@ Circuit search_blocks(Circuit circuit, const PassContext& context) {
       }
     }
   }
-  return better_of(std::move(circuit), native_form(form, context.promise), context.cost);
+  return better_of(std::move(circuit), native_form(std::move(form), context.promise), context.cost);
 }
 
 }  // namespace isinglass

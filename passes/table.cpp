@@ -24,7 +24,8 @@ namespace {
 
 constexpr Pass table[] = {
     // On source gates.
-    {"rename-swaps", "swaps of the program's body become new names of the wires", rename_swaps},
+    {"rename-swaps", "swaps of the program's body become new names of the wires", rename_swaps,
+     rename_swaps_beside},
     {"known-start", "controls that are known to hold 0 or 1 are resolved", known_start},
     {"bits-at-end", "NOTs and swaps before the final measurements are done on the bits", bits_at_end},
     {"merge-gates", "equal gates, controls included, add up or cancel through what commutes", merge_gates},
@@ -34,7 +35,7 @@ constexpr Pass table[] = {
     {"pair-toffolis", "Toffolis whose phases cancel against each other take fewer interactions",
      pair_toffolis},
     {"choose-constructions", "gates with several controls get their cheapest construction, with idle wires",
-     choose_constructions},
+     choose_constructions, choose_constructions_beside},
     // On gates with up to one control; what it rewrites comes out as r, xx and rz.
     {"rotation-networks", "Pauli rotations are synthesized anew with shared basis changes",
      synthesize_rotation_networks},
@@ -42,7 +43,7 @@ constexpr Pass table[] = {
     {"lower", "gates on two wires become r, xx and rz with the fewest pulses", lower},
     // On the machine's gates.
     {"merge-rotations", "interactions about the same axes add up through what shares their axes",
-     merge_rotations},
+     merge_rotations, merge_rotations_beside},
     {"merge-distant", "rotations about the same Pauli string add up through all that commutes with it",
      merge_distant_rotations},
     {"two-qubit-stretches", "what happens on one pair is done with the fewest interactions and least angle",

@@ -99,7 +99,7 @@ Circuit trim_end(Circuit circuit, const PassContext& context) {
     // The end frames stand after the last item: with everything taken there, no axis needs to be turned.
     Trimmer(form, context.promise).run(block);
   }
-  return better_of(std::move(circuit), native_form(form, context.promise), context.cost);
+  return better_of(std::move(circuit), native_form(std::move(form), context.promise), context.cost);
 }
 
 }  // namespace isinglass

@@ -147,7 +147,7 @@ class Trimmer {
 Circuit trim_start(Circuit circuit, const PassContext& context) {
   AxisForm form = axis_form(circuit);
   for (AxisBlock& block : form.blocks) Trimmer(form, context).run(block);
-  return better_of(std::move(circuit), native_form(form, context.promise), context.cost);
+  return better_of(std::move(circuit), native_form(std::move(form), context.promise), context.cost);
 }
 
 }  // namespace isinglass

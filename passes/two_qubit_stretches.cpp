@@ -92,7 +92,7 @@ Circuit resynthesized(Circuit circuit, const PassContext& context, bool may_rena
       resynthesis.run(block, direction);
     }
   }
-  return better_of(std::move(circuit), native_form(form, context.promise), context.cost);
+  return better_of(std::move(circuit), native_form(std::move(form), context.promise), context.cost);
 }
 
 }  // namespace

@@ -5,6 +5,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <functional>
 #include <limits>
 #include <numeric>
 #include <random>
@@ -332,23 +333,32 @@ void refuse_missing_abilities(const Circuit& circuit, const Target& target) {
   }
 }
 
+/// Whether it makes no difference which ion holds which wire.
+bool is_uniform(const Target& target) {
+  const auto differs = [](const auto& list) {
+    return std::adjacent_find(list.begin(), list.end(), std::not_equal_to<>()) != list.end();
+  };
+  const bool reaches_all = target.pairs.empty() ? target.every_pair.reachable : target.pairs.front().reachable;
+  return reaches_all && !differs(target.ion) && !differs(target.pairs);
+}
+
 }  // namespace
 
-Placed place(const Circuit& circuit, const Target& target, const PlaceOptions& options) {
+Placed place(Circuit circuit, const Target& target, const PlaceOptions& options) {
   const Seating seating = seating_of(circuit, target);
   refuse_missing_abilities(circuit, target);
+  if (target.pairs.empty() || is_uniform(target)) {  // everybody stays in the order of the source
+    return settled(std::move(circuit), target, seating.filled(seating.free));
+  }
   std::vector<std::uint32_t> held;
   for (const std::uint32_t ion : seating.pinned) {
     if (ion != no_ion) held.push_back(ion);
   }
   const Routes routes(target, held);
-  if (target.pairs.empty()) {  // all pairs alike: everybody stays in the order of the source
-    return routed(circuit, target, routes, seating.filled(seating.free));
-  }
   const std::vector<WireUse> uses = uses_of(circuit);
   const Objective objective(uses, target, routes);
   const auto list = assignments(uses, seating, objective, options);
-  return routes.is_complete() ? routed(circuit, target, routes, list.front())
+  return routes.is_complete() ? settled(std::move(circuit), target, list.front())
                               : best_routed(circuit, target, routes, list);
 }
 

@@ -23,9 +23,10 @@ struct Placed {
   std::size_t moves = 0;             // swaps that were inserted, three interactions each
 };
 
-/// Places a lowered circuit (r, xx, rz and what is not unitary). A physical qubit of the source, `$k`, sits
-/// on ion k and stays there. Throws Failure(target_cannot) that says what is missing: ions, pairs that no
-/// movement connects, reset, feed-forward.
-Placed place(const Circuit& circuit, const Target& target, const PlaceOptions& options = {});
+/// Places a lowered circuit (r, xx, rz and what is not unitary); on a machine whose ions and pairs are all
+/// alike every qubit stays where the source has it. A physical qubit of the source, `$k`, sits on ion k and
+/// stays there. Throws Failure(target_cannot) that says what is missing: ions, pairs that no movement
+/// connects, reset, feed-forward.
+Placed place(Circuit circuit, const Target& target, const PlaceOptions& options = {});
 
 }  // namespace isinglass

@@ -14,6 +14,7 @@
 #include <numeric>
 #include <optional>
 
+#include "circuit/long_list.h"
 #include "circuit/message.h"
 #include "circuit/physical.h"
 
@@ -66,6 +67,42 @@ std::vector<std::uint32_t> Routes::way(std::uint32_t a, std::uint32_t b) const {
 
 namespace {
 
+/// Renames the operands of one operation from wires to ions.
+void put_on_ions(Circuit& circuit, Operation& op, const std::vector<std::uint32_t>& ion_of) {
+  if (op.operand_count <= 3) {
+    for (std::uint32_t k = 0; k < op.operand_count; ++k) op.operand[k] = ion_of[op.operand[k]];
+    return;
+  }
+  std::vector<std::uint32_t> ions;
+  for (const std::uint32_t wire : circuit.operands(op)) ions.push_back(ion_of[wire]);
+  circuit.set_operands(op, ions);
+}
+
+/// The circuit as it is, and where its wires begin.
+Placed begun(Circuit circuit, const Target& target, const std::vector<std::uint32_t>& ion_of) {
+  Placed placed;
+  placed.in_use.assign(target.ions, false);
+  for (const std::uint32_t ion : ion_of) placed.in_use[ion] = true;
+  placed.start.assign(ion_of.begin(), ion_of.begin() + circuit.source_qubits);
+  placed.circuit = std::move(circuit);
+  return placed;
+}
+
+}  // namespace
+
+Placed settled(Circuit circuit, const Target& target, const std::vector<std::uint32_t>& ion_of) {
+  Placed placed = begun(std::move(circuit), target, ion_of);
+  Circuit& here = placed.circuit;
+  here.wires = target.ions;
+  for (Block& block : here.blocks) {
+    for (Operation& op : block) put_on_ions(here, op, ion_of);
+  }
+  for (std::uint32_t& wire : here.end_wire) wire = ion_of[wire];
+  return placed;
+}
+
+namespace {
+
 constexpr std::size_t look_ahead = 20;
 constexpr double fading = 0.8;
 
@@ -76,10 +113,7 @@ class Router {
       : source_(circuit), target_(target), routes_(routes), ion_of_(std::move(ion_of)) {
     wire_on_.assign(target.ions, nobody);
     for (std::uint32_t w = 0; w < ion_of_.size(); ++w) wire_on_[ion_of_[w]] = w;
-    placed_.circuit = circuit;
-    placed_.in_use.assign(target.ions, false);
-    for (const std::uint32_t ion : ion_of_) placed_.in_use[ion] = true;
-    for (std::uint32_t q = 0; q < circuit.source_qubits; ++q) placed_.start.push_back(ion_of_[q]);
+    placed_ = begun(circuit, target, ion_of_);
   }
 
   Placed run() {
@@ -102,13 +136,14 @@ class Router {
   void route(std::uint32_t block, bool may_end_elsewhere) {
     const Block& from = source_.blocks[block];
     out_.clear();
-    out_.reserve(from.size());
+    reserve_long(out_, from.size());
     std::vector<std::pair<std::uint32_t, std::uint32_t>> undo;
     for (std::size_t i = 0; i < from.size(); ++i) {
       Operation op = from[i];
       if (op.kind == Kind::xx) bring_together(from, i, undo);
       if (op.kind == Kind::branch || may_jump(op)) move_back(undo, op.origin);
-      put_on_ions(op);
+      put_on_ions(placed_.circuit, op, ion_of_);
+      if (op.kind == Kind::branch) claim_ions_of_arms(op);
       out_.push_back(op);
     }
     if (!may_end_elsewhere) move_back(undo, from.empty() ? Origin{} : from.back().origin);
@@ -118,17 +153,6 @@ class Router {
   bool may_jump(const Operation& op) const {
     return op.kind == Kind::classical &&
            source_.statements[op.payload].kind != ClassicalStatement::Kind::assign;
-  }
-
-  void put_on_ions(Operation& op) {
-    if (op.operand_count <= 3) {
-      for (std::uint32_t k = 0; k < op.operand_count; ++k) op.operand[k] = ion_of_[op.operand[k]];
-    } else {
-      std::vector<std::uint32_t> ions;
-      for (const std::uint32_t wire : source_.operands(op)) ions.push_back(ion_of_[wire]);
-      placed_.circuit.set_operands(op, ions);
-    }
-    if (op.kind == Kind::branch && !routes_.is_complete()) claim_ions_of_arms(op);
   }
 
   /// Movement within the arms of a branch touches ions that the source did not name.

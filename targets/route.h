@@ -38,6 +38,10 @@ class Routes {
   std::vector<std::uint32_t> next_;  // ions x ions: next ion on the way from a to b
 };
 
+/// The circuit on the ions of the target, wire w on ion_of[w] throughout: for machines on which nothing
+/// moves.
+Placed settled(Circuit circuit, const Target& target, const std::vector<std::uint32_t>& ion_of);
+
 /// The circuit on the ions of the target, beginning with ion_of[wire], with swaps where pairs are not
 /// reachable. Throws Failure(target_cannot) that names the pair when no way leads from one to the other.
 Placed routed(const Circuit& circuit, const Target& target, const Routes& routes,

@@ -24,6 +24,7 @@ struct Figure {
   double value = 0;
   double deviation = 0;
   std::uint32_t origin = 0;
+  bool operator==(const Figure&) const = default;
 };
 
 /// What happens on one ion alone.
@@ -39,6 +40,7 @@ struct IonFigures {
   double t2_us = 1e6;     // coherence time: an ion waiting for t dephases with (1 - exp(-t / T2)) / 2
   bool addressed = true;  // whether light reaches this ion; if not, it can hold no qubit
 
+  bool operator==(const IonFigures&) const = default;
   /// Probability of a phase flip while waiting for `us`.
   double idle_error(double us) const { return -0.5 * std::expm1(-us / t2_us); }
 };
@@ -55,6 +57,7 @@ struct PairFigures {
   Figure slope{4e-3};
   Figure square{0};
 
+  bool operator==(const PairFigures&) const = default;
   double error(double theta) const {
     const double s = std::abs(theta) / (std::numbers::pi / 2);
     return std::min(1.0, floor.value + root.value * std::sqrt(s) + slope.value * s + square.value * s * s);

@@ -142,7 +142,7 @@ Result compile(const std::string& path, const Settings& settings, Progress& prog
   timed("improve", "improving",
         [&] { lowered = optimize(source, context_for(settings, source, result.target), &result.trace); });
   timed("place", "placing", [&] {
-    result.placed = place(lowered, result.target, {.seed = settings.seed});
+    result.placed = place(std::move(lowered), result.target, {.seed = settings.seed});
     if (result.placed.moves == 0) return;
     // A swap that movement put beside interactions of its pair becomes one stretch with them.
     const PassContext context = context_for(settings, source, result.target);

@@ -2,7 +2,6 @@
 #include "language/reader.h"
 
 #include <fmt/format.h>
-#include <sys/mman.h>
 
 #include <algorithm>
 #include <cmath>
@@ -10,6 +9,8 @@
 #include <fstream>
 #include <iterator>
 #include <numbers>
+
+#include "circuit/long_list.h"
 
 namespace isinglass {
 
@@ -49,19 +50,6 @@ bool is_old(const syntax::Statement& statement) {
   return false;
 }
 
-/// Room for a long list in huge pages, where the system has them: the first touch of each small page would
-/// cost more than what is written to it.
-void reserve(Block& block, std::size_t operations) {
-  block.reserve(operations);
-#ifdef MADV_HUGEPAGE
-  constexpr std::size_t huge = std::size_t{1} << 21;
-  auto first = reinterpret_cast<std::uintptr_t>(block.data());
-  const std::uintptr_t end = first + operations * sizeof(Operation);
-  first = (first + huge - 1) / huge * huge;
-  if (end > first + 8 * huge) madvise(reinterpret_cast<void*>(first), end - first, MADV_HUGEPAGE);
-#endif
-}
-
 }  // namespace
 
 Reading read(const std::string& file_name, std::string_view text, const ReadOptions& options) {
@@ -81,7 +69,7 @@ Reading Reader::run(const std::string& file_name, std::string_view text) {
     // A flat file has one statement a semicolon, and a gate is rarely more than two operations; what is
     // reserved and never touched costs nothing.
     const auto semicolons = static_cast<std::size_t>(std::count(text.begin(), text.end(), ';'));
-    reserve(circuit_.body(), std::min(2 * semicolons, options_.most_operations));
+    reserve_long(circuit_.body(), std::min(2 * semicolons, options_.most_operations));
     read_statements(sources_, source, *this);
     if (version_ == 0) decide_version(31, {});
     if (!any_statement_ && errors_ == 0) report({{0, 1, 1, 1, source}, "the file holds no program", {}});

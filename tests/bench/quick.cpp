@@ -1,0 +1,123 @@
+// What `--effort quick` costs beside reading the same text, and how it grows: random circuits of 20 qubits,
+// 10^3 to 10^6 gates, on one thread. `quick` is everything between reading and writing that makes the program:
+// the passes and the placement on a typical machine; timing it (the schedule with its errors) stands beside
+// it, as it is the same whatever the effort. A row's figures are the least of its rounds, in microseconds a
+// source gate; `ratio` is quick over reading; `exponent` is the slope of the straight line through log(time
+// of quick) over log(gates) of the rows so far, least squares, `reading_exponent` the same of reading.
+//
+//   build/bench_quick
+#include <benchmark/benchmark.h>
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <chrono>
+#include <cmath>
+#include <random>
+
+#include "language/language.h"
+#include "passes/optimize.h"
+#include "targets/place.h"
+#include "targets/schedule.h"
+
+namespace {
+
+using namespace isinglass;
+
+constexpr int qubits = 20;
+
+/// Gates as circuits in circulation have them: half of them on two qubits.
+std::string random_text(std::int64_t gates) {
+  std::mt19937_64 random(7);
+  const auto below = [&](int limit) {
+    return static_cast<int>(random() % static_cast<std::uint64_t>(limit));
+  };
+  std::string text = fmt::format("OPENQASM 3.0;\ninclude \"stdgates.inc\";\nqubit[{}] q;\n", qubits);
+  for (std::int64_t i = 0; i < gates; ++i) {
+    const int a = below(qubits);
+    const int b = (a + 1 + below(qubits - 1)) % qubits;
+    switch (below(6)) {
+      case 0:
+        text += fmt::format("h q[{}];\n", a);
+        break;
+      case 1:
+        text += fmt::format("t q[{}];\n", a);
+        break;
+      case 2:
+        text += fmt::format("rz({}) q[{}];\n", below(1000) / 100.0, a);
+        break;
+      case 3:
+        text += fmt::format("cp(pi/{}) q[{}], q[{}];\n", 2 << below(5), a, b);
+        break;
+      default:
+        text += fmt::format("cx q[{}], q[{}];\n", a, b);
+    }
+  }
+  return text;
+}
+
+/// log(time) over log(gates) of the rows so far.
+class Growth {
+ public:
+  /// Adds a row and returns the slope of the best straight line; 0 for the first row.
+  double slope_with(double gates, double seconds) {
+    points_.emplace_back(std::log(gates), std::log(seconds));
+    double x = 0, y = 0;
+    for (const auto& [a, b] : points_) {
+      x += a / static_cast<double>(points_.size());
+      y += b / static_cast<double>(points_.size());
+    }
+    double up = 0, across = 0;
+    for (const auto& [a, b] : points_) {
+      up += (a - x) * (b - y);
+      across += (a - x) * (a - x);
+    }
+    return across == 0 ? 0 : up / across;
+  }
+
+ private:
+  std::vector<std::pair<double, double>> points_;
+};
+
+/// The least time of many.
+struct Least {
+  double seconds = 1e300;
+  template <typename Work>
+  auto of(const Work& work) {
+    const auto start = std::chrono::steady_clock::now();
+    auto result = work();
+    const std::chrono::duration<double> took = std::chrono::steady_clock::now() - start;
+    seconds = std::min(seconds, took.count());
+    return result;
+  }
+};
+
+void quick_beside_reading(benchmark::State& state) {
+  static Growth reading_grows, quick_grows;
+  const std::string text = random_text(state.range(0));
+  const auto gates = static_cast<double>(state.range(0));
+  const Target target = typical(qubits);
+  PassContext context;
+  context.effort = Effort::quick;
+  Least reading, passes, placing, timing;
+  for (auto _ : state) {
+    const Reading source = reading.of([&] { return read("bench", text); });
+    Circuit lowered = passes.of([&] { return optimize(*source.circuit, context); });
+    const Placed placed = placing.of([&] { return place(std::move(lowered), target); });
+    benchmark::DoNotOptimize(timing.of([&] { return schedule(placed, target, {}); }));
+  }
+  const double quick = passes.seconds + placing.seconds;
+  state.counters["reading_us"] = reading.seconds / gates * 1e6;
+  state.counters["passes_us"] = passes.seconds / gates * 1e6;
+  state.counters["placing_us"] = placing.seconds / gates * 1e6;
+  state.counters["timing_us"] = timing.seconds / gates * 1e6;
+  state.counters["ratio"] = quick / reading.seconds;
+  state.counters["exponent"] = quick_grows.slope_with(gates, quick);
+  state.counters["reading_exponent"] = reading_grows.slope_with(gates, reading.seconds);
+}
+
+BENCHMARK(quick_beside_reading)->Arg(1000)->Iterations(300)->Unit(benchmark::kMillisecond);
+BENCHMARK(quick_beside_reading)->Arg(10000)->Iterations(50)->Unit(benchmark::kMillisecond);
+BENCHMARK(quick_beside_reading)->Arg(100000)->Iterations(15)->Unit(benchmark::kMillisecond);
+BENCHMARK(quick_beside_reading)->Arg(1000000)->Iterations(5)->Unit(benchmark::kMillisecond);
+
+}  // namespace
