@@ -91,6 +91,16 @@ class Reader {
   }
 
  private:
+  /// rotation(axis, angle); equal angles come in runs, as gates of two wires are made of several.
+  Su2 turn(const Axis& axis, double angle) {
+    if (angle != angle_) {
+      angle_ = angle;
+      cosine_ = std::cos(angle / 2);
+      sine_ = std::sin(angle / 2);
+    }
+    return {cosine_, sine_ * axis.x(), sine_ * axis.y(), sine_ * axis.z()};
+  }
+
   void apply(std::uint32_t wire, const Su2& q) {
     if (!(q.x() == 0 && q.y() == 0)) settle(wire);
     frame_[wire] = q * frame_[wire];
@@ -98,7 +108,7 @@ class Reader {
 
   /// exp(-i angle/2 axis.sigma) with the axis as the gate sees it.
   void rotate(std::uint32_t wire, const Axis& axis, Angle angle) {
-    if (angle.is_known()) return apply(wire, rotation(axis, angle.constant));
+    if (angle.is_known()) return apply(wire, turn(axis, angle.constant));
     if (axis == z_axis) {
       apply(wire, rotation_z(angle.constant));
       phase_[wire] = form_.shell.forms.sum(phase_[wire], angle.form);
@@ -286,6 +296,7 @@ class Reader {
   std::vector<std::uint32_t> phase_;  // linear form of an rz after the frame that is not written yet
   std::vector<Origin> phase_origin_;
   Origin origin_;
+  double angle_ = 0, cosine_ = 1, sine_ = 0;  // of turn(), and of half of it
 };
 
 /// One thing that a wire's pole must suit: an item's axis, or the end of the stretch.
@@ -346,6 +357,7 @@ class PoleWalk {
         best = pole;
         next = reach;
       }
+      return reach;
     };
     next = first;
     if (need.what == Need::What::end) {
@@ -354,7 +366,8 @@ class PoleWalk {
     }
     // Of two opposite poles the nearer is taken unless only the other is what the end wants.
     const auto offer_both = [&](const Axis& axis) {
-      offer(axis.dot(old) < 0 ? Axis(-axis) : axis);
+      const std::size_t reach = offer(axis.dot(old) < 0 ? Axis(-axis) : axis);
+      if (reach == needs_.size() || needs_[reach].what != Need::What::end) return;  // the other does no better
       offer(axis.dot(old) < 0 ? axis : Axis(-axis));
     };
     if (need.what == Need::What::rotation) offer_both(need.axis);
@@ -366,10 +379,12 @@ class PoleWalk {
     }
     if (other < needs_.size() && !needs_[other].is_free) {
       const Axis& axis = needs_[other].axis;
-      if (needs_[other].what != Need::What::interaction) {
-        needs_[other].what == Need::What::end ? offer(axis) : offer_both(axis);
+      if (needs_[other].what == Need::What::end) {
+        offer(axis);
+      } else {
+        if (needs_[other].what == Need::What::rotation) offer_both(axis);
+        offer_both(need.axis.cross(axis).normalized());
       }
-      if (needs_[other].what != Need::What::end) offer_both(need.axis.cross(axis).normalized());
     }
     offer(nearest_perpendicular(need.axis, old));
     return *best;

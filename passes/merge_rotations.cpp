@@ -12,13 +12,69 @@
 #include "passes/merge_rotations.h"
 
 #include <algorithm>
-#include <unordered_map>
+#include <cstdint>
+#include <vector>
 
 #include "passes/stretches.h"
 
 namespace isinglass {
 
 namespace {
+
+/// The place of the first item of each key: linear probing, never a removal, so that nothing is allocated an
+/// item.
+class Homes {
+ public:
+  void clear() {
+    slots_.assign(std::max<std::size_t>(slots_.size(), 1024), {});
+    count_ = 0;
+  }
+  std::size_t size() const { return count_; }
+
+  /// The place under this key; `fresh` where there was none, which it is from then on. Keys are not 0.
+  std::size_t find_or_add(std::uint64_t key, std::size_t fresh) {
+    if (2 * count_ >= slots_.size()) resize(2 * slots_.size());
+    Slot& slot = slot_of(key);
+    if (slot.key == key) return slot.place;
+    slot = {key, fresh};
+    ++count_;
+    return fresh;
+  }
+
+  /// Drops what `is_closed` says will not be asked for again: called with the place.
+  template <typename IsClosed>
+  void forget(const IsClosed& is_closed) {
+    std::vector<Slot> old = std::move(slots_);
+    std::erase_if(old, [&](const Slot& slot) { return slot.key == 0 || is_closed(slot.key, slot.place); });
+    slots_.clear();
+    clear();
+    for (const Slot& slot : old) find_or_add(slot.key, slot.place);
+  }
+
+ private:
+  struct Slot {
+    std::uint64_t key = 0;
+    std::size_t place = 0;
+  };
+
+  Slot& slot_of(std::uint64_t key) {
+    constexpr std::uint64_t golden = 0x9e3779b97f4a7c15u;  // Knuth's multiplicative hashing
+    std::size_t at = (key * golden) >> 32 & (slots_.size() - 1);
+    while (slots_[at].key != 0 && slots_[at].key != key) at = (at + 1) & (slots_.size() - 1);
+    return slots_[at];
+  }
+
+  void resize(std::size_t slots) {
+    std::vector<Slot> old(slots);
+    old.swap(slots_);
+    for (const Slot& slot : old) {
+      if (slot.key != 0) slot_of(slot.key) = slot;
+    }
+  }
+
+  std::vector<Slot> slots_;  // their number is a power of 2
+  std::size_t count_ = 0;
+};
 
 class Merger {
  public:
@@ -42,11 +98,11 @@ class Merger {
       }
       pusher.arrive(item);
       forget_closed_runs(items);
-      const auto [place, is_first] = home_.try_emplace(key_of(item), kept);
-      if (is_first) {
+      const std::size_t home = home_.find_or_add(key_of(item), kept);
+      if (home == kept) {
         items[kept++] = item;
       } else {
-        add(items[place->second], item, pusher);
+        add(items[home], item, pusher);
       }
     }
     items.resize(kept);
@@ -81,11 +137,11 @@ class Merger {
   /// Keeps the table as small as the runs that are still open, so that it stays in the cache.
   void forget_closed_runs(const std::vector<Item>& items) {
     if (home_.size() < most_homes_) return;
-    std::erase_if(home_, [&](const auto& entry) {
-      const Item& item = items[entry.second];
+    home_.forget([&](std::uint64_t key, std::size_t place) {
+      const Item& item = items[place];
       for (int side = 0; side < item.wire_count(); ++side) {
         const std::uint64_t number = run_[item.wire[side]].number;
-        if (number != entry.first >> 32 && number != (entry.first & 0xffffffffu)) return true;
+        if (number != key >> 32 && number != (key & 0xffffffffu)) return true;
       }
       return false;
     });
@@ -116,7 +172,7 @@ class Merger {
 
   AxisForm& form_;
   std::vector<Run> run_;
-  std::unordered_map<std::uint64_t, std::size_t> home_;
+  Homes home_;
   std::size_t most_homes_ = 4096;
   std::uint32_t runs_ = 0;
 };
