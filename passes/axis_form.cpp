@@ -367,7 +367,8 @@ class PoleWalk {
     // Of two opposite poles the nearer is taken unless only the other is what the end wants.
     const auto offer_both = [&](const Axis& axis) {
       const std::size_t reach = offer(axis.dot(old) < 0 ? Axis(-axis) : axis);
-      if (reach == needs_.size() || needs_[reach].what != Need::What::end) return;  // the other does no better
+      if (reach == needs_.size() || needs_[reach].what != Need::What::end)
+        return;  // the other does no better
       offer(axis.dot(old) < 0 ? axis : Axis(-axis));
     };
     if (need.what == Need::What::rotation) offer_both(need.axis);

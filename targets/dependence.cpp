@@ -5,6 +5,8 @@
 #include <charconv>
 #include <optional>
 
+#include "circuit/long_list.h"
+
 namespace isinglass {
 
 namespace {
@@ -92,7 +94,7 @@ Dependences::Dependences(const Circuit& circuit, const Block& block) : predecess
     std::uint32_t to;
   };
   std::vector<Edge> edges;
-  edges.reserve(2 * block.size());
+  reserve_long(edges, 2 * block.size());
   const auto touch = [&](std::uint32_t thing, std::uint32_t op) {
     if (last[thing] != nobody && last[thing] != op) {
       edges.push_back({last[thing], op});
@@ -124,6 +126,7 @@ Dependences::Dependences(const Circuit& circuit, const Block& block) : predecess
   first_.assign(block.size() + 1, 0);
   for (const Edge& edge : edges) ++first_[edge.from + 1];
   for (std::size_t i = 0; i < block.size(); ++i) first_[i + 1] += first_[i];
+  reserve_long(follower_, edges.size());
   follower_.resize(edges.size());
   std::vector<std::size_t> next(first_.begin(), first_.end() - 1);
   for (const Edge& edge : edges) follower_[next[edge.from]++] = edge.to;

@@ -4,6 +4,7 @@
 #include <algorithm>
 #include <queue>
 
+#include "circuit/long_list.h"
 #include "targets/dependence.h"
 
 namespace isinglass {
@@ -93,9 +94,11 @@ class ListScheduler {
   ListScheduler(const Circuit& circuit, const Block& block, const Target& target,
                 const std::vector<double>& arm_us)
       : block_(block), target_(target), graph_(circuit, block), waits_for_(graph_.predecessors) {
+    reserve_long(times_.at, block.size());
     times_.at.assign(block.size(), 0);
-    times_.takes.reserve(block.size());
-    times_.order.reserve(block.size());
+    reserve_long(times_.takes, block.size());
+    reserve_long(times_.order, block.size());
+    reserve_long(urgency_, block.size());
     for (const Operation& op : block) times_.takes.push_back(duration(circuit, op, target, arm_us));
     urgency_ = times_.takes;
     for (std::size_t i = block.size(); i-- > 0;) {

@@ -338,7 +338,8 @@ bool is_uniform(const Target& target) {
   const auto differs = [](const auto& list) {
     return std::adjacent_find(list.begin(), list.end(), std::not_equal_to<>()) != list.end();
   };
-  const bool reaches_all = target.pairs.empty() ? target.every_pair.reachable : target.pairs.front().reachable;
+  const bool reaches_all =
+      target.pairs.empty() ? target.every_pair.reachable : target.pairs.front().reachable;
   return reaches_all && !differs(target.ion) && !differs(target.pairs);
 }
 

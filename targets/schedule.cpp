@@ -5,6 +5,7 @@
 #include <cmath>
 #include <unordered_set>
 
+#include "circuit/long_list.h"
 #include "targets/leaks.h"
 #include "targets/list_schedule.h"
 
@@ -70,6 +71,7 @@ class Estimator {
     Sums sums;
     std::vector<TimedOperation> waits;
     auto& list = timed_.blocks[block].operations;
+    reserve_long(waits, list.size());
     for (TimedOperation& entry : list) {
       if (entry.kind == TimedKind::prepare) {
         prepare(entry, ions, sums);
@@ -80,7 +82,7 @@ class Estimator {
     for (const std::uint32_t ion : kept) wait_until(end, ion, ions, sums, waits);
     std::stable_sort(waits.begin(), waits.end(), earlier);
     std::vector<TimedOperation> both;
-    both.reserve(list.size() + waits.size());
+    reserve_long(both, list.size() + waits.size());
     std::merge(list.begin(), list.end(), waits.begin(), waits.end(), std::back_inserter(both), earlier);
     timed_.blocks[block].operations = std::move(both);
     return sums;
@@ -347,7 +349,7 @@ Timed schedule(const Placed& placed, const Target& target, const Promise& promis
     if (b == 0 && promise.zero_start) delay_first_pulses(times, circuit, block, target);
     arm_us[b] = timed.blocks[b].takes = times.end;
     auto& list = timed.blocks[b].operations;
-    list.reserve(list.size() + block.size());
+    reserve_long(list, list.size() + block.size());
     for (const std::uint32_t op : times.order) list.push_back(entry_of(circuit, block, op, times));
   }
 

@@ -146,9 +146,12 @@ std::uint32_t add_bits(Circuit& circuit, std::string name, std::uint32_t bits, b
 }
 
 void check_invariants(const Circuit& circuit) {
-  const auto demand = [](bool holds, const std::string& rule) {
-    if (!holds) throw std::logic_error("broken circuit: " + rule);
+  const auto nowhere = [] { return std::string(); };
+  // Where an operation stands is written only for a rule that is broken: most hold, for millions of them.
+  const auto demand_at = [](bool holds, std::string_view rule, const auto& where) {
+    if (!holds) throw std::logic_error(fmt::format("broken circuit: {}{}", rule, where()));
   };
+  const auto demand = [&](bool holds, std::string_view rule) { demand_at(holds, rule, nowhere); };
   demand(circuit.end_wire.size() == circuit.source_qubits, "one end wire a source qubit");
   std::vector<bool> taken(circuit.wires);
   for (const std::uint32_t wire : circuit.end_wire) {
@@ -162,29 +165,29 @@ void check_invariants(const Circuit& circuit) {
       const Operation& op = circuit.blocks[b][i];
       const auto where = [&] { return fmt::format(" (block {}, operation {}, {})", b, i, name(op.kind)); };
       ++stamp;
-      demand(op.operand_count <= in_place || op.operand[0] + op.operand_count <= circuit.pool.size(),
-             "operands lie in the pool" + where());
+      demand_at(op.operand_count <= in_place || op.operand[0] + op.operand_count <= circuit.pool.size(),
+                "operands lie in the pool", where);
       for (const std::uint32_t wire : circuit.operands(op)) {
-        demand(wire < circuit.wires, "operands are wires" + where());
-        demand(seen[wire] != stamp, "operands are distinct" + where());
+        demand_at(wire < circuit.wires, "operands are wires", where);
+        demand_at(seen[wire] != stamp, "operands are distinct", where);
         seen[wire] = stamp;
       }
-      if (op.is_unitary()) demand(op.control_count() >= 0, "a gate has all its targets" + where());
+      if (op.is_unitary()) demand_at(op.control_count() >= 0, "a gate has all its targets", where);
       for (int a = 0; a < 3; ++a) {
-        demand(op.form[a] < circuit.forms.size(), "angle forms exist" + where());
-        demand(std::isfinite(op.value[a]), "angles are finite" + where());
+        demand_at(op.form[a] < circuit.forms.size(), "angle forms exist", where);
+        demand_at(std::isfinite(op.value[a]), "angles are finite", where);
       }
       if (op.kind == Kind::measure) {
-        demand(op.operand_count == 1, "measure has one operand" + where());
-        demand(op.payload == no_bit || op.payload < circuit.bits, "measured bits exist" + where());
+        demand_at(op.operand_count == 1, "measure has one operand", where);
+        demand_at(op.payload == no_bit || op.payload < circuit.bits, "measured bits exist", where);
       }
-      if (op.kind == Kind::reset) demand(op.operand_count == 1, "reset has one operand" + where());
+      if (op.kind == Kind::reset) demand_at(op.operand_count == 1, "reset has one operand", where);
       if (op.kind == Kind::classical)
-        demand(op.payload < circuit.statements.size(), "statement exists" + where());
+        demand_at(op.payload < circuit.statements.size(), "statement exists", where);
       if (op.kind == Kind::branch) {
-        demand(op.payload < circuit.branches.size(), "branch exists" + where());
+        demand_at(op.payload < circuit.branches.size(), "branch exists", where);
         for (const Branch::Arm& arm : circuit.branches[op.payload].arms) {
-          demand(arm.block > b && arm.block < circuit.blocks.size(), "arms are later blocks" + where());
+          demand_at(arm.block > b && arm.block < circuit.blocks.size(), "arms are later blocks", where);
         }
       }
     }

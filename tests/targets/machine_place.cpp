@@ -332,4 +332,25 @@ TEST_CASE("physical qubits that a machine cannot give are refused") {
   pin(circuit, {});
   CHECK_FALSE(has_pinned(circuit));
   CHECK(ions_wanted(circuit) == 2);
+
+TEST_CASE("where all ions and pairs are alike the source's order stays, however long the program") {
+  Random random(41);
+  Circuit circuit;
+  constexpr std::uint32_t wires = 6;
+  add_register(circuit, "q", wires);
+  for (int i = 0; i < 20'000; ++i) {  // sums of so many errors round differently on each pair
+    const auto pair = random.distinct(2, wires);
+    circuit.body().push_back(
+        circuit.make(Kind::xx, {pair[0], pair[1]}, {{random.real(0.01, 1.5)}, {0}, {0}}));
+  }
+  Target target = typical(8);
+  const Placed placed = place(circuit, target);
+  for (std::uint32_t q = 0; q < wires; ++q) CHECK(placed.start[q] == q);
+  CHECK(listed(placed.circuit) == listed(circuit));
+  // One better pair of ions, and the busiest pair of wires sits there.
+  target.pair(6, 7).slope.value /= 100;
+  for (int i = 0; i < 20'000; ++i) circuit.body().push_back(circuit.make(Kind::xx, {2, 4}, {{1}, {0}, {0}}));
+  const Placed moved = place(circuit, target);
+  CHECK(std::min(moved.start[2], moved.start[4]) == 6);
+  CHECK(std::max(moved.start[2], moved.start[4]) == 7);
 }
