@@ -332,6 +332,7 @@ TEST_CASE("physical qubits that a machine cannot give are refused") {
   pin(circuit, {});
   CHECK_FALSE(has_pinned(circuit));
   CHECK(ions_wanted(circuit) == 2);
+}
 
 TEST_CASE("where all ions and pairs are alike the source's order stays, however long the program") {
   Random random(41);
