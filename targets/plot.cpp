@@ -147,7 +147,7 @@ void draw_spectrum(std::string& svg, const TrapMachine& machine, const std::opti
 void draw_pulse(std::string& svg, const LitPair& lit) {
   const Pulse& pulse = lit.pulse;
   const double us = pulse.duration * 1e6, khz = pulse.peak() * 1e-3;
-  const Panel panel(80, 450, 470, 330, {0, us}, {-1.1 * khz, 1.1 * khz});
+  const Panel panel(80, 450, 470, 330, {0, us}, {-1.1 * khz, 1.35 * khz});  // room for the note above
   panel.frame(svg, "Pulse", "time, us", "Rabi frequency, kHz");
   panel.level(svg, 0);
   std::vector<std::array<double, 2>> points;
@@ -180,7 +180,8 @@ void draw_paths(std::string& svg, const TrapMachine& machine, const LitPair& lit
   });
   modes.resize(std::min(modes.size(), colours.size()));
   const double reach = 1.1 * std::max(1e-6, alpha.col(modes[0]).cwiseAbs().maxCoeff());
-  const Panel panel(640, 450, 440, 330, {-reach * 4 / 3, reach * 4 / 3}, {-reach, reach});
+  // As wide as high in both directions, and to the right, so that the notes have the left upper corner.
+  const Panel panel(640, 450, 440, 330, {-reach * 5 / 3, reach}, {-reach, reach});
   panel.frame(svg, fmt::format("Paths in phase space of ion {}", lit.a), "Re alpha", "Im alpha");
   panel.level(svg, 0);
   for (std::size_t k = 0; k < modes.size(); ++k) {
