@@ -222,12 +222,7 @@ LitPair light_for(const TrapMachine& machine, MachineFile& file, const TargetQue
   } else {
     lit = light_of(machine, {{a, b}}, question.threads, question.progress).front().lit;
   }
-  if (!lit) {
-    throw Failure(
-        Exit::target_cannot,
-        fmt::format("{}: ions {} and {} cannot interact: no allowed time is long enough under the peak limit",
-                    question.path, a, b));
-  }
+  if (!lit) refuse_pair(file, machine, a, b);
   if (question.pair->first > question.pair->second) std::swap(lit->a, lit->b);
   return *lit;
 }

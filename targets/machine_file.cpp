@@ -89,7 +89,10 @@ std::uint32_t MachineFile::origin_of(const toml::node& node) {
 }
 
 void MachineFile::refuse_if_faulty() const {
-  if (faults_.empty()) return;
+  if (!faults_.empty()) refuse();
+}
+
+void MachineFile::refuse() const {
   auto in_order = faults_;
   std::stable_sort(in_order.begin(), in_order.end(), [](const Message& a, const Message& b) {
     return std::pair(a.place.line, a.place.column) < std::pair(b.place.line, b.place.column);

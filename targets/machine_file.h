@@ -30,6 +30,8 @@ class MachineFile {
   void complain(const toml::source_region& where, std::string what, std::string help = {});
   /// Throws Failure(target_cannot) with everything that was complained about, if anything was.
   void refuse_if_faulty() const;
+  /// The same after a complaint.
+  [[noreturn]] void refuse() const;
   /// The Figure::origin of what is stated at this node.
   std::uint32_t origin_of(const toml::node& node);
 

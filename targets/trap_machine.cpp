@@ -267,6 +267,15 @@ PairFigures figures_of(const PairLight& light) {
   return figures;
 }
 
+void complain_of_peak(MachineFile& file, std::string what, double least_rms_hz) {
+  const std::string needed =
+      least_rms_hz > 0 && std::isfinite(least_rms_hz)
+          ? fmt::format("in the longest time at least {:.4g} kHz rms are needed, and more at the peak",
+                        least_rms_hz / 1e3)
+          : "raise it, or allow a longer 'duration_us'";
+  file.complain(place_of(file, "light", "peak_rabi_khz"), std::move(what), needed);
+}
+
 Target blank_target(const TrapMachine& machine) {
   Target target = typical(static_cast<std::uint32_t>(machine.chain.ions()));
   target.name = machine.name;
@@ -346,6 +355,15 @@ std::vector<PairLight> light_of(const TrapMachine& machine, const std::vector<st
   return light_of(machine, pairs, threads, progress, least_rms_hz);
 }
 
+void refuse_pair(MachineFile& file, const TrapMachine& machine, int a, int b) {
+  const FoundLight light = find_light(machine.chain, machine.eta, machine.limits, machine.noise, {{a, b}}, 1);
+  complain_of_peak(
+      file,
+      fmt::format("ions {} and {} cannot interact: with this peak no allowed time is long enough", a, b),
+      light.least_rms_hz);
+  file.refuse();
+}
+
 Target target_of_trap(MachineFile& file, int threads, const ReportProgress& progress) {
   const TrapMachine machine = read_trap(file);
   const auto pairs = wanted_pairs(file, machine);
@@ -364,14 +382,8 @@ Target target_of_trap(MachineFile& file, int threads, const ReportProgress& prog
     target.pair(static_cast<std::uint32_t>(light.a), static_cast<std::uint32_t>(light.b)) = figures_of(light);
   }
   if (!pairs.empty() && !any) {
-    const std::string needed =
-        least_rms_hz > 0 && std::isfinite(least_rms_hz)
-            ? fmt::format("in the longest time the easiest pair needs {:.4g} kHz rms, and more at the peak",
-                          least_rms_hz / 1e3)
-            : "raise it, or allow a longer 'duration_us'";
-    file.complain(place_of(file, "light", "peak_rabi_khz"),
-                  "no pair can be reached in any of the allowed times with this peak", needed);
-    file.refuse_if_faulty();
+    complain_of_peak(file, "no pair can be reached in any of the allowed times with this peak", least_rms_hz);
+    file.refuse();
   }
   apply_figures(file, target, false);
   for (PairFigures& figures : target.pairs) {

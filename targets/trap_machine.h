@@ -51,6 +51,10 @@ std::vector<PairLight> light_of(const TrapMachine& machine, const std::vector<st
 std::optional<std::vector<PairLight>> kept_light_of(const TrapMachine& machine,
                                                     const std::vector<std::pair<int, int>>& pairs);
 
+/// Throws Failure(target_cannot) at the place of the peak limit, saying how much light a pair without light
+/// would need.
+[[noreturn]] void refuse_pair(MachineFile& file, const TrapMachine& machine, int a, int b);
+
 /// The compiler's view: computed figures, overridden by whatever [machine], [ion] and [pair] of the file say.
 /// `threads` 0 = as many as there are cores. Throws Failure(target_cannot) as read_trap does, and when no
 /// pair of a chain can be reached.

@@ -276,6 +276,24 @@ TEST_CASE("the answer has the chain, a pair's light and the global drive") {
   CHECK(circles == 4);
 }
 
+TEST_CASE("a pair out of reach is refused at the peak limit, with the light that it needs") {
+  const Harbour harbour;
+  TargetQuestion question;
+  question.path = harbour.file(replaced(good, "= 150.0", "= 15.0"));
+  question.pair = {{0, 3}};
+  try {
+    answer(question);
+    FAIL("not refused");
+  } catch (const Failure& failure) {
+    CHECK(failure.exit == Exit::target_cannot);
+    REQUIRE(failure.messages.size() == 1);
+    const Message& message = failure.messages[0];
+    CHECK(message.place.line == 9);
+    CHECK(message.text == "ions 0 and 3 cannot interact: with this peak no allowed time is long enough");
+    CHECK(printed(message).find("kHz rms are needed") != std::string::npos);
+  }
+}
+
 TEST_CASE("questions that do not fit are refused") {
   const Harbour harbour;
   const auto status = [&](auto&& change) {
