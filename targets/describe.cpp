@@ -231,8 +231,10 @@ std::string answer_by_figures(const TargetQuestion& question) {
   if (question.drive || !question.plot.empty())
     unsuitable("--drive and --plot need a machine that is described by its trap");
   const Target target = read_target(question.path, question.threads, question.progress);
-  Json json = {
-      {"name", target.name}, {"ions", target.ions}, {"beams", target.beams}, {"crosstalk", target.crosstalk}};
+  Json json = {{"name", target.name},
+               {"ions", target.ions},
+               {"beams", target.beams},
+               {"crosstalk", target.crosstalk.value}};
   if (question.pair) {
     check_pair(question, static_cast<int>(target.ions));
     const auto [a, b] = *question.pair;
@@ -276,7 +278,7 @@ std::string answer(const TargetQuestion& question) {
   if (question.pair) {
     check_pair(question, machine.chain.ions());
     lit = scaled_to(light_for(machine, file, question), question.theta);
-    const Json pair = pair_json(machine, *lit, question.theta, plain.crosstalk);
+    const Json pair = pair_json(machine, *lit, question.theta, plain.crosstalk.value);
     text += pair_text(pair);
     json.update(pair);
   }

@@ -191,7 +191,7 @@ void Section::choice(std::string_view key, std::size_t& value,
   }
 }
 
-void Section::figure(std::string_view key, Figure& value, double factor, Need need) {
+void Section::figure(std::string_view key, Figure& value, double factor, Need need, Range range) {
   const toml::node* found = node(key, need);
   if (found == nullptr) return;
   double best = 0;
@@ -212,8 +212,8 @@ void Section::figure(std::string_view key, Figure& value, double factor, Need ne
                    fmt::format("'{}' must be a number or [number, standard deviation]", key));
     return;
   }
-  if (!holds(probability, best * factor) || !holds(not_negative, deviation)) {
-    file_.complain(found->source(), fmt::format("'{}' must be {}{}", key, described(probability),
+  if (!holds(range, best * factor) || !holds(not_negative, deviation)) {
+    file_.complain(found->source(), fmt::format("'{}' must be {}{}", key, described(range),
                                                 deviation < 0 ? ", with a deviation of 0 or more" : ""));
     return;
   }

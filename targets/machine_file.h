@@ -75,8 +75,10 @@ class Section {
   void words(std::string_view key, std::string& value, Need need = Need::optional);
   /// One of the given words; index of the chosen one.
   void choice(std::string_view key, std::size_t& value, std::initializer_list<std::string_view> words);
-  /// A number, or [number, standard deviation]. Both are multiplied by `factor`.
-  void figure(std::string_view key, Figure& value, double factor = 1, Need need = Need::optional);
+  /// A number, or [number, standard deviation]. Both are multiplied by `factor`; the number must lie in
+  /// `range` then.
+  void figure(std::string_view key, Figure& value, double factor = 1, Need need = Need::optional,
+              Range range = probability);
   /// The node itself, for what has a form of its own; nullptr when absent.
   const toml::node* node(std::string_view key, Need need = Need::optional);
 

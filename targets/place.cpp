@@ -73,7 +73,7 @@ class Objective {
   Objective(const std::vector<WireUse>& uses, const Target& target, const Routes& routes)
       : uses_(uses), target_(target), routes_(routes) {
     double idle = 0;
-    for (const IonFigures& ion : target.ion) idle += 0.5 / ion.t2_us / static_cast<double>(target.ions);
+    for (const IonFigures& ion : target.ion) idle += 0.5 / ion.t2_us.value / static_cast<double>(target.ions);
     waiting_per_us_ = idle * static_cast<double>(uses.size()) / target.interactions_at_once;
   }
 

@@ -130,9 +130,8 @@ class Estimator {
         break;
       case TimedKind::wait:
         for (const std::uint32_t ion : operands) {
-          const double error = ions.is_alive[ion] ? target_.ion[ion].idle_error(entry.takes) : 0;
+          const double error = ions.is_alive[ion] ? idle(ion, entry.takes, sums) : 0;
           entry.error = 1 - (1 - entry.error) * (1 - error);
-          sums.lose(Source::idle, error);
         }
         break;
       case TimedKind::decide:
@@ -154,9 +153,16 @@ class Estimator {
     wait.takes = gap;
     wait.ion[0] = ion;
     wait.ion_count = 1;
-    wait.error = target_.ion[ion].idle_error(gap);
-    sums.lose(Source::idle, wait.error);
+    wait.error = idle(ion, gap, sums);
     waits.push_back(wait);
+  }
+
+  double idle(std::uint32_t ion, double us, Sums& sums) {
+    const IonFigures& figures = target_.ion[ion];
+    const double error = figures.idle_error(us);
+    sums.lose(Source::idle, error);
+    sums.depends(figures.t2_us, figures.idle_error_slope(us), error);
+    return error;
   }
 
   void single(TimedOperation& entry, const Figure& figure, Source source, Sums& sums) {
@@ -171,6 +177,7 @@ class Estimator {
     if (count == 0 || one == 0) return;
     entry.crosstalk = 1 - std::pow(1 - one, count);
     sums.lose(Source::crosstalk, entry.crosstalk);
+    sums.depends(target_.crosstalk, count * target_.leak_error_slope(theta), one);
     entry.error = 1 - (1 - entry.error) * (1 - entry.crosstalk);
   }
 

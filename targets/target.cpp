@@ -34,9 +34,7 @@ void read_ion(Section& section, IonFigures& ion, const Conversion& conversion, b
   section.figure("pulse_error", ion.pulse_error, conversion.one, needed(complete));
   section.figure("measure_error", ion.measure_error, 1, needed(complete));
   section.figure("reset_error", ion.reset_error);
-  double t2_s = ion.t2_us * 1e-6;
-  section.number("t2_s", t2_s, positive);
-  ion.t2_us = t2_s * 1e6;
+  section.figure("t2_s", ion.t2_us, 1e6, Need::optional, positive);
   section.flag("addressed", ion.addressed);
 }
 
@@ -175,7 +173,7 @@ void apply_figures(MachineFile& file, Target& target, bool complete) {
   bool is_steered = true;
   machine.flag("beams_steered", is_steered);
   machine.whole("interactions_at_once", target.interactions_at_once, 1, most_described_ions / 2);
-  machine.number("crosstalk", target.crosstalk, {0, 1, false});
+  machine.figure("crosstalk", target.crosstalk);
   machine.flag("reads_alone", target.reads_alone);
   machine.flag("has_reset", target.has_reset);
   machine.flag("has_feed_forward", target.has_feed_forward);
@@ -221,7 +219,7 @@ Cost cost_of(const Target& target) {
     ++ions;
     pulse += ion.pulse_error.value;
     pulse_us += ion.pulse_us;
-    idle += 0.5 / ion.t2_us;
+    idle += 0.5 / ion.t2_us.value;
   }
   if (ions > 0) {
     cost.pulse = pulse / ions;

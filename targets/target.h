@@ -37,12 +37,16 @@ struct IonFigures {
   Figure pulse_error{2e-4};
   Figure measure_error{3e-3};  // the bit is wrong
   Figure reset_error{5e-4};
-  double t2_us = 1e6;     // coherence time: an ion waiting for t dephases with (1 - exp(-t / T2)) / 2
+  Figure t2_us{1e6};      // coherence time: an ion waiting for t dephases with (1 - exp(-t / T2)) / 2
   bool addressed = true;  // whether light reaches this ion; if not, it can hold no qubit
 
   bool operator==(const IonFigures&) const = default;
   /// Probability of a phase flip while waiting for `us`.
-  double idle_error(double us) const { return -0.5 * std::expm1(-us / t2_us); }
+  double idle_error(double us) const { return -0.5 * std::expm1(-us / t2_us.value); }
+  /// Its derivative in T2: longer coherence, smaller error.
+  double idle_error_slope(double us) const {
+    return -0.5 * std::exp(-us / t2_us.value) * us / (t2_us.value * t2_us.value);
+  }
 };
 
 /// The interaction of one pair. Its error grows with the angle: with s = |theta| / (pi/2),
@@ -74,7 +78,7 @@ struct Target {
 
   std::uint32_t beams = 32;                // ions that are lit at once: an r needs one beam, an xx two
   std::uint32_t interactions_at_once = 1;  // xx on disjoint pairs at the same time
-  double crosstalk = 0.005;                // field on the next ion of the chain / field on the addressed ion
+  Figure crosstalk{0.005};                 // field on the next ion of the chain / field on the addressed ion
   bool reads_alone = true;                 // while ions are read or reset, no ion is driven
   bool has_reset = true;
   bool has_feed_forward = true;  // can act on bits measured earlier in the same run
@@ -97,9 +101,11 @@ struct Target {
   /// Probability that light of an operation by `theta` leaks to one neighbour and turns it: a rotation by
   /// crosstalk * theta, whose error is sin^2 of half of it.
   double leak_error(double theta) const {
-    const double s = std::sin(crosstalk * theta / 2);
+    const double s = std::sin(crosstalk.value * theta / 2);
     return s * s;
   }
+  /// Its derivative in the crosstalk.
+  double leak_error_slope(double theta) const { return theta / 2 * std::sin(crosstalk.value * theta); }
 };
 
 /// A machine file describes at most so many ions.

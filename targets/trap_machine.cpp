@@ -280,7 +280,7 @@ Target blank_target(const TrapMachine& machine) {
   Target target = typical(static_cast<std::uint32_t>(machine.chain.ions()));
   target.name = machine.name;
   for (IonFigures& ion : target.ion)
-    if (machine.noise.t2_s > 0) ion.t2_us = machine.noise.t2_s * 1e6;
+    if (machine.noise.t2_s > 0) ion.t2_us.value = machine.noise.t2_s * 1e6;
   return target;
 }
 

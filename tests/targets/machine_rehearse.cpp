@@ -132,7 +132,7 @@ TEST_CASE("waiting dephases with T2") {
   c.body() = {c.make(Kind::r, {0}, {{pi / 2}, {0}}), delay, c.make(Kind::r, {0}, {{pi / 2}, {pi}}),
               measure(c, 0, 0)};
   Target target = typical(1);
-  target.ion[0].t2_us = 1000;
+  target.ion[0].t2_us.value = 1000;
   for (Figure* figure :
        {&target.ion[0].prepare_error, &target.ion[0].pulse_error, &target.ion[0].measure_error}) {
     figure->value = 0;
@@ -150,8 +150,9 @@ TEST_CASE("an interaction's errors by hand") {
   c.body() = {c.make(Kind::xx, {0, 1}, {{pi / 2}, {0}, {0}}), c.make(Kind::xx, {0, 1}, {{-pi / 2}, {0}, {0}}),
               measure(c, 0, 0), measure(c, 1, 1)};
   Target target = typical(2);
-  target.crosstalk = 0;
-  for (IonFigures& ion : target.ion) ion.prepare_error.value = ion.measure_error.value = 0, ion.t2_us = 1e15;
+  target.crosstalk.value = 0;
+  for (IonFigures& ion : target.ion)
+    ion.prepare_error.value = ion.measure_error.value = 0, ion.t2_us.value = 1e15;
   target.pair(0, 1).floor.value = 0;
   target.pair(0, 1).slope.value = 0.15;
   const auto outcomes = by_bits(rehearsed(c, target, whole));
@@ -166,9 +167,9 @@ TEST_CASE("shots and density matrices agree") {
   for (int round = 0; round < 5; ++round) {
     const Circuit c = measured(random, 3, 25);
     Target target = typical(4);
-    target.crosstalk = 0.1;
+    target.crosstalk.value = 0.1;
     for (PairFigures& pair : target.pairs) pair.slope.value = 0.03;
-    for (IonFigures& ion : target.ion) ion.t2_us = 2e4, ion.measure_error.value = 0.03;
+    for (IonFigures& ion : target.ion) ion.t2_us.value = 2e4, ion.measure_error.value = 0.03;
     const Rehearsal exact = rehearsed(c, target, whole);
     const Rehearsal shots = rehearsed(c, target, whole, by_shots(20000, random.bits()));
     CHECK(exact.method == Rehearsal::Method::density_matrix);
@@ -195,8 +196,8 @@ TEST_CASE("the estimate is within 10 % of the rehearsal: 30 small circuits, exac
         support::random_circuit(random, {qubits, random.between(4, 16), 0, support::Family::native});
     Target target = typical(static_cast<std::uint32_t>(qubits + round % 2));
     for (PairFigures& pair : target.pairs) pair.slope.value = random.real(1e-3, 8e-3);
-    for (IonFigures& ion : target.ion) ion.t2_us = random.real(2e5, 2e6);
-    target.crosstalk = random.real(0, 0.02);
+    for (IonFigures& ion : target.ion) ion.t2_us.value = random.real(2e5, 2e6);
+    target.crosstalk.value = random.real(0, 0.02);
     const Rehearsal result = rehearsed(c, target, fragment);
     REQUIRE(result.method == Rehearsal::Method::density_matrix);
     const double error = 1 - result.estimate;
@@ -262,10 +263,10 @@ TEST_CASE("the same seed gives the same result on any number of threads") {
 TEST_CASE("without noise nothing is lost") {
   Random random(25);
   Target target = typical(4);
-  target.crosstalk = 0;
+  target.crosstalk.value = 0;
   for (IonFigures& ion : target.ion) {
     ion.prepare_error = ion.pulse_error = ion.measure_error = ion.reset_error = {};
-    ion.t2_us = 1e300;
+    ion.t2_us.value = 1e300;
   }
   for (PairFigures& pair : target.pairs) pair.floor = pair.slope = {};
   const Rehearsal exact =

@@ -22,13 +22,13 @@ constexpr Promise fragment{false, false};
 /// A machine with round figures for counting by hand.
 Target simple(std::uint32_t ions) {
   Target target = typical(ions);
-  target.crosstalk = 0;
+  target.crosstalk.value = 0;
   for (IonFigures& ion : target.ion) {
     ion.prepare_us = 10;
     ion.pulse_us = 5;
     ion.measure_us = 100;
     ion.reset_us = 20;
-    ion.t2_us = 1e6;
+    ion.t2_us.value = 1e6;
   }
   for (PairFigures& pair : target.pairs) pair.takes_us = 200;
   target.feed_forward_us = 50;
@@ -160,7 +160,7 @@ TEST_CASE("idle errors count what holds a state, to the end if it is kept") {
 
 TEST_CASE("crosstalk by hand") {
   Target target = simple(5);
-  target.crosstalk = 0.02;
+  target.crosstalk.value = 0.02;
   Circuit c;
   add_register(c, "q", 2);
   c.body() = {r(c, 1)};
@@ -242,6 +242,32 @@ TEST_CASE("the interval follows from stated deviations") {
         doctest::Approx(timed.totals.success * std::exp(-std::hypot(spread, floor))).epsilon(1e-12));
 }
 
+TEST_CASE("coherence time and crosstalk that are not known well widen the interval") {
+  Circuit c;
+  add_register(c, "q", 3);
+  c.body() = {xx(c, 0, 1), c.make(Kind::delay, {0}), xx(c, 0, 1)};
+  c.body()[1].value[0] = 3000;
+  Target target = simple(3);
+  for (IonFigures& ion : target.ion) ion.t2_us.value = 5e4;
+  target.crosstalk.value = 0.05;
+  const auto log_success = [&](double t2_us, double crosstalk) {
+    Target other = target;
+    for (IonFigures& ion : other.ion) ion.t2_us.value = t2_us;
+    other.crosstalk.value = crosstalk;
+    return std::log(schedule(as_it_is(c, other), other, fragment).totals.success);
+  };
+  // One deviation away, by difference.
+  const double t2 = (log_success(5e4 + 1, 0.05) - log_success(5e4 - 1, 0.05)) / 2 * 500;
+  const double leak = (log_success(5e4, 0.05 + 1e-6) - log_success(5e4, 0.05 - 1e-6)) / 2e-6 * 0.004;
+  CHECK(t2 > 1e-4);
+  CHECK(leak < -1e-5);
+  for (IonFigures& ion : target.ion) ion.t2_us = {5e4, 500, 1};
+  target.crosstalk = {0.05, 0.004, 2};
+  const Totals totals = schedule(as_it_is(c, target), target, fragment).totals;
+  CHECK(std::log(totals.success_high / totals.success) ==
+        doctest::Approx(1.96 * std::hypot(t2, leak)).epsilon(1e-4));
+}
+
 namespace {
 
 Circuit random_program(Random& random, int qubits, int gates) {
@@ -279,7 +305,7 @@ TEST_CASE("random programs keep every rule of the machine") {
     target.beams = static_cast<std::uint32_t>(random.between(2, 5));
     target.interactions_at_once = static_cast<std::uint32_t>(random.between(1, 2));
     target.reads_alone = random.chance(0.5);
-    target.crosstalk = 0.01;
+    target.crosstalk.value = 0.01;
     const Promise promise{random.chance(0.5), random.chance(0.3)};
     const Placed placed = as_it_is(c, target);
     const Timed timed = schedule(placed, target, promise);

@@ -91,7 +91,7 @@ TEST_CASE("a trap becomes a target, and its light is kept") {
   CHECK(target.name == "skiff-4");
   CHECK(target.ions == 4);
   CHECK(target.sha256.size() == 64);
-  CHECK(target.ion[0].t2_us == doctest::Approx(1e6));
+  CHECK(target.ion[0].t2_us.value == doctest::Approx(1e6));
   for (const PairFigures& pair : target.pairs) {
     CHECK(pair.reachable);
     CHECK((pair.takes_us == doctest::Approx(100) || pair.takes_us == doctest::Approx(200)));
@@ -141,7 +141,7 @@ pairs = [[0, 1]]
 interaction_us = 111
 error_floor = [1e-3, 2e-4]
 )"));
-  CHECK(target.crosstalk == 0.02);
+  CHECK(target.crosstalk.value == 0.02);
   CHECK_FALSE(target.pair(0, 3).reachable);
   CHECK(target.pair(0, 2).reachable);
   CHECK(target.pair(0, 1).takes_us == 111);
