@@ -90,10 +90,10 @@ class Binding {
       if (!job_.timeline.empty()) return;
       if (number > 1) std::cout << "\n";
       std::cout << "// set " << number << "\n";
-      write_native(std::cout, bound, placed_.start, {job_.plan, target_.name});
+      write_native(std::cout, bound, placed_.start, {job_.plan, target_.name, source_.annotations});
     } else {
       write_whole(numbered(job_.out, number), [&](std::ostream& out) {
-        write_native(out, bound, placed_.start, {job_.plan, target_.name});
+        write_native(out, bound, placed_.start, {job_.plan, target_.name, source_.annotations});
       });
     }
   }

@@ -4,10 +4,12 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <iostream>
 
 #include "circuit/physical.h"
 #include "command/clock.h"
 #include "language/language.h"
+#include "output/annotations.h"
 #include "output/native.h"
 #include "passes/lower.h"
 #include "passes/two_qubit_stretches.h"
@@ -62,6 +64,29 @@ GateTimes times_of(const Target& target) {
     times.reset = reset / ions * us;
   }
   return times;
+}
+
+/// What an annotation was about may have vanished: then the native program cannot carry it. Said once for
+/// all.
+void warn_of_lost_annotations(const Result& result, bool quiet) {
+  constexpr std::size_t most_named = 5;
+  if (quiet || result.source.annotations.empty()) return;
+  const std::vector<Annotation> lost = places_of(result.source.annotations, result.placed.circuit).lost;
+  if (lost.empty()) return;
+  std::vector<std::string> names;
+  for (const Annotation& annotation : lost) {
+    if (names.size() == most_named) break;
+    names.push_back(
+        fmt::format("{} (line {})", annotation.text.substr(0, annotation.text.find(' ')), annotation.line));
+  }
+  if (lost.size() > most_named) names.push_back("...");
+  Message message;
+  message.severity = Message::Severity::warning;
+  message.place = {result.source.path, lost.front().line, 1};
+  message.text = fmt::format("{} annotation{} dropped, for nothing is left of the gates under {}: {}",
+                             lost.size(), lost.size() == 1 ? " is" : "s are",
+                             lost.size() == 1 ? "it" : "them", fmt::join(names, ", "));
+  std::cerr << printed(message);
 }
 
 /// Reads the native text back, as any other program would, and holds it against the source.
@@ -152,7 +177,8 @@ Result compile(const std::string& path, const Settings& settings, Progress& prog
   timed("schedule", "timing", [&] {
     result.before = before_of(source);
     result.timed = schedule(result.placed, result.target, settings.promise_for(source));
-    result.native = native_program(result.placed, {path, result.target.name});
+    warn_of_lost_annotations(result, settings.quiet);
+    result.native = native_program(result.placed, {path, result.target.name, result.source.annotations});
   });
   if (!settings.check) {
     result.verdict.explanation = "--no-verify was given.";

@@ -21,7 +21,7 @@ SourceFile read_source(const std::string& path, bool quiet, const std::function<
   if (!quiet) {
     for (const Message& message : reading.messages) std::cerr << printed(message);
   }
-  return {path, sha256(text), std::move(*reading.circuit), watch.seconds()};
+  return {path, sha256(text), std::move(*reading.circuit), std::move(reading.annotations), watch.seconds()};
 }
 
 }  // namespace isinglass

@@ -3,6 +3,7 @@
 
 #include <functional>
 #include <string>
+#include <vector>
 
 #include "circuit/circuit.h"
 #include "language/language.h"
@@ -13,6 +14,7 @@ struct SourceFile {
   std::string path;    // as the user wrote it
   std::string sha256;  // of the bytes
   Circuit circuit;
+  std::vector<Annotation> annotations;
   double seconds = 0;  // what reading took
 };
 

@@ -12,6 +12,7 @@
 #include <string_view>
 #include <vector>
 
+#include "circuit/annotation.h"
 #include "circuit/circuit.h"
 #include "circuit/message.h"
 
@@ -44,7 +45,10 @@ struct ReadOptions {
 struct Reading {
   std::optional<Circuit> circuit;
   std::vector<Message> messages;  // in the order of the source
-  int version = 0;                // 20, 30, 31, 32: as declared, or decided when the line is missing
+  /// Of statements in the program's own file that were run; those of definitions and included files are
+  /// dropped.
+  std::vector<Annotation> annotations;
+  int version = 0;  // 20, 30, 31, 32: as declared, or decided when the line is missing
 
   bool ok() const { return circuit.has_value(); }
 };

@@ -87,6 +87,7 @@ Reading Reader::run(const std::string& file_name, std::string_view text) {
   reading.version = version_;
   if (errors_ == 0) reading.circuit = std::move(circuit_);
   reading.messages = std::move(messages_);
+  reading.annotations = std::move(annotations_);
   return reading;
 }
 

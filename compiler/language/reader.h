@@ -110,6 +110,7 @@ class Reader final : public StatementSink {
   [[noreturn]] void throw_fault(syntax::Span at, const Fault& fault) const;
   void count_step(syntax::Span at);
   void note_broken(const syntax::Statement& statement);
+  void note_annotations(const syntax::Statement& statement);
 
   // Files and versions (reader.cpp).
   void decide_version(int version, syntax::Span at);
@@ -383,6 +384,8 @@ class Reader final : public StatementSink {
 
   std::vector<std::set<std::string>> check_levels_;  // names declared in code that is not run
   std::set<const syntax::Body*> checked_;            // of the statement being run
+  std::vector<Annotation> annotations_;
+  std::set<std::uint32_t> annotated_;  // places of annotations that are noted
   bool times_asked_ = false;
   std::optional<GateTimes> times_;
   Forms lengths_;  // over the stretches; the form of a delay until they are solved

@@ -22,6 +22,18 @@ Value zero_of(Type type) {
   return value;
 }
 
+/// What the statement as such becomes in the circuit; phase stands for gates.
+Kind kind_of(const syntax::Statement& statement) {
+  using namespace syntax;
+  if (is_one_of<Measurement>(statement)) return Kind::measure;
+  if (is_one_of<syntax::Reset>(statement)) return Kind::reset;
+  if (is_one_of<syntax::Barrier, Box>(statement)) return Kind::barrier;
+  if (is_one_of<syntax::Delay>(statement)) return Kind::delay;
+  if (is_one_of<If, For, While, Switch>(statement)) return Kind::branch;
+  if (is_one_of<Assignment, ExpressionStatement, Break, Continue, End>(statement)) return Kind::classical;
+  return Kind::phase;
+}
+
 const std::string* base_name(const syntax::Expression& expression) {
   const syntax::Expression* node = &expression;
   while (node->kind == syntax::Expression::Kind::index) node = &node->arguments[0];
@@ -48,6 +60,7 @@ Ending Reader::run_list(const Statements& statements, std::size_t first) {
 /// Runs one statement; what is wrong with it is reported here, and the next one runs nevertheless.
 Ending Reader::run_checked(const syntax::Statement& statement) {
   count_step(statement.at);
+  if (!statement.annotations.empty()) note_annotations(statement);
   temporaries_.emplace_back();
   const std::size_t depth = scopes_.depth();
   const std::size_t frame = scopes_.frame;
@@ -82,6 +95,31 @@ Ending Reader::run_checked(const syntax::Statement& statement) {
   }
   temporaries_.pop_back();
   return ending;
+}
+
+/// Annotations are kept once, however often their statement is run. What is not part of the native program as
+/// such, gates, subroutines, qubits, cannot carry them.
+void Reader::note_annotations(const syntax::Statement& statement) {
+  using namespace syntax;
+  const auto* declaration = std::get_if<Declaration>(&statement.what);
+  const bool is_lost =
+      capture_ != nullptr || statement.at.source != 0 ||
+      is_one_of<GateDefinition, Subroutine, QubitDeclaration, syntax::Alias, Include>(statement) ||
+      (declaration != nullptr && declaration->role == Declaration::Role::constant);
+  for (const syntax::Annotation& annotation : statement.annotations) {
+    if (is_lost) {
+      warn(annotation.at,
+           fmt::format("the annotation @{} is dropped: its statement is not part of the native program",
+                       annotation.name));
+      continue;
+    }
+    if (!annotated_.insert(annotation.at.offset).second) continue;
+    std::string text = "@" + annotation.name;
+    if (!annotation.text.empty()) text += " " + annotation.text;
+    annotations_.push_back({std::move(text), annotation.at.line, statement.at.line, annotation.last_line,
+                            declaration != nullptr ? declaration->name.text : std::string(),
+                            kind_of(statement)});
+  }
 }
 
 /// After an error in a declaration its name stands for nothing, so that uses are not reported again.

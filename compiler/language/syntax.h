@@ -314,6 +314,7 @@ struct Annotation {
   std::string name;  // without `@`
   std::string text;  // the rest of the line, without surrounding blanks
   Span at;
+  std::uint32_t last_line = 0;  // of the statement that it stands above
 };
 
 struct Statement {

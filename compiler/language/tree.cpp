@@ -190,6 +190,9 @@ std::optional<Statement> TreeBuilder::statement(P::StatementContext& context, co
     }
   }
   result.at = at(*what->start, last);
+  for (syntax::Annotation& annotation : result.annotations) {
+    annotation.last_line = static_cast<std::uint32_t>(last.getLine());
+  }
   fill(result, *what);
   if (complained_) return std::nullopt;
   return result;
@@ -312,7 +315,7 @@ syntax::Annotation TreeBuilder::annotation(const Token& token) {
   const std::string line = text(token).substr(1);
   const std::size_t end = std::min(line.find_first_of(" \t\r"), line.size());
   if (end == 0) complain(at(token, token), "an annotation needs a name directly after '@'");
-  return {line.substr(0, end), std::string(trimmed(std::string_view(line).substr(end))), at(token, token)};
+  return {line.substr(0, end), std::string(trimmed(std::string_view(line).substr(end))), at(token, token), 0};
 }
 
 syntax::Version TreeBuilder::version(P::VersionContext& context) {

@@ -3,6 +3,7 @@
 
 #include <stdexcept>
 
+#include "output/annotations.h"
 #include "output/text.h"
 
 namespace isinglass {
@@ -61,6 +62,7 @@ class NativeWriter {
         "Y)), 0 < theta <= pi/2;\n");
     out_.add("// rz is a change of frame: no pulse, no time, no error.\n");
     out_.add("include \"stdgates.inc\";\n", definitions);
+    notes_ = places_of(heading.annotations, circuit_);
     placement();
     for (const std::string& pragma : circuit_.pragmas) {
       // A source that is itself a native program says where its own qubits were: not ours.
@@ -72,6 +74,18 @@ class NativeWriter {
   }
 
  private:
+  void notes_before(const std::string& source_name) {
+    const auto found = notes_.before_declaration.find(source_name);
+    if (found == notes_.before_declaration.end()) return;
+    for (const std::string& note : found->second) out_.add(one_line(note), "\n");
+  }
+
+  void notes_before(const Operation& op, const std::string& indent) {
+    const auto found = notes_.before.find(&op);
+    if (found == notes_.before.end()) return;
+    for (const std::string& note : found->second) out_.add(indent, one_line(note), "\n");
+  }
+
   bool uses_switch() const {
     for (const Branch& branch : circuit_.branches) {
       if (branch.kind == Branch::Kind::switch_case) return true;
@@ -100,7 +114,9 @@ class NativeWriter {
     out_.add("\n");
     for (const std::string& declaration : circuit_.externs) out_.add(declaration, "\n");
     for (const Input& input : circuit_.inputs) {
-      if (!input.is_derived) out_.add("input ", input.type, " ", input.name, ";\n");
+      if (input.is_derived) continue;
+      notes_before(input.source.empty() ? input.name : input.source);
+      out_.add("input ", input.type, " ", input.name, ";\n");
     }
     std::vector<bool> counts_rounds(circuit_.variables.size(), false);  // declared by its loop
     for (const Branch& branch : circuit_.branches) {
@@ -109,6 +125,7 @@ class NativeWriter {
     for (std::size_t i = 0; i < circuit_.variables.size(); ++i) {
       const Variable& variable = circuit_.variables[i];
       if (counts_rounds[i]) continue;
+      notes_before(variable.source.empty() ? variable.name : variable.source);
       out_.add(variable.is_output ? "output " : "", variable.type, " ", variable.name, ";\n");
     }
     out_.add("qubit[", std::uint64_t{circuit_.wires}, "] ion;\n\n");
@@ -127,6 +144,7 @@ class NativeWriter {
   }
 
   void operation(const Operation& op, const std::string& indent) {
+    if (!notes_.before.empty()) notes_before(op, indent);
     out_.add(indent);
     if (op.is_unitary() && !op.is_native()) {
       throw std::logic_error(fmt::format("{} is no operation of the machine", name(op.kind)));
@@ -211,6 +229,7 @@ class NativeWriter {
   std::span<const std::uint32_t> start_;
   std::vector<std::string> ions_;
   std::vector<std::string> bits_;
+  AnnotationPlaces notes_;
 };
 
 }  // namespace

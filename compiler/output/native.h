@@ -5,14 +5,16 @@
 #include <span>
 #include <string>
 
+#include "circuit/annotation.h"
 #include "targets/place.h"
 
 namespace isinglass {
 
-/// What stands in the first comment lines of the file.
+/// What the file tells besides the program.
 struct NativeHeading {
-  std::string source;  // name of the source file
-  std::string target;  // name of the machine
+  std::string source;                            // name of the source file
+  std::string target;                            // name of the machine
+  std::span<const Annotation> annotations = {};  // see annotations.h
 };
 
 /// Writes the program: r and xx defined in standard gates, `qubit[N] ion`, the classical variables, where

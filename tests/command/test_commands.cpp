@@ -282,3 +282,53 @@ TEST_CASE("durationof takes the figures of the target, and a missing target is t
   CHECK(slow.find("delay[992us]") != std::string::npos);
   CHECK(run_program({"compile", source, "--quiet", "--target", folder.path("none.toml")}).status == 5);
 }
+
+TEST_CASE("annotations stand before what their statement became; those of vanished gates are told") {
+  const Folder folder;
+  const std::string source = folder.write("s.qasm", R"(OPENQASM 3.1;
+include "stdgates.inc";
+@wires
+qubit[2] q;
+@results of all
+bit[2] c;
+@gone
+h q[0];
+@also.gone
+h q[0];
+h q;
+@both
+for int i in [0:1] {
+  @turn
+  crx(0.3) q[i], q[1 - i];
+}
+@reads
+c[0] = measure q[0];
+@choice
+if (c[0]) {
+  @inner
+  cy q[0], q[1];
+}
+@last
+c[1] = measure q[1];
+)");
+  const Ran ran = run_program({"compile", source});
+  INFO(ran.out << ran.err);
+  REQUIRE(ran.status == 0);
+  for (const std::string wanted :
+       {"@results of all\nbit[2] c;\n", "@both\n@turn\nxx(", "@reads\nc[0] = measure",
+        "@choice\nif (c[0]) {\n", "  @inner\n  ", "@last\nc[1] = measure"}) {
+    INFO(wanted);
+    CHECK(ran.out.find(wanted) != std::string::npos);
+  }
+  CHECK(ran.out.find("gone") == std::string::npos);
+  CHECK(ran.out.find("@wires") == std::string::npos);
+  CHECK(ran.err.find("s.qasm:3:1: warning: the annotation @wires is dropped") != std::string::npos);
+  CHECK(ran.err.find("s.qasm:7:1: warning: 2 annotations are dropped") != std::string::npos);
+  CHECK(ran.err.find("@gone (line 7), @also.gone (line 9)") != std::string::npos);
+  // They survive a second time, and binding.
+  const std::string native = folder.write("n.qasm", ran.out);
+  const Ran again = run_program({"compile", native, "--quiet"});
+  CHECK(again.out.find("@choice\nif (c[0]) {\n") != std::string::npos);
+  CHECK(run_program({"verify", source, native}).status == 0);
+  CHECK(run_program({"compile", folder.write("e.qasm", "OPENQASM 3.0;\nqubit q;\n@alone\n")}).status == 3);
+}

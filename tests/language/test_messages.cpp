@@ -142,3 +142,27 @@ TEST_CASE("names of the native program: what collides is renamed and said") {
   CHECK(circuit.variables[0].name == "ion_2");
   CHECK(warnings_of("OPENQASM 3.1;\nqubit q; bit ion;").size() == 1);
 }
+
+TEST_CASE("annotations: the lines of their statements, once however often these run") {
+  const Reading reading =
+      read("f.qasm",
+           "OPENQASM 3.1;\nqubit q;\n@a\nint k = 0;\n@b.c  some words \nfor int i in [0:9]\n{\n"
+           "  @d\n  U(i,\n    0, 0) q;\n}\ndef f(qubit p) {\n@e\nreset p;\n}\nf(q); f(q);\n");
+  REQUIRE(reading.ok());
+  std::string text;
+  for (const Annotation& a : reading.annotations) {
+    text += a.text + "|" + std::to_string(a.line) + "|" + std::to_string(a.first_line) + "-" +
+            std::to_string(a.last_line) + "|" + a.declares + "\n";
+  }
+  CHECK(text == "@a|3|4-4|k\n@b.c some words|5|6-11|\n@d|8|9-10|\n@e|13|14-14|\n");
+  const auto dropped = [](const std::string& body) {
+    const Reading it = read("f.qasm", "OPENQASM 3.1;\n" + body);
+    return it.ok() && it.annotations.empty() && it.messages.size() == 1 &&
+           it.messages[0].text.ends_with("its statement is not part of the native program");
+  };
+  CHECK(dropped("@a\ngate g p { }"));
+  CHECK(dropped("gate g p {\n@a\nU(0, 0, 0) p;\n}"));
+  CHECK(dropped("@a\ndef f() { }"));
+  CHECK(dropped("@a\nconst int n = 3;"));
+  CHECK_FALSE(read("f.qasm", "OPENQASM 3.1;\nqubit q;\n@ a\nreset q;").ok());
+}

@@ -6,6 +6,7 @@
 #include <regex>
 #include <sstream>
 
+#include "output/annotations.h"
 #include "output/native.h"
 #include "output/sample.h"
 #include "support/random_circuits.h"
@@ -178,4 +179,29 @@ TEST_CASE("what is not native is never written") {
   add_register(c, "q", 2);
   c.body().push_back(c.make(Kind::h, {0}));
   CHECK_THROWS(native_program(place(c, typical(2)), {"a", "b"}));
+}
+
+TEST_CASE("annotations: before the first operation of their kind, else the first at all, else lost") {
+  Circuit c;
+  add_register(c, "q", 2);
+  add_bits(c, "c", 1);
+  c.body().push_back(
+      c.make(Kind::r, {0}, {{0.5}, {0.25}}, c.origins.merged(Origins::line(3), Origins::line(7))));
+  c.body().push_back(c.make(Kind::r, {1}, {{0.5}, {0.25}}, Origins::line(3)));
+  Operation reading = c.make(Kind::measure, {0}, {}, Origins::line(7));
+  reading.payload = 0;
+  c.body().push_back(reading);
+  const std::vector<Annotation> annotations = {{"@r", 2, 3, 3},
+                                               {"@m", 6, 7, 7, "", Kind::measure},
+                                               {"@reset", 6, 7, 7, "", Kind::reset},
+                                               {"@lost", 8, 9, 12},
+                                               {"@c\nx", 1, 1, 1, "c"}};
+  const std::string text = native_program(place(c, typical(2)), {"a", "b", annotations});
+  CHECK(text.find("@r\n@reset\nr(0.5, 0.25) ion[0];\nr(0.5, 0.25) ion[1];\n@m\nc[0] = measure") !=
+        std::string::npos);
+  CHECK(text.find("@c x\nbit[1] c;\n") != std::string::npos);
+  CHECK(text.find("@lost") == std::string::npos);
+  const auto lost = places_of(annotations, c).lost;
+  REQUIRE(lost.size() == 1);
+  CHECK(lost[0].text == "@lost");
 }
