@@ -24,6 +24,7 @@ struct Order {
   std::string_view name;
   Names on_source;
   Names on_native;
+  std::string_view only_if = {};  // the order ends where this pass changes nothing: another one does the same
 };
 
 // One sweep and no more: merging takes gates on two wires and lowers them on its way.
@@ -55,6 +56,8 @@ const std::vector<Order>& steady_orders() {
   static const Names lower = {"lower"};
   // Toffolis found, before anything blurs them, and paired; the orders without this compete.
   static const Names paired = Names{"recover-toffolis"} + first_of_all + Names{"pair-toffolis"};
+  static const Names cubic =
+      Names{"recover-toffolis"} + first_of_all + Names{"cubic-networks", "rename-swaps", "pair-toffolis"};
   static const std::vector<Order> orders = {
       {"blocks", paired + Names{"choose-constructions"} + lower, rounds},
       {"distant", paired + Names{"choose-constructions", "merge-distant"} + lower,
@@ -63,6 +66,8 @@ const std::vector<Order>& steady_orders() {
        rounds + Names{"merge-distant"}},
       {"phases", first_of_all + Names{"expand-controls", "merge-distant"} + lower,
        rounds + Names{"merge-distant"}},
+      {"cubic", cubic + Names{"choose-constructions", "merge-distant"} + lower,
+       rounds + Names{"merge-distant"}, "cubic-networks"},
       {"plain", first_of_all + Names{"expand-controls"} + lower, rounds},
       {"networks", first_of_all + Names{"expand-controls", "merge-distant", "rotation-networks"} + lower,
        rounds},
@@ -83,6 +88,17 @@ std::size_t size_of(const Circuit& circuit) {
   std::size_t size = 0;
   for (const Block& block : circuit.blocks) size += block.size();
   return size;
+}
+
+/// Whether two versions of a program's blocks are the same gates on the same wires; angles are not looked at.
+bool are_same(const std::vector<Block>& a, const std::vector<Block>& b) {
+  const auto same_operation = [](const Operation& p, const Operation& q) {
+    return p.kind == q.kind && p.operand_count == q.operand_count &&
+           std::equal(std::begin(p.operand), std::end(p.operand), std::begin(q.operand));
+  };
+  return std::equal(a.begin(), a.end(), b.begin(), b.end(), [&](const Block& x, const Block& y) {
+    return std::equal(x.begin(), x.end(), y.begin(), y.end(), same_operation);
+  });
 }
 
 const Pass& pass_named(std::string_view name) {
@@ -111,8 +127,12 @@ class Candidate {
       if (!is_first && context_.out_of_time()) return;
       // A pass that searches until its deadline leaves a fifth of the time to those after it.
       if (deadline != Clock::time_point::max()) context_.deadline = start + (deadline - start) / 5 * 4;
+      const bool decides = name == order_->only_if;
+      const std::vector<Block> before = decides ? now().blocks : std::vector<Block>();
       step(name, false);
       context_.deadline = deadline;
+      is_idle_ = decides && are_same(before, now().blocks);
+      if (is_idle_) return;
     }
     result_.tally = rows_.back().after;
     if (!order_->on_native.empty()) {
@@ -127,6 +147,8 @@ class Candidate {
   }
 
   const TraceResult& result() const { return result_; }
+  /// Whether it ended early because another order does the same.
+  bool is_idle() const { return is_idle_; }
   std::vector<TraceRow>& rows() { return rows_; }
   Circuit& circuit() { return circuit_; }
   void inherit(double infidelity) { result_.infidelity += infidelity; }
@@ -192,6 +214,7 @@ class Candidate {
   Circuit circuit_;
   std::vector<TraceRow> rows_;
   TraceResult result_;
+  bool is_idle_ = false;
 };
 
 /// Runs all candidates on up to `threads` threads. An exception of one is thrown on when all have ended.
@@ -273,6 +296,7 @@ Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace
   if (trace) {
     for (std::vector<Candidate>* group : {&candidates, &found}) {
       for (Candidate& candidate : *group) {
+        if (candidate.is_idle()) continue;
         for (TraceRow& row : candidate.rows()) trace->rows.push_back(std::move(row));
         trace->results.push_back(candidate.result());
         trace->results.back().is_winner = &candidate == &winner;

@@ -2,6 +2,7 @@
 #include "passes/approximate.h"
 #include "passes/bits_at_end.h"
 #include "passes/constructions.h"
+#include "passes/cubic_networks.h"
 #include "passes/expand_controls.h"
 #include "passes/known_start.h"
 #include "passes/lower.h"
@@ -32,6 +33,7 @@ constexpr Pass table[] = {
     {"expand-controls", "gates with several controls become gates on two wires", expand_controls},
     {"recover-toffolis", "Toffolis written out as Clifford and T gates become one operation again",
      recover_toffolis},
+    {"cubic-networks", "networks of Toffolis and CNOTs are written with fewer Toffolis", cubic_networks},
     {"pair-toffolis", "Toffolis whose phases cancel against each other take fewer interactions",
      pair_toffolis},
     {"choose-constructions", "gates with several controls get their cheapest construction, with idle wires",
