@@ -55,12 +55,16 @@ bool is_sign(const Operation& op) {
   return op.kind == Kind::z && op.control_count() <= 2;
 }
 
+bool is_cubic(const Operation& op) {
+  return (is_not(op) || is_sign(op)) && op.operand_count == 3;
+}
+
 /// What every wire is to the Toffolis of a block, in their order.
 class Roles {
  public:
   Roles(const Circuit& circuit, const Block& block) : on_wire_(circuit.wires) {
     for (std::size_t i = 0; i < block.size(); ++i) {
-      if ((!is_not(block[i]) && !is_sign(block[i])) || block[i].operand_count != 3) continue;
+      if (!is_cubic(block[i])) continue;
       for (const std::uint32_t wire : circuit.operands(block[i])) {
         const bool is_target = block[i].kind == Kind::x && wire == block[i].operand[2];
         on_wire_[wire].push_back({i, is_target ? Basis::sign : Basis::bit});
@@ -400,14 +404,26 @@ class Rewriter {
 
 }  // namespace
 
-Circuit cubic_networks(Circuit circuit, const PassContext& context) {
+std::optional<Circuit> cubic_networks_beside(const Circuit& circuit, const PassContext& context) {
+  const auto has_toffolis = [](const Block& block) {
+    return std::any_of(block.begin(), block.end(), is_cubic);
+  };
+  if (std::none_of(circuit.blocks.begin(), circuit.blocks.end(), has_toffolis)) return std::nullopt;
+  Circuit result = circuit;
   const bool may_rename = !may_end_early(circuit);
+  bool is_changed = false;
   for (std::size_t b = 0; b < circuit.blocks.size(); ++b) {
-    const Block block = circuit.blocks[b];
-    if (auto better = Rewriter(circuit, context).rewritten(block, b == 0 && may_rename)) {
-      circuit.blocks[b] = std::move(*better);
-    }
+    auto better = Rewriter(result, context).rewritten(circuit.blocks[b], b == 0 && may_rename);
+    if (!better) continue;
+    result.blocks[b] = std::move(*better);
+    is_changed = true;
   }
+  if (!is_changed) return std::nullopt;
+  return result;
+}
+
+Circuit cubic_networks(Circuit circuit, const PassContext& context) {
+  if (auto better = cubic_networks_beside(circuit, context)) return std::move(*better);
   return circuit;
 }
 

@@ -24,7 +24,7 @@ struct Order {
   std::string_view name;
   Names on_source;
   Names on_native;
-  std::string_view only_if = {};  // the order ends where this pass changes nothing: another one does the same
+  std::string_view only_if = {};  // the order ends where this pass changes nothing: others do the same
 };
 
 // One sweep and no more: merging takes gates on two wires and lowers them on its way.
@@ -90,17 +90,6 @@ std::size_t size_of(const Circuit& circuit) {
   return size;
 }
 
-/// Whether two versions of a program's blocks are the same gates on the same wires; angles are not looked at.
-bool are_same(const std::vector<Block>& a, const std::vector<Block>& b) {
-  const auto same_operation = [](const Operation& p, const Operation& q) {
-    return p.kind == q.kind && p.operand_count == q.operand_count &&
-           std::equal(std::begin(p.operand), std::end(p.operand), std::begin(q.operand));
-  };
-  return std::equal(a.begin(), a.end(), b.begin(), b.end(), [&](const Block& x, const Block& y) {
-    return std::equal(x.begin(), x.end(), y.begin(), y.end(), same_operation);
-  });
-}
-
 const Pass& pass_named(std::string_view name) {
   for (const Pass& pass : all_passes()) {
     if (pass.name == name) return pass;
@@ -127,11 +116,9 @@ class Candidate {
       if (!is_first && context_.out_of_time()) return;
       // A pass that searches until its deadline leaves a fifth of the time to those after it.
       if (deadline != Clock::time_point::max()) context_.deadline = start + (deadline - start) / 5 * 4;
-      const bool decides = name == order_->only_if;
-      const std::vector<Block> before = decides ? now().blocks : std::vector<Block>();
-      step(name, false);
+      const bool is_changed = step(name, false);
       context_.deadline = deadline;
-      is_idle_ = decides && are_same(before, now().blocks);
+      is_idle_ = name == order_->only_if && !is_changed;
       if (is_idle_) return;
     }
     result_.tally = rows_.back().after;
@@ -181,7 +168,8 @@ class Candidate {
     result_.is_complete = improve() && result_.is_complete;
   }
 
-  void step(std::string_view name, bool is_lowered) {
+  /// Runs a pass; false where it says that it changed nothing.
+  bool step(std::string_view name, bool is_lowered) {
     TraceRow row;
     row.order = order_->name;
     row.pass = name;
@@ -189,23 +177,25 @@ class Candidate {
     row.gates_before = size_of(now());
     if (is_lowered) row.before = tally_of(now(), context_.cost);
     const auto start = Clock::now();
-    apply(pass_named(name));
+    const bool is_changed = apply(pass_named(name));
     row.seconds = seconds_since(start);
     row.gates_after = size_of(now());
     if (is_lowered || name == order_->on_source.back()) row.after = tally_of(now(), context_.cost);
     rows_.push_back(std::move(row));
+    return is_changed;
   }
 
   /// The source is copied only for a pass that cannot do without.
-  void apply(const Pass& pass) {
-    if (source_ && pass.run_beside) {
-      std::optional<Circuit> changed = pass.run_beside(*source_, context_);
-      if (!changed) return;
+  bool apply(const Pass& pass) {
+    if (pass.run_beside && (source_ || pass.name == order_->only_if)) {
+      std::optional<Circuit> changed = pass.run_beside(now(), context_);
+      if (!changed) return false;
       circuit_ = std::move(*changed);
     } else {
       circuit_ = pass.run(source_ ? *source_ : std::move(circuit_), context_);
     }
     source_ = nullptr;
+    return true;
   }
 
   const Order* order_;
