@@ -203,8 +203,12 @@ class Reader final : public StatementSink {
   };
   void define_gate(const syntax::GateDefinition& definition, syntax::Span at);
   void declare_gate_arguments(const syntax::GateDefinition& definition);
-  std::vector<Angle> gate_arguments(const Symbol& gate, const std::vector<SyntaxExpression>& angles,
-                                    syntax::Span at);
+  std::vector<Angle> gate_arguments(const Symbol& symbol, std::vector<Angle> arguments, syntax::Span at);
+  bool call_by_bits(const syntax::GateCall& call, const Symbol& symbol, const std::vector<Value>& values,
+                    const std::vector<Control>& controls, const std::vector<Qubits>& operands,
+                    syntax::Span at);
+  void apply_gate(const syntax::GateCall& call, const Symbol& symbol, std::span<const Angle> arguments,
+                  const std::vector<Control>& controls, const std::vector<Qubits>& operands, syntax::Span at);
   void call_gate(const syntax::GateCall& call, syntax::Span at);
   void call_old_form(const syntax::GateCall& call, const Symbol& symbol, syntax::Span at);
   void for_each_call(const syntax::GateCall& call, const std::vector<Qubits>& operands,
@@ -226,6 +230,8 @@ class Reader final : public StatementSink {
   Ending run_checked(const syntax::Statement& statement);
   void run_plain_statement(const syntax::Statement& statement);
   void run_expression(const syntax::ExpressionStatement& statement, const syntax::Statement& whole_statement);
+  void hoist_calls(const syntax::GateCall& call);
+  void hoist_calls(const SyntaxExpression& expression);
   /// Runs `action`; where it needs a running value (see Split), once for every value in an arm of its own.
   void with_splits(syntax::Span at, const std::set<std::string>& assigned,
                    const std::function<void()>& action);

@@ -138,6 +138,32 @@ void Reader::note_broken(const syntax::Statement& statement) {
   scopes_.add(std::move(symbol));
 }
 
+/// Calls in the angles and indices of a gate call are made once, before it: their results are variables like
+/// all others then, and the gate may need an arm for each of their values.
+void Reader::hoist_calls(const syntax::GateCall& call) {
+  if (capture_ != nullptr) return;
+  const Symbol* callee = scopes_.find(call.name.text);
+  if (callee != nullptr && callee->kind != Symbol::Kind::gate) return;  // a subroutine in the early form
+  for (const SyntaxExpression& angle : call.angles) hoist_calls(angle);
+  for (const SyntaxExpression& operand : call.operands) hoist_calls(operand);
+}
+
+void Reader::hoist_calls(const SyntaxExpression& expression) {
+  if (expression.kind == SyntaxExpression::Kind::call) {
+    const Symbol* callee = scopes_.find(expression.text);
+    const bool is_call = callee != nullptr &&
+                         (callee->kind == Symbol::Kind::subroutine || callee->kind == Symbol::Kind::external);
+    if (is_call) {
+      const Value value = evaluated(expression);
+      // What an extern gave is in a variable of its own already.
+      const bool is_kept = callee->kind == Symbol::Kind::external;
+      fixed_[&expression] = is_kept ? value : kept(value, callee->name + "_value");
+      return;
+    }
+  }
+  for (const SyntaxExpression& argument : expression.arguments) hoist_calls(argument);
+}
+
 void Reader::with_splits(syntax::Span at, const std::set<std::string>& assigned,
                          const std::function<void()>& action) {
   const std::size_t before = emitted_;
@@ -213,7 +239,10 @@ Ending Reader::run_statement(const syntax::Statement& statement) {
     fail(at, "inside a gate there are calls of gates, barriers and for loops only");
   }
   if (const auto* s = std::get_if<GateCall>(&statement.what)) {
+    const auto fixed = fixed_;
+    hoist_calls(*s);
     with_splits(at, {}, [&] { call_gate(*s, at); });
+    fixed_ = fixed;
     return has_ended_ ? Ending::ends : Ending::falls;
   }
   if (const auto* s = std::get_if<Declaration>(&statement.what)) {
