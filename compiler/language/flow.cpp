@@ -739,8 +739,10 @@ void Reader::define_subroutine(const syntax::Subroutine& definition, syntax::Spa
   symbol.name = definition.name.text;
   symbol.at = definition.name.at;
   symbol.definition = &definition;
-  declare(std::move(symbol));
+  Symbol& declared = declare(std::move(symbol));
+  const std::size_t errors_before = errors_;
   check_subroutine(definition);
+  if (errors_ != errors_before) declared.kind = Symbol::Kind::broken;  // nor are its calls run
 }
 
 void Reader::define_extern(const syntax::Extern& definition, syntax::Span at) {

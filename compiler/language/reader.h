@@ -253,16 +253,41 @@ class Reader final : public StatementSink {
   void emit_statement(ClassicalStatement statement, syntax::Span at);
   void emit_assignment(Expression target, Expression value, syntax::Span at);
 
-  // Names in code that is not run (check.cpp).
+  // Code that is not run (check.cpp).
+
+  /// A name declared there.
+  struct Local {
+    Type type;  // none where it is not known
+    bool is_qubit = false;
+    bool is_scalar = false;  // a single qubit
+    bool is_array = false;
+    bool is_unknown = false;
+  };
+  /// What is known of an expression that is not evaluated.
+  struct Checked {
+    Type type;  // none where it is not known
+    std::optional<Value> value;
+  };
   void check_unrun(const syntax::Body& body);
   void check_subroutine(const syntax::Subroutine& definition);
   void check_list(const Statements& statements);
   void check_statement(const syntax::Statement& statement);
   void check_call(const syntax::GateCall& call);
-  void check_expression(const SyntaxExpression& expression);
-  void check_type(const syntax::Type& type);
-  void check_name(const std::string& name, syntax::Span at, const char* what);
-  bool is_local(const std::string& name) const;
+  void check_declaration(const syntax::Declaration& declaration);
+  void check_assignment(const syntax::Assignment& assignment);
+  void check_measurement(const syntax::Measurement& measurement);
+  void check_qubits(const SyntaxExpression& operand);
+  void check_truth(const SyntaxExpression& condition);
+  void check_fits(const Checked& value, Type type, syntax::Span at);
+  Checked check_expression(const SyntaxExpression& expression);
+  Checked checked_name(const SyntaxExpression& expression);
+  Checked checked_call(const SyntaxExpression& expression);
+  Checked checked_index(const SyntaxExpression& expression);
+  Checked applied(const std::vector<Checked>& operands, syntax::Span at,
+                  const std::function<Value(const std::vector<Value>&)>& operation);
+  Type checked_type(const syntax::Type& type);
+  Local local_of(const syntax::Type& type);
+  const Local* local(const std::string& name) const;
 
   // Timing (timing.cpp).
   void delay(const syntax::Delay& delay, syntax::Span at);
@@ -388,8 +413,9 @@ class Reader final : public StatementSink {
   std::vector<std::vector<std::uint32_t>> temporaries_ = std::vector<std::vector<std::uint32_t>>(1);
   std::map<std::string, std::uint32_t> derived_;  // by printed expression
 
-  std::vector<std::set<std::string>> check_levels_;  // names declared in code that is not run
-  std::set<const syntax::Body*> checked_;            // of the statement being run
+  std::vector<std::map<std::string, Local>> check_levels_;  // names declared in code that is not run
+  std::optional<Type> check_result_;                        // of the subroutine that is checked
+  std::set<const syntax::Body*> checked_;                   // of the statement being run
   std::vector<Annotation> annotations_;
   std::set<std::uint32_t> annotated_;  // places of annotations that are noted
   bool times_asked_ = false;
