@@ -297,6 +297,9 @@ Value Reader::call_value(const SyntaxExpression& expression) {
   }
   if (symbol != nullptr && symbol->kind == Symbol::Kind::broken) throw Trouble{};
   if (expression.text == "sizeof" && version_ != 20) return size_value(expression);
+  if (expression.text == "pow" && version_ == 32) {
+    fail(expression.at, "`pow` is no function from OpenQASM 3.2 on", {"help: write a ** b"});
+  }
   if (is_function(expression.text, version_ == 20)) {
     std::vector<Value> values;
     for (const SyntaxExpression& argument : expression.arguments) values.push_back(evaluated(argument));

@@ -507,9 +507,13 @@ void Reader::initialize(Symbol symbol, const syntax::Declaration& declaration, s
 
 void Reader::declare_input(const syntax::Declaration& declaration, Symbol symbol, syntax::Span at) {
   if (declaration.value) fail(at, "an input gets its value from outside; it has none here");
-  if (symbol.type.base == Base::duration || symbol.type.base == Base::stretch ||
-      symbol.type.base == Base::complex) {
-    fail(declaration.type.at, fmt::format("an input of type {} is not supported", text_of(symbol.type)));
+  if (symbol.type.base == Base::duration || symbol.type.base == Base::stretch) {
+    fail(declaration.type.at, fmt::format("an input of type {} is not supported", text_of(symbol.type)),
+         {"note: times are fixed when a program is compiled; compile it once for each length"});
+  }
+  if (symbol.type.base == Base::complex) {
+    fail(declaration.type.at, fmt::format("an input of type {} is not supported", text_of(symbol.type)),
+         {"help: take its real and its imaginary part as two inputs of type float"});
   }
   symbol.kind = Symbol::Kind::input;
   symbol.is_set = true;
