@@ -10,6 +10,7 @@
 #include <stdexcept>
 #include <string>
 #include <string_view>
+#include <utility>
 #include <vector>
 
 #include "circuit/circuit.h"
@@ -83,8 +84,8 @@ class TextWriter {
   }
   /// What was kept; nothing where a stream has it.
   std::string take() {
-    buffer_.resize(out_ == nullptr ? used_ : 0);
-    used_ = 0;
+    if (out_ != nullptr) return {};
+    buffer_.resize(std::exchange(used_, 0));
     return std::move(buffer_);
   }
 
