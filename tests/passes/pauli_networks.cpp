@@ -142,6 +142,36 @@ TEST_CASE("greedy networks keep the unitary, with and without renaming") {
   }
 }
 
+TEST_CASE("greedy networks keep to their limit of interactions, homecoming included") {
+  support::Random random(27);
+  int refused = 0;
+  for (int round = 0; round < 300; ++round) {
+    const int qubits = 3 + round % 3;
+    Circuit source = random_piece(random, qubits, 5 + round % 20, families[round % 6]);
+    const auto wires = static_cast<unsigned>(qubits);
+    const Network network = network_of(turns_of(source), wires);
+    const bool may_rename = round % 2 == 0;
+    Taste taste;
+    taste.uses_tables = round % 3 != 0;
+    const auto interactions_of = [&](const Sequence& sequence) {
+      PairStretches stretches(wires, may_rename);
+      for (const Turn& turn : sequence.turns) stretches.add(turn);
+      return stretches.interactions();
+    };
+    Dice dice(1);
+    const auto any = greedy_sequence(network, taste, {1000000, may_rename}, dice);
+    REQUIRE(any);
+    const int taken = interactions_of(*any);
+    for (int limit = std::max(0, taken - 3); limit <= taken; ++limit) {
+      Dice again(1);
+      const auto limited = greedy_sequence(network, taste, {limit, may_rename}, again);
+      if (limited) CHECK(interactions_of(*limited) <= limit);
+      refused += !limited;
+    }
+  }
+  CHECK(refused > 300);
+}
+
 TEST_CASE("window search keeps the unitary and is never dearer") {
   support::Random random(24);
   for (int round = 0; round < 120; ++round) {
