@@ -147,6 +147,24 @@ TEST_CASE("rotations do not merge through what anticommutes, and a merged pair m
   CHECK(support::distance(circuit, merged) < 1e-9);
 }
 
+TEST_CASE("rotations look back over many others, and again when some have become Clifford") {
+  Circuit circuit = on(8);
+  circuit.body().push_back(circuit.make(Kind::rz, {0}, {{0.3}}));
+  for (std::uint32_t a = 0; a < 8; ++a) {
+    for (std::uint32_t b = 0; b < a; ++b) circuit.body().push_back(circuit.make(Kind::zz, {a, b}, {{0.1}}));
+  }
+  circuit.body().push_back(circuit.make(Kind::rz, {0}, {{0.4}}));
+  CHECK(rotations_of(merge_distant_rotations(circuit, {})) == 29);
+  // Four T gates are a Z, behind which the rotations about X have opposite signs.
+  Circuit flipped = on(1);
+  flipped.body().push_back(flipped.make(Kind::r, {0}, {{0.3}, {0}}));
+  for (int t = 0; t < 4; ++t) flipped.body().push_back(flipped.make(Kind::p, {0}, {{pi / 4}}));
+  flipped.body().push_back(flipped.make(Kind::r, {0}, {{0.4}, {0}}));
+  const Circuit merged = merge_distant_rotations(flipped, {});
+  CHECK(rotations_of(merged) == 1);
+  CHECK(support::distance(flipped, merged) < 1e-12);
+}
+
 TEST_CASE("merging: random circuits of every family keep their unitary and never gain rotations") {
   support::Random random(12);
   int merged_some = 0;

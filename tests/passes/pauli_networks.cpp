@@ -103,14 +103,20 @@ TEST_CASE("stretches: written with the interactions and the error that were prom
     Circuit source = random_piece(random, qubits, 4 + round % 12, families[round % 6]);
     const bool may_rename = round % 4 != 0;
     const auto wires = static_cast<unsigned>(qubits);
-    const Sequence sequence{turns_of(source), at_home(wires)};
+    Sequence sequence{turns_of(source), at_home(wires)};
+    for (Turn& turn : sequence.turns) {
+      if (!random.chance(0.5)) continue;
+      turn.negative = true;
+      turn.angle = source.forms.negated(turn.angle);
+    }
     const Circuit result = circuit_of(source, sequence, true, may_rename);
     CHECK(support::distance(source, result, values) < 1e-8);
     const Cost cost;
     const Price price = price_of(sequence.turns, wires, may_rename, cost);
     const Tally tally = tally_of(result);
     CHECK(static_cast<int>(tally.xx) == price.interactions);
-    if (families[round % 6] == Family::clifford || families[round % 6] == Family::clifford_t) {
+    if (families[round % 6] == Family::clifford || families[round % 6] == Family::clifford_t ||
+        families[round % 6] == Family::symbolic) {
       // No tiny angles: what the search counts with by invariants is what canonical coordinates say.
       PairStretches stretches(wires, may_rename);
       for (const Turn& turn : sequence.turns) stretches.add(turn);
