@@ -75,7 +75,12 @@ class Tastes {
 class Walk {
  public:
   Walk(FormTask task, const Taste& taste, Dice& dice)
-      : task_(std::move(task)), taste_(taste), dice_(dice), gain_(task_.wires * task_.wires) {
+      : task_(std::move(task)),
+        taste_(taste),
+        dice_(dice),
+        near_(task_.wires),
+        from_afar_(task_.wires),
+        difference_(task_.wires * task_.wires) {
     forget_reached();
   }
 
@@ -108,11 +113,14 @@ class Walk {
            std::all_of(task_.home.begin(), task_.home.end(), [](Form form) { return distance(form) == 0; });
   }
 
-  double& gain(unsigned from, unsigned to) { return gain_[to * task_.wires + from]; }
-
-  /// How much each addition changes the potential.
+  /// How much each addition changes the potential. Nothing is gained from a wire that shares no form with the
+  /// target, so only the others are listed, as differences from what such a wire would do.
   void weigh() {
-    std::fill(gain_.begin(), gain_.end(), 0.0);
+    for (unsigned to = 0; to < task_.wires; ++to) {
+      for (Form rest = near_[to]; rest != 0; rest &= rest - 1) difference(lowest(rest), to) = 0;
+    }
+    std::fill(near_.begin(), near_.end(), 0);
+    std::fill(from_afar_.begin(), from_afar_.end(), 0.0);
     for (const Stop& stop : task_.stops) weigh(stop);
     const double scale = task_.stops.empty() ? 1 / taste_.home(1) : 1;
     for (const Form form : task_.home) {
@@ -120,9 +128,11 @@ class Walk {
       const double further = scale * (taste_.home(d + 1) - taste_.home(d));
       const double nearer = scale * (taste_.home(d - 1) - taste_.home(d));
       for (Form rest = form; rest != 0; rest &= rest - 1) {
-        const auto to = static_cast<unsigned>(std::countr_zero(rest));
-        for (unsigned from = 0; from < task_.wires; ++from) {
-          if (from != to) gain(from, to) += (form >> from & 1) != 0 ? nearer : further;
+        const unsigned to = lowest(rest);
+        from_afar_[to] += further;
+        near_[to] |= form;
+        for (Form other = form; other != 0; other &= other - 1) {
+          difference(lowest(other), to) += nearer - further;
         }
       }
     }
@@ -133,7 +143,7 @@ class Walk {
     std::array<double, 7> change;  // of the potential where the distance changes by -3 to 3
     for (int k = -3; k <= 3; ++k) change[k + 3] = taste_.stop(d + k) - taste_.stop(d);
     for (Form rest = stop[0] | stop[1] | stop[2]; rest != 0; rest &= rest - 1) {
-      const auto to = static_cast<unsigned>(std::countr_zero(rest));
+      const unsigned to = lowest(rest);
       int affected = 0;
       Form once = 0, twice = 0, thrice = 0;  // wires in one, two, three of the affected forms
       for (const Form form : stop) {
@@ -143,14 +153,18 @@ class Walk {
         twice |= once & form;
         once |= form;
       }
-      for (unsigned from = 0; from < task_.wires; ++from) {
-        if (from == to) continue;
-        const int shared = static_cast<int>(once >> from & 1) + static_cast<int>(twice >> from & 1) +
-                           static_cast<int>(thrice >> from & 1);
-        gain(from, to) += change[affected - 2 * shared + 3];
+      from_afar_[to] += change[affected + 3];
+      near_[to] |= once;
+      for (Form other = once; other != 0; other &= other - 1) {
+        const unsigned from = lowest(other);
+        const int shared = 1 + static_cast<int>(twice >> from & 1) + static_cast<int>(thrice >> from & 1);
+        difference(from, to) += change[affected - 2 * shared + 3] - change[affected + 3];
       }
     }
   }
+
+  static unsigned lowest(Form form) { return static_cast<unsigned>(std::countr_zero(form)); }
+  double& difference(unsigned from, unsigned to) { return difference_[to * task_.wires + from]; }
 
   /// The best addition; bound to the nearest stop, or row of the end, where nothing gains.
   std::optional<Addition> next(const Additions& route) {
@@ -158,14 +172,15 @@ class Walk {
     double best = is_bound_ ? std::numeric_limits<double>::max() : -1e-9;
     std::optional<Addition> step;
     for (unsigned to = 0; to < task_.wires; ++to) {
-      for (unsigned from = 0; from < task_.wires; ++from) {
-        if (from == to) continue;
-        if (!is_bound_ && gain(from, to) >= 0) continue;
+      for (Form rest = near_[to] & ~bit(to); rest != 0; rest &= rest - 1) {
+        const unsigned from = lowest(rest);
+        const double gain = from_afar_[to] + difference(from, to);
+        if (!is_bound_ && gain >= 0) continue;
         if (is_bound_ && !is_nearer(goal, {static_cast<std::uint8_t>(from), static_cast<std::uint8_t>(to)})) {
           continue;
         }
         if (!route.empty() && route.back().from == from && route.back().to == to) continue;
-        const double weighed = gain(from, to) * taste_.noise(dice_);
+        const double weighed = gain * taste_.noise(dice_);
         if (weighed >= best) continue;
         best = weighed;
         step = Addition{static_cast<std::uint8_t>(from), static_cast<std::uint8_t>(to)};
@@ -195,7 +210,9 @@ class Walk {
   FormTask task_;
   const Taste& taste_;
   Dice& dice_;
-  std::vector<double> gain_;
+  std::vector<Form> near_;          // by target: the wires that share a form with it
+  std::vector<double> from_afar_;   // by target: the change if any other wire is added to it
+  std::vector<double> difference_;  // by target and source near it
   bool is_bound_ = false;
 };
 
