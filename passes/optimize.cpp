@@ -66,8 +66,7 @@ const std::vector<Order>& steady_orders() {
        rounds + Names{"merge-distant"}},
       {"phases", first_of_all + Names{"expand-controls", "merge-distant"} + lower,
        rounds + Names{"merge-distant"}},
-      {"cubic", cubic + Names{"choose-constructions", "merge-distant"} + lower,
-       rounds + Names{"merge-distant"}, "cubic-networks"},
+      {"cubic", cubic + Names{"choose-constructions"} + lower, rounds, "cubic-networks"},
       {"plain", first_of_all + Names{"expand-controls"} + lower, rounds},
       {"networks", first_of_all + Names{"expand-controls", "merge-distant", "rotation-networks"} + lower,
        rounds},
@@ -116,10 +115,13 @@ class Candidate {
       if (!is_first && context_.out_of_time()) return;
       // A pass that searches until its deadline leaves a fifth of the time to those after it.
       if (deadline != Clock::time_point::max()) context_.deadline = start + (deadline - start) / 5 * 4;
+      const bool decides = name == order_->only_if;
+      if (decides) waypoints_ = {now()};
       const bool is_changed = step(name, false);
       context_.deadline = deadline;
-      is_idle_ = name == order_->only_if && !is_changed;
-      if (is_idle_) return;
+      is_idle_ = decides && !is_changed;
+      if (is_idle_) return waypoints_.clear();
+      if (decides) waypoints_.push_back(now());
     }
     result_.tally = rows_.back().after;
     if (!order_->on_native.empty()) {
@@ -137,6 +139,7 @@ class Candidate {
   /// Whether it ended early because another order does the same.
   bool is_idle() const { return is_idle_; }
   std::vector<TraceRow>& rows() { return rows_; }
+  std::vector<Circuit>& waypoints() { return waypoints_; }
   Circuit& circuit() { return circuit_; }
   void inherit(double infidelity) { result_.infidelity += infidelity; }
 
@@ -203,6 +206,7 @@ class Candidate {
   const Circuit* source_ = nullptr;  // until a pass has changed it: then circuit_ holds what it has become
   Circuit circuit_;
   std::vector<TraceRow> rows_;
+  std::vector<Circuit> waypoints_;
   TraceResult result_;
   bool is_idle_ = false;
 };
@@ -284,6 +288,7 @@ Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace
   if (may_search && !is_one_stretch(source)) search_on(*best, context, found);
   Candidate& winner = found.empty() ? *best : found.back();
   if (trace) {
+    trace->waypoints = std::move(best->waypoints());  // searching on begins where the best has ended
     for (std::vector<Candidate>* group : {&candidates, &found}) {
       for (Candidate& candidate : *group) {
         if (candidate.is_idle()) continue;

@@ -38,6 +38,9 @@ struct TraceResult {
 struct Trace {
   std::vector<TraceRow> rows;
   std::vector<TraceResult> results;
+  /// What the source had become before and after a pass that rewrote it as a whole, if the winner had one: to
+  /// check the result in steps.
+  std::vector<Circuit> waypoints;
 };
 
 /// Source circuit (any kinds, any number of controls) to lowered circuit: r, xx, rz and what is not unitary,

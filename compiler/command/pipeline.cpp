@@ -100,7 +100,8 @@ Verdict check(const Result& result, const Settings& settings) {
   options.infidelity = settings.tolerance;
   options.threads = settings.thread_count();
   options.seed = settings.seed;
-  return compare(result.source.circuit, native, settings.promise_for(result.source.circuit), options);
+  return compare_by_way(result.source.circuit, result.trace.waypoints, native,
+                        settings.promise_for(result.source.circuit), options);
 }
 
 }  // namespace

@@ -3,6 +3,7 @@
 
 #include <chrono>
 #include <cstdint>
+#include <span>
 #include <string>
 #include <string_view>
 
@@ -51,5 +52,10 @@ struct CheckOptions {
 /// of the bits.
 Verdict compare(const Circuit& source, const Circuit& compiled, const Promise& promise,
                 const CheckOptions& options = {});
+
+/// As compare(); where that shows nothing, step by step: source to waypoints[0], to waypoints[1] and so on to
+/// `compiled`. The waypoints are what the compiler says it came by; nothing else about them is believed.
+Verdict compare_by_way(const Circuit& source, std::span<const Circuit> waypoints, const Circuit& compiled,
+                       const Promise& promise, const CheckOptions& options = {});
 
 }  // namespace isinglass
