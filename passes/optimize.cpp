@@ -4,11 +4,13 @@
 #include <algorithm>
 #include <atomic>
 #include <chrono>
+#include <initializer_list>
 #include <stdexcept>
 #include <thread>
 #include <utility>
 
 #include "passes/approximate.h"
+#include "passes/pace.h"
 
 namespace isinglass {
 
@@ -99,20 +101,21 @@ const Pass& pass_named(std::string_view name) {
 /// Runs one order and writes down what each pass did.
 class Candidate {
  public:
-  Candidate(const Order& order, const PassContext& context, unsigned threads)
-      : order_(&order), context_(context) {
+  Candidate(const Order& order, const PassContext& context, unsigned threads, Pace& pace)
+      : order_(&order), context_(context), pace_(&pace) {
     context_.threads = threads;
     if (&order == &quick_order) context_.effort = Effort::quick;
   }
 
-  /// The first candidate runs whatever the time, so that there is a result; the others not once it is over.
+  /// The first candidate runs whatever the time, so that there is a result; the others as long as what comes
+  /// next can be expected to end in time.
   void run(const Circuit& source, bool is_first) {
     source_ = &source;
     result_.order = order_->name;
     const auto start = Clock::now();
     const Clock::time_point deadline = context_.deadline;
     for (const std::string_view name : order_->on_source) {
-      if (!is_first && context_.out_of_time()) return;
+      if (!is_first && !is_time_for({name})) return;
       // A pass that searches until its deadline leaves a fifth of the time to those after it.
       if (deadline != Clock::time_point::max()) context_.deadline = start + (deadline - start) / 5 * 4;
       const bool decides = name == order_->only_if;
@@ -127,7 +130,7 @@ class Candidate {
     if (!order_->on_native.empty()) {
       result_.is_complete = improve();
       if (context_.tolerance > 0) shorten();
-      step("lower", true);  // the normal form, whatever the last pass left
+      if (rows_.back().pass != "lower") step("lower", true);  // the normal form, whatever the last pass left
       result_.tally = rows_.back().after;
     }
     if (source_) circuit_ = *std::exchange(source_, nullptr);
@@ -154,7 +157,7 @@ class Candidate {
     double error = tally_of(now(), context_.cost).error;
     for (int round = 0; round < most_rounds; ++round) {
       for (const std::string_view name : order_->on_native) {
-        if (context_.out_of_time()) return false;
+        if (!is_time_for({name, "lower"})) return false;
         step(name, true);
       }
       const double after = tally_of(now(), context_.cost).error;
@@ -164,8 +167,17 @@ class Candidate {
     return true;
   }
 
+  /// Whether these passes, one after the other, will end before the deadline.
+  bool is_time_for(std::initializer_list<std::string_view> names) const {
+    if (context_.deadline == Clock::time_point::max()) return true;
+    double seconds = 0;
+    for (const std::string_view name : names) seconds += pace_->expected(pass_named(name), size_of(now()));
+    return seconds < -seconds_since(context_.deadline);
+  }
+
   /// Spends the tolerance, once, and goes round again with what that has opened.
   void shorten() {
+    if (!is_time_for({"approximate", "lower"})) return;
     result_.infidelity = approximated(now(), context_).infidelity;
     step("approximate", true);
     result_.is_complete = improve() && result_.is_complete;
@@ -182,6 +194,8 @@ class Candidate {
     const auto start = Clock::now();
     const bool is_changed = apply(pass_named(name));
     row.seconds = seconds_since(start);
+    // One that searched until its time was over has not shown what it needs.
+    if (!context_.out_of_time()) pace_->saw(pass_named(name), row.gates_before, row.seconds);
     row.gates_after = size_of(now());
     if (is_lowered || name == order_->on_source.back()) row.after = tally_of(now(), context_.cost);
     rows_.push_back(std::move(row));
@@ -203,6 +217,7 @@ class Candidate {
 
   const Order* order_;
   PassContext context_;
+  Pace* pace_;
   const Circuit* source_ = nullptr;  // until a pass has changed it: then circuit_ holds what it has become
   Circuit circuit_;
   std::vector<TraceRow> rows_;
@@ -238,12 +253,12 @@ void run_all(std::vector<Candidate>& candidates, const Circuit& source, unsigned
 namespace {
 
 /// Orders that one search is tried in; the quick one first, which ends whatever the time.
-std::vector<Candidate> candidates_for(const Circuit& source, const PassContext& context) {
+std::vector<Candidate> candidates_for(const Circuit& source, const PassContext& context, Pace& pace) {
   std::vector<Candidate> candidates;
-  candidates.emplace_back(quick_order, context, 1);
+  candidates.emplace_back(quick_order, context, 1, pace);
   if (context.effort == Effort::quick) return candidates;
   for (const Order& order : steady_orders()) {
-    candidates.emplace_back(order, context, 1);
+    candidates.emplace_back(order, context, 1, pace);
     if (is_one_stretch(source)) break;  // and the first order finds its best form
   }
   return candidates;
@@ -255,11 +270,11 @@ bool is_better(const TraceResult& a, const TraceResult& b) {
 }
 
 /// Searches on with other random choices as long as there is time for more than a glance.
-void search_on(Candidate& best, const PassContext& context, std::vector<Candidate>& found) {
+void search_on(Candidate& best, const PassContext& context, Pace& pace, std::vector<Candidate>& found) {
   PassContext more = context;
   more.tolerance = 0;  // is spent
   const auto try_order = [&](const Order& order, const PassContext& given) {
-    Candidate candidate(order, given, context.threads);
+    Candidate candidate(order, given, context.threads, pace);
     candidate.run(found.empty() ? best.circuit() : found.back().circuit(), false);
     candidate.inherit(best.result().infidelity);
     const TraceResult& now = found.empty() ? best.result() : found.back().result();
@@ -278,14 +293,15 @@ void search_on(Candidate& best, const PassContext& context, std::vector<Candidat
 }  // namespace
 
 Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace) {
-  std::vector<Candidate> candidates = candidates_for(source, context);
+  Pace pace;
+  std::vector<Candidate> candidates = candidates_for(source, context, pace);
   run_all(candidates, source, context.threads);
   // The first of equals wins, so that the outcome does not hang on which thread was faster.
   const auto best = std::min_element(candidates.begin(), candidates.end(),
                                      [](auto& a, auto& b) { return is_better(a.result(), b.result()); });
   std::vector<Candidate> found;
   const bool may_search = context.effort == Effort::deep && context.deadline != Clock::time_point::max();
-  if (may_search && !is_one_stretch(source)) search_on(*best, context, found);
+  if (may_search && !is_one_stretch(source)) search_on(*best, context, pace, found);
   Candidate& winner = found.empty() ? *best : found.back();
   if (trace) {
     trace->waypoints = std::move(best->waypoints());  // searching on begins where the best has ended
