@@ -285,7 +285,7 @@ void Reader::check_distinct(const std::vector<std::uint32_t>& wires, const std::
     for (std::size_t j = 0; j < i; ++j) {
       if (wires[i] != wires[j]) continue;
       const std::string name = capture_ != nullptr ? operands[owner[i]].text : circuit_.wire_name(wires[i]);
-      fail(operands[owner[i]].at, fmt::format("qubit `{}` is given twice", name));
+      throw GivenTwice{{operands[owner[i]].at, fmt::format("qubit `{}` is given twice", name), {}}};
     }
   }
 }

@@ -36,6 +36,9 @@ struct Trouble {
   std::vector<std::string> notes;
 };
 
+/// One qubit given twice in a call. Where a running index has led there, it is the running program's fault.
+struct GivenTwice : Trouble {};
+
 /// A limit was exceeded: reading ends.
 struct Overflow {
   Trouble trouble;

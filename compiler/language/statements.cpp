@@ -222,7 +222,12 @@ void Reader::run_split(const Split& split, const std::set<std::string>& assigned
       fixed_variables_[split.variable] = value;
     }
     arm.block = open_arm();
-    with_splits(split.at, assigned, action);
+    try {
+      with_splits(split.at, assigned, action);
+    } catch (const GivenTwice&) {
+      warn(split.at, "for some values of the running index a qubit is given twice; nothing is done for them");
+      circuit_.blocks[arm.block].clear();
+    }
     close_arm();
     fixed_ = outer_indices;
     fixed_variables_ = outer_variables;
@@ -366,6 +371,10 @@ void Reader::declare_qubits(const syntax::QubitDeclaration& declaration, syntax:
   symbol.name = declaration.name.text;
   symbol.at = declaration.name.at;
   symbol.is_scalar = !declaration.size;
+  if (version_ == 20 && symbol.is_scalar) {
+    fail(declaration.name.at, fmt::format("the register `{}` needs a size", symbol.name),
+         {fmt::format("help: write qreg {}[1];", symbol.name)});
+  }
   const std::uint32_t size = declaration.size ? size_of(*declaration.size, 0, "the size of a register") : 1;
   if (circuit_.wires + std::uint64_t(size) > most_qubits) {
     fail(at, fmt::format("a program has at most {} qubits", most_qubits));
@@ -388,6 +397,10 @@ void Reader::declare_variable(const syntax::Declaration& declaration, syntax::Sp
   const bool global = scopes_.depth() == 1;
   symbol.type = scalar_type(is_array ? declaration.type.element[0] : declaration.type);
   if (symbol.type.base == Base::none) fail(declaration.type.at, "a variable cannot be void");
+  if (version_ == 20 && declaration.old_form && declaration.type.width.empty()) {
+    fail(declaration.name.at, fmt::format("the register `{}` needs a size", symbol.name),
+         {fmt::format("help: write creg {}[1];", symbol.name)});
+  }
   if (is_array) {
     if (!global) fail(at, "arrays are declared at the outermost level only");
     if (symbol.type.base == Base::bit || symbol.type.base == Base::bits ||

@@ -215,6 +215,17 @@ TEST_CASE("barrier, reset, delay, box, durations") {
   CHECK(errors_in("duration d = 1ns * 1ns;").size() == 1);
 }
 
+TEST_CASE("running indices that may meet: nothing is done where they do") {
+  const std::string body = "qubit[3] q; bit[2] c; c = measure q[0:1]; uint[2] k = uint[2](c);\n";
+  const Circuit circuit = circuit_of(heading + body + "cx q[k], q[(k + 1) % 3];");
+  std::size_t gates = 0;
+  for (const Block& block : circuit.blocks) {
+    for (const Operation& op : block) gates += op.kind == Kind::x ? 1 : 0;
+  }
+  CHECK(gates == 6);  // all ordered pairs
+  CHECK(errors_of(heading + body + "cx q[1], q[1];").size() == 1);
+}
+
 TEST_CASE("running angles: conditional gates for rotations, arms for the rest, a limit") {
   const auto branches = [](const std::string& body) {
     const Circuit circuit =
