@@ -141,7 +141,7 @@ void Reader::note_broken(const syntax::Statement& statement) {
 /// Calls in the angles and indices of a gate call are made once, before it: their results are variables like
 /// all others then, and the gate may need an arm for each of their values.
 void Reader::hoist_calls(const syntax::GateCall& call) {
-  if (capture_ != nullptr) return;
+  if (capture_ != nullptr || !has_callables_) return;
   const Symbol* callee = scopes_.find(call.name.text);
   if (callee != nullptr && callee->kind != Symbol::Kind::gate) return;  // a subroutine in the early form
   for (const SyntaxExpression& angle : call.angles) hoist_calls(angle);
