@@ -38,10 +38,11 @@ struct TraceResult {
 struct Trace {
   std::vector<TraceRow> rows;
   std::vector<TraceResult> results;
-  /// What the source had become before and after a pass that rewrote it as a whole, if the winner had one: to
-  /// check the result in steps.
-  std::vector<Circuit> waypoints;
 };
+
+/// What the winner went through: the circuit after each pass that changed it. Whoever checks the result can
+/// follow it in small steps.
+using Steps = std::vector<Circuit>;
 
 /// Source circuit (any kinds, any number of controls) to lowered circuit: r, xx, rz and what is not unitary,
 /// in normal form: between two other operations on a wire at most one r with 0 < theta <= pi; xx with
@@ -50,6 +51,7 @@ struct Trace {
 /// Several orders of passes run, each to a fixed point or the deadline; the one with the lowest estimated
 /// error under context.cost wins. The same seed gives the same circuit as long as the deadline does not cut
 /// in.
-Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace = nullptr);
+Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace = nullptr,
+                 Steps* steps = nullptr);
 
 }  // namespace isinglass

@@ -89,8 +89,9 @@ void warn_of_lost_annotations(const Result& result, bool quiet) {
   std::cerr << printed(message);
 }
 
-/// Reads the native text back, as any other program would, and holds it against the source.
-Verdict check(const Result& result, const Settings& settings) {
+/// Reads the native text back, as any other program would, and holds it against the source; `steps` are what
+/// the compiler went through.
+Verdict check(const Result& result, const Steps& steps, const Settings& settings) {
   Reading reading = read("the native program", result.native);
   if (!reading.ok()) {
     throw std::logic_error("the native program does not read back: " + printed(reading.messages.front()));
@@ -100,8 +101,8 @@ Verdict check(const Result& result, const Settings& settings) {
   options.infidelity = settings.tolerance;
   options.threads = settings.thread_count();
   options.seed = settings.seed;
-  return compare_by_way(result.source.circuit, result.trace.waypoints, native,
-                        settings.promise_for(result.source.circuit), options);
+  return compare_along(result.source.circuit, steps, native, settings.promise_for(result.source.circuit),
+                       options);
 }
 
 }  // namespace
@@ -165,8 +166,11 @@ Result compile(const std::string& path, const Settings& settings, Progress& prog
     result.target = target_for(settings, ions_wanted(source), [&](double share) { progress.share(share); });
   });
   Circuit lowered;
-  timed("improve", "improving",
-        [&] { lowered = optimize(source, context_for(settings, source, result.target), &result.trace); });
+  Steps steps;
+  timed("improve", "improving", [&] {
+    lowered = optimize(source, context_for(settings, source, result.target), &result.trace,
+                       settings.check ? &steps : nullptr);
+  });
   timed("place", "placing", [&] {
     result.placed = place(std::move(lowered), result.target, {.seed = settings.seed});
     if (result.placed.moves == 0) return;
@@ -185,7 +189,7 @@ Result compile(const std::string& path, const Settings& settings, Progress& prog
     result.verdict.explanation = "--no-verify was given.";
   } else {
     result.is_checked = true;
-    timed("check", "checking", [&] { result.verdict = check(result, settings); });
+    timed("check", "checking", [&] { result.verdict = check(result, steps, settings); });
     if (result.verdict.answer == Answer::different) {
       throw std::logic_error(
           fmt::format("its result for {} is not the same program ({}: {}; deviation {:.2g})", path,

@@ -4,11 +4,12 @@
 #include <fmt/format.h>
 
 #include <algorithm>
+#include <cmath>
 #include <random>
 
 #include "verify/dense.h"
+#include "verify/late_bits.h"
 #include "verify/memory.h"
-#include "verify/paths.h"
 #include "verify/programs.h"
 #include "verify/rotations.h"
 #include "verify/side_by_side.h"
@@ -264,45 +265,24 @@ Verdict compare_side_by_side(const Job& job) {
                 words + for_inputs(job, sets));
 }
 
-/// Without amplitudes: both as sums over paths. Shows sameness or nothing.
-Verdict compare_paths(const Job& job) {
-  bool are_same = true;
-  PathResult worst;
-  const int sets = for_each_input_set(job, [&](const InputValues& values) {
-    if (!are_same) return;
-    const double before = worst.distance;
-    worst = by_paths(job, values);
-    worst.distance = std::max(worst.distance, before);
-    are_same = worst.are_same;
-  });
-  if (!are_same) return not_shown("Their sums over paths are not written alike, which proves nothing.");
-  const Deviation deviation{worst.distance, worst.distance * worst.distance, 0};
-  const std::string words = fmt::format(
-      "Both circuits were written as sums over paths, polynomials in {} variables; all of them are equal, "
-      "which decides.",
-      worst.variables);
-  return judged(job, "paths", deviation, words + for_inputs(job, sets));
-}
-
 /// The methods without amplitudes, the cheaper first.
 Verdict compare_sparsely(const Job& job) {
   if (!is_simple(job)) {
     return not_shown("The programs are too large for state vectors, and measure on the way.");
   }
   if (job.options.most_followed_wires == 0) return compare_rotations(job);
-  Verdict verdict = compare_side_by_side(job);
-  for (const auto method : {compare_paths, compare_rotations}) {
-    if (verdict.answer != Answer::not_shown) return verdict;
-    std::string words = verdict.explanation;
-    try {
-      verdict = method(job);
-      if (verdict.answer == Answer::not_shown) verdict.explanation = words + " " + verdict.explanation;
-    } catch (const Unsupported& limit) {
-      verdict.explanation =
-          fmt::format("{} Another method came to no end either: {} was beyond it.", words, limit.what());
-    }
+  const Verdict followed = compare_side_by_side(job);
+  if (followed.answer != Answer::not_shown) return followed;
+  Verdict rotated;
+  try {
+    rotated = compare_rotations(job);
+  } catch (const Unsupported& limit) {
+    rotated =
+        not_shown(fmt::format("Pauli rotations came to no end either: {} was beyond them.", limit.what()));
   }
-  return verdict;
+  if (rotated.answer == Answer::not_shown)
+    rotated.explanation = followed.explanation + " " + rotated.explanation;
+  return rotated;
 }
 
 }  // namespace
@@ -329,7 +309,10 @@ Verdict compare(const Circuit& source, const Circuit& compiled, const Promise& p
   if (!renumbered.mismatch.empty()) {
     return different("The variable " + renumbered.mismatch + " has another type in the compiled program.");
   }
-  const auto [left, right] = without_idle_wires(source, renumbered.circuit);
+  auto [left, right] = without_idle_wires(source, renumbered.circuit);
+  for (Circuit* circuit : {&left, &right}) {
+    if (auto plain = with_late_bits_on_wires(*circuit)) *circuit = *std::move(plain);
+  }
   const Job job{left, right, promise, options};
   if (const std::string name = missing_input(job); !name.empty()) {
     return different("The compiled program has no input " + name + ".");
@@ -342,26 +325,62 @@ Verdict compare(const Circuit& source, const Circuit& compiled, const Promise& p
   }
 }
 
-Verdict compare_by_way(const Circuit& source, std::span<const Circuit> waypoints, const Circuit& compiled,
+namespace {
+
+/// Without state vectors. Most steps hold whatever the start, which is easier to follow than a known one.
+Verdict compared_sparsely(const Circuit& source, const Circuit& compiled, Promise promise,
+                          CheckOptions options) {
+  options.most_state_wires = 0;
+  const bool is_known_start = promise.zero_start;
+  promise.zero_start = false;
+  Verdict verdict = compare(source, compiled, promise, options);
+  if (verdict.answer == Answer::same || !is_known_start) return verdict;
+  promise.zero_start = true;
+  return compare(source, compiled, promise, options);
+}
+
+/// Steps that prove each its own come to this together, or to the reason why not.
+Verdict followed_along(const Circuit& source, std::span<const Circuit> steps, const Circuit& compiled,
                        const Promise& promise, const CheckOptions& options) {
-  const Verdict direct = compare(source, compiled, promise, options);
-  if (direct.answer != Answer::not_shown || waypoints.empty()) return direct;
-  Verdict whole;
-  whole.answer = Answer::same;
-  whole.method = "steps";
-  whole.explanation =
-      fmt::format("Compared in {} steps, by way of what the compiler came by.", waypoints.size() + 1);
-  for (std::size_t k = 0; k <= waypoints.size(); ++k) {
-    const bool is_last = k == waypoints.size();
-    CheckOptions exact = options;
-    if (!is_last) exact.infidelity = 0;
-    const Verdict step =
-        compare(k == 0 ? source : waypoints[k - 1], is_last ? compiled : waypoints[k], promise, exact);
-    if (step.answer != Answer::same) return direct;
-    whole.distance += step.distance;
-    whole.explanation += fmt::format(" {}: {}", k + 1, step.explanation);
+  Verdict sum;
+  const Circuit* before = &source;
+  for (std::size_t k = 0; k <= steps.size(); ++k) {
+    const Circuit& after = k < steps.size() ? steps[k] : compiled;
+    const Verdict step = compared_sparsely(*before, after, promise, options);
+    if (step.answer != Answer::same) return step;
+    sum.distance += step.distance;
+    before = &after;
   }
-  return whole.distance <= options.tolerance || options.infidelity > 0 ? whole : direct;
+  if (sum.distance > options.tolerance) return not_shown("What was rounded on the way adds up to too much.");
+  sum.answer = Answer::same;
+  sum.method = "steps";
+  sum.explanation = fmt::format(
+      "The way from the source to the result was followed in {} steps, each of them gate by gate or as Pauli "
+      "rotations, and each is nothing: together this decides. Largest deviation {:.1e}.",
+      steps.size() + 1, sum.distance);
+  return sum;
+}
+
+/// Whether state vectors would take more than a moment.
+bool are_states_dear(const Circuit& source, const Circuit& compiled) {
+  const std::uint32_t wires = std::max(source.wires, compiled.wires);
+  const auto gates = static_cast<double>(source.body().size() + compiled.body().size());
+  return wires >= 64 || gates * std::pow(2.0, wires) > 3e8;
+}
+
+}  // namespace
+
+Verdict compare_along(const Circuit& source, std::span<const Circuit> steps, const Circuit& compiled,
+                      const Promise& promise, const CheckOptions& options) {
+  const bool is_cut = options.infidelity > 0;  // then some step is not the same
+  if (is_cut || steps.empty() || !are_states_dear(source, compiled))
+    return compare(source, compiled, promise, options);
+  Verdict direct = compared_sparsely(source, compiled, promise, options);
+  if (direct.answer == Answer::same) return direct;
+  Verdict along = followed_along(source, steps, compiled, promise, options);
+  if (along.answer == Answer::same) return along;
+  const bool has_states = std::max(source.wires, compiled.wires) <= options.most_state_wires;
+  return has_states ? compare(source, compiled, promise, options) : direct;
 }
 
 }  // namespace isinglass

@@ -53,9 +53,10 @@ struct CheckOptions {
 Verdict compare(const Circuit& source, const Circuit& compiled, const Promise& promise,
                 const CheckOptions& options = {});
 
-/// As compare(); where that shows nothing, step by step: source to waypoints[0], to waypoints[1] and so on to
-/// `compiled`. The waypoints are what the compiler says it came by; nothing else about them is believed.
-Verdict compare_by_way(const Circuit& source, std::span<const Circuit> waypoints, const Circuit& compiled,
-                       const Promise& promise, const CheckOptions& options = {});
+/// The same, with what the compiler went through at hand. The steps are not believed: where state vectors
+/// would take long, source, steps and compiled are compared each with the next by the methods that need none.
+/// If every step is the same program, so is the whole; else this is compare().
+Verdict compare_along(const Circuit& source, std::span<const Circuit> steps, const Circuit& compiled,
+                      const Promise& promise, const CheckOptions& options = {});
 
 }  // namespace isinglass

@@ -82,9 +82,7 @@ TypeName parsed_type(const std::string& text) {
   if (starts("uint")) return {Type::natural, width ? width : 64, {}};
   if (starts("int")) return {Type::integer, width ? width : 64, {}};
   if (starts("float")) return {Type::real, 64, {}};
-  // Without a width an angle is a real number that is never reduced, as the language room has it.
-  if (starts("angle") && width == 0) return {Type::real, 64, {}};
-  if (starts("angle")) return {Type::angle, width, {}};
+  if (starts("angle")) return {Type::angle, width ? width : 64, {}};
   throw Unsupported("values of type " + text);
 }
 

@@ -14,8 +14,7 @@ namespace isinglass::support {
 using Outcomes = std::map<std::vector<bool>, Matrix>;
 
 /// The wires start in `start` (2^wires amplitudes; other wires in |0>). kept: the source qubits whose state
-/// is looked at; the others are traced out. Branches are ifs; statements are ends of the program and
-/// assignments of bits; expressions are made of bits, ~, &, ^.
+/// is looked at; the others are traced out. No branches; statements are assignments of bits made of ~, &, ^.
 Outcomes outcomes_of(const Circuit& circuit, const State& start, const std::vector<std::uint32_t>& kept);
 
 /// Largest difference of any entry.

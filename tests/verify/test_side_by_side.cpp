@@ -1,6 +1,8 @@
 // Two circuits followed side by side without amplitudes: rewritten stretches, moved frames, renamed swaps.
 #include <doctest/doctest.h>
 
+#include <algorithm>
+
 #include "passes/optimize.h"
 #include "support/random_circuits.h"
 #include "support/simulator.h"
@@ -60,6 +62,119 @@ TEST_CASE("following: small circuits, held against the tests' simulator, with fa
     shown += answer != Answer::not_shown;
   }
   CHECK(shown > 180);
+}
+
+namespace following {
+
+Circuit measured_at_end(Random& random, int qubits, std::uint32_t measured, Family family) {
+  RandomCircuit wanted;
+  wanted.qubits = qubits;
+  wanted.gates = 14;
+  wanted.family = family;
+  Circuit circuit = random_circuit(random, wanted);
+  add_bits(circuit, "c", measured);
+  for (std::uint32_t k = 0; k < measured; ++k) {
+    Operation op = circuit.make(Kind::measure, {k});
+    op.payload = k;
+    circuit.body().push_back(op);
+  }
+  return circuit;
+}
+
+/// One fault at a random place before the measurements: a small turn, a phase, a gate left out, or none.
+void spoil(Random& random, Circuit& circuit, std::uint32_t qubits) {
+  Block& body = circuit.body();
+  const auto gates =
+      std::count_if(body.begin(), body.end(), [](const Operation& op) { return op.is_unitary(); });
+  if (gates == 0) return;
+  const auto at = body.begin() + random.below(static_cast<int>(gates));
+  const auto wire = static_cast<std::uint32_t>(random.below(static_cast<int>(qubits)));
+  switch (random.below(5)) {
+    case 0:
+      body.insert(at, circuit.make(Kind::r, {wire}, {{0.3}, {1}}));
+      break;
+    case 1:
+      body.insert(at, circuit.make(Kind::rz, {wire}, {{0.4}}));
+      break;
+    case 2:
+      body.insert(at, circuit.make(Kind::zz, {wire, (wire + 1) % qubits}, {{0.5}}));
+      break;
+    case 3:
+      body.erase(at);
+      break;
+    default:
+      break;
+  }
+}
+
+}  // namespace following
+
+// Source: computed (state vectors, which share nothing with the following but the fusing of gates).
+TEST_CASE("following: never another answer than state vectors give, from any start, to any measurements") {
+  Random random(44);
+  int same = 0, shown = 0;
+  for (int n = 0; n < 600; ++n) {
+    const Family families[] = {Family::native, Family::clifford, Family::toffolis, Family::any};
+    const auto measured = static_cast<std::uint32_t>(random.below(5));
+    Circuit a = following::measured_at_end(random, 4, measured, families[n % 4]);
+    PassContext context;
+    context.effort = n % 5 == 0 ? Effort::steady : Effort::quick;
+    context.promise = {random.chance(0.7), false};
+    Circuit b = optimize(a, context);
+    if (n % 2 == 1) following::spoil(random, b, 4);
+    const Answer dense = compare(a, b, context.promise).answer;
+    const Answer answer = without_amplitudes(a, b, context.promise).answer;
+    REQUIRE(dense != Answer::not_shown);
+    CHECK((answer == Answer::not_shown || answer == dense));
+    same += dense == Answer::same;
+    shown += answer == Answer::same;
+  }
+  CHECK(same > 250);
+  CHECK(shown > same * 8 / 10);
+}
+
+TEST_CASE("following: what known starts hide is seen through") {
+  // Controls that are 0, on 40 qubits, in the way of everything else.
+  Circuit a;
+  add_register(a, "q", 40);
+  for (std::uint32_t k = 0; k + 1 < 40; ++k) a.body().push_back(a.make(Kind::x, {k + 1, k}));
+  Circuit b = a;
+  b.body().clear();
+  for (std::uint32_t k = 0; k + 1 < 40; k += 2) {
+    for (Circuit* circuit : {&a, &b}) {
+      circuit->body().push_back(circuit->make(Kind::h, {k}));
+      circuit->body().push_back(circuit->make(Kind::x, {k, k + 1}));
+    }
+  }
+  CHECK(compare(a, b, {true, false}).method == "following");
+  CHECK(compare(a, b, {true, false}).answer == Answer::same);
+  CHECK(compare(a, b, {false, false}).answer != Answer::same);
+}
+
+TEST_CASE("along: what cannot be followed at once is followed in steps, and the steps are not believed") {
+  Random random(45);
+  RandomCircuit wanted;
+  wanted.qubits = 26;
+  wanted.gates = 500;
+  wanted.family = Family::clifford_t;
+  int at_once = 0, in_steps = 0;
+  for (int n = 0; n < 6; ++n) {
+    const Circuit source = random_circuit(random, wanted);
+    Steps steps;
+    const Circuit compiled = optimize(source, {}, nullptr, &steps);
+    at_once += compare(source, compiled, {}).answer == Answer::same;
+    in_steps += compare_along(source, steps, compiled, {}).answer == Answer::same;
+    Circuit wrong = compiled;
+    wrong.body().insert(wrong.body().begin() + 100, wrong.make(Kind::r, {3}, {{1e-3}, {0.2}}));
+    CHECK(compare_along(source, steps, wrong, {}).answer != Answer::same);
+    if (steps.empty()) continue;
+    Steps wrong_steps = steps;
+    wrong_steps[steps.size() / 2].body().push_back(wrong.make(Kind::rz, {3}, {{1e-3}}));
+    CHECK(compare_along(source, wrong_steps, wrong, {}).answer != Answer::same);
+    CHECK(compare_along(source, {&wrong, 1}, wrong, {}).answer != Answer::same);
+  }
+  MESSAGE(at_once << " of 6 at once, " << in_steps << " in steps");
+  CHECK(in_steps > at_once);
 }
 
 TEST_CASE("following: programs from zero that end in measurements") {
