@@ -190,6 +190,7 @@ term: (MINUS | LOGICAL_NOT | BIT_NOT)* primary index*;
 
 primary
   : IDENTIFIER arguments?
+  | POW arguments  // a function up to 3.1
   | INTEGER
   | REAL
   | IMAGINARY

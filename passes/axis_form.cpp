@@ -1,21 +1,17 @@
 // To and from the axis form; see axis_form.h.
 //
-// Poles. On one wire the machine needs every interaction's axis on the equator of the frame it has reached by
-// pulses so far: the direction p that this frame calls "up", in coordinates of the stretch's start, must be
-// perpendicular to the axis. A pulse moves p anywhere; rz leaves it alone. At the start p = z, at the end it
-// must be the frame's own. So the fewest pulses are the fewest runs of consecutive axes that share a
-// perpendicular, i.e. lie in a plane, which a greedy walk finds. (Derived here; the special cases, rotations
-// about the interaction's axis and pi pulses that pass through it, are common practice.)
+// Where pulses are needed on the way back is decided in poles.cpp.
 #include "passes/axis_form.h"
 
 #include <fmt/format.h>
 
 #include <algorithm>
 #include <cmath>
-#include <optional>
+#include <limits>
 #include <stdexcept>
 
 #include "circuit/long_list.h"
+#include "passes/poles.h"
 #include "passes/rename_swaps.h"
 
 namespace isinglass {
@@ -299,107 +295,6 @@ class Reader {
   double angle_ = 0, cosine_ = 1, sine_ = 0;  // of turn(), and of half of it
 };
 
-/// One thing that a wire's pole must suit: an item's axis, or the end of the stretch.
-struct Need {
-  enum class What : std::uint8_t { interaction, rotation, end };
-  Axis axis;                // of the item; at the end the pole itself
-  std::uint32_t place = 0;  // index into the table of poles that the answer goes to
-  What what = What::interaction;
-  bool is_free = false;  // an end that takes any pole
-};
-
-/// Chooses the poles of one stretch of one wire: poles[need.place] is what need finds. Greedy over runs.
-class PoleWalk {
- public:
-  PoleWalk(std::span<const Need> needs, std::vector<Axis>& poles) : needs_(needs), poles_(poles) {}
-
-  void walk() {
-    Axis pole = z_axis;
-    std::size_t next = extent(0, pole);
-    settle(0, next, pole);
-    while (next < needs_.size()) {
-      const std::size_t first = next;
-      pole = new_pole(first, pole, next);
-      settle(first, next, pole);
-    }
-  }
-
- private:
-  /// A symbolic rotation is free where the pole lies along its axis and one pulse where it is perpendicular.
-  static bool suits(const Need& need, const Axis& pole) {
-    switch (need.what) {
-      case Need::What::interaction:
-        return are_perpendicular(need.axis, pole);
-      case Need::What::rotation:
-        return are_perpendicular(need.axis, pole) || are_parallel(need.axis, pole);
-      case Need::What::end:
-        return need.is_free || (need.axis - pole).squaredNorm() < rounding * rounding;
-    }
-    return false;
-  }
-
-  std::size_t extent(std::size_t first, const Axis& pole) const {
-    while (first < needs_.size() && suits(needs_[first], pole)) ++first;
-    return first;
-  }
-
-  void settle(std::size_t first, std::size_t last, const Axis& pole) {
-    for (std::size_t i = first; i < last; ++i) poles_[needs_[i].place] = pole;
-  }
-
-  /// The pole after a pulse before needs_[first], such that the run it serves is longest; `next` = its end.
-  Axis new_pole(std::size_t first, const Axis& old, std::size_t& next) const {
-    const Need& need = needs_[first];
-    std::optional<Axis> best;
-    const auto offer = [&](const Axis& pole) {
-      const std::size_t reach = extent(first, pole);
-      if (reach > first && (!best || reach > next)) {
-        best = pole;
-        next = reach;
-      }
-      return reach;
-    };
-    next = first;
-    if (need.what == Need::What::end) {
-      offer(need.is_free ? old : need.axis);
-      return *best;
-    }
-    // Of two opposite poles the nearer is taken unless only the other is what the end wants.
-    const auto offer_both = [&](const Axis& axis) {
-      const std::size_t reach = offer(axis.dot(old) < 0 ? Axis(-axis) : axis);
-      if (reach == needs_.size() || needs_[reach].what != Need::What::end)
-        return;  // the other does no better
-      offer(axis.dot(old) < 0 ? axis : Axis(-axis));
-    };
-    if (need.what == Need::What::rotation) offer_both(need.axis);
-    // The first need that is not parallel to this one spans a plane with it, or fixes the pole itself.
-    std::size_t other = first + 1;
-    while (other < needs_.size() && needs_[other].what != Need::What::end &&
-           are_parallel(needs_[other].axis, need.axis)) {
-      ++other;
-    }
-    if (other < needs_.size() && !needs_[other].is_free) {
-      const Axis& axis = needs_[other].axis;
-      if (needs_[other].what == Need::What::end) {
-        offer(axis);
-      } else {
-        if (needs_[other].what == Need::What::rotation) offer_both(axis);
-        offer_both(need.axis.cross(axis).normalized());
-      }
-    }
-    offer(nearest_perpendicular(need.axis, old));
-    return *best;
-  }
-
-  static Axis nearest_perpendicular(const Axis& axis, const Axis& old) {
-    const Axis flat = old - axis * axis.dot(old);
-    return flat.norm() > 1e-6 ? Axis(flat.normalized()) : Axis(axis.unitOrthogonal());
-  }
-
-  std::span<const Need> needs_;
-  std::vector<Axis>& poles_;
-};
-
 /// Whether the fence leaves the one-qubit frame before it without meaning, whole or up to rz.
 bool forgets_frame(const Operation& op) {
   return op.kind == Kind::reset;
@@ -447,13 +342,16 @@ class Writer {
   }
 
  private:
+  static constexpr std::size_t no_turn = std::numeric_limits<std::size_t>::max();
+
   /// What pulses have done to a wire so far: ideal = rz(phase) frame, the phase being symbolic.
   struct State {
     Su2 frame = Su2::Identity();
     Angle phase;
     Axis pole = Axis::UnitZ();
-    bool is_measured = false;  // the last act was a measurement
-    Origin origin;
+    bool is_measured = false;        // the last act was a measurement
+    std::size_t turn = no_turn;      // in out_: the last act was this pulse by an unknown angle
+    Axis turn_axis = Axis::UnitZ();  // about this axis
   };
 
   /// Lists the needs of every wire, stretch by stretch, and solves them.
@@ -477,7 +375,7 @@ class Writer {
       need.place = static_cast<std::uint32_t>(place++);
       need.is_free = is_free;
       open[wire].push_back(need);
-      PoleWalk(open[wire], poles_).walk();
+      choose_poles(open[wire], poles_);
       open[wire].clear();
     };
     for (const Item& item : source_.items) {
@@ -504,6 +402,12 @@ class Writer {
   void reach(std::uint32_t wire, const Axis& pole) {
     State& state = state_[wire];
     if ((state.pole - pole).squaredNorm() < rounding * rounding) return;
+    if (state.turn != no_turn && joins(state.turn_axis, state.pole, pole)) {
+      Operation& op = out_[state.turn];
+      op.value[0] = tidy(wrapped(op.value[0] + swing(wire, state.turn_axis, pole)));
+      return;
+    }
+    state.turn = no_turn;
     const Axis seen = state.frame * pole;
     const double across = std::hypot(seen.x(), seen.y());
     const double theta = std::atan2(across, seen.z());
@@ -512,6 +416,18 @@ class Writer {
     state.pole = pole;
     pulse(wire, {theta}, phi);
     state.is_measured = false;
+  }
+
+  /// Turns the wire's frame about `axis` until its pole is `pole`, both poles perpendicular to the axis, and
+  /// returns by what angle: somebody else's pulse does it.
+  double swing(std::uint32_t wire, const Axis& axis, const Axis& pole) {
+    State& state = state_[wire];
+    const Axis about = state.frame * axis;
+    const Axis from = state.frame * pole;
+    const double angle = std::atan2(about.dot(from.cross(z_axis)), from.z());
+    state.frame = (rotation(about, angle) * state.frame).normalized();
+    state.pole = pole;
+    return angle;
   }
 
   void pulse(std::uint32_t wire, Angle theta, double phi) {
@@ -545,20 +461,36 @@ class Writer {
     out_.push_back(circuit_.make(Kind::xx, {item.wire[0], item.wire[1]},
                                  {theta, physical(item.wire[0], phi[0]), physical(item.wire[1], phi[1])},
                                  item.origin));
-    state_[item.wire[0]].is_measured = state_[item.wire[1]].is_measured = false;
+    for (const std::uint32_t wire : item.wire) {
+      state_[wire].is_measured = false;
+      state_[wire].turn = no_turn;
+    }
   }
 
   void symbolic_rotation(const Item& item, std::size_t place) {
     const std::uint32_t wire = item.wire[0];
-    reach(wire, poles_[place]);
-    const Axis seen = state_[wire].frame * item.axis[0];
-    if (std::abs(seen.z()) > 0.5) {
-      const Angle turn = seen.z() > 0 ? item.angle : circuit_.forms.negated(item.angle);
-      state_[wire].phase = circuit_.forms.sum(state_[wire].phase, turn);
+    State& state = state_[wire];
+    const Axis& axis = item.axis[0];
+    Angle angle = item.angle;
+    const Axis& pole = poles_[place];
+    const bool takes_along = joins(axis, state.pole, pole) && (state.pole - pole).norm() > rounding &&
+                             !(state.turn != no_turn && joins(state.turn_axis, state.pole, pole));
+    if (takes_along) {
+      angle.constant = tidy(wrapped(angle.constant + swing(wire, axis, pole)));
     } else {
-      pulse(wire, item.angle, std::atan2(seen.y(), seen.x()));
+      reach(wire, pole);
     }
-    state_[wire].is_measured = false;
+    state.turn = no_turn;
+    const Axis seen = state.frame * axis;
+    if (std::abs(seen.z()) > 0.5) {
+      const Angle turn = seen.z() > 0 ? angle : circuit_.forms.negated(angle);
+      state.phase = circuit_.forms.sum(state.phase, turn);
+    } else {
+      pulse(wire, angle, std::atan2(seen.y(), seen.x()));
+      state.turn = out_.size() - 1;
+      state.turn_axis = axis;
+    }
+    state.is_measured = false;
   }
 
   /// Brings the wire to rz(returned) away from the ideal state and starts a new stretch.

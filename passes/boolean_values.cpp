@@ -3,6 +3,7 @@
 
 #include <algorithm>
 #include <iterator>
+#include <span>
 
 namespace isinglass {
 
@@ -11,6 +12,18 @@ namespace {
 constexpr std::size_t longest = 64;          // monomials of any value
 constexpr std::size_t highest = 12;          // variables of a monomial
 constexpr std::ptrdiff_t most_products = 3;  // monomials of two variables or more in a sum
+
+/// The mixing function of the SplitMix64 generator: Steele, Lea, Flood, OOPSLA 2014.
+std::uint64_t random_bits(std::span<const std::uint32_t> variables) {
+  std::uint64_t bits = 0;
+  for (const std::uint32_t variable : variables) {
+    bits += 0x9e3779b97f4a7c15u * (std::uint64_t{variable} + 1);
+    bits = (bits ^ bits >> 30) * 0xbf58476d1ce4e5b9u;
+    bits = (bits ^ bits >> 27) * 0x94d049bb133111ebu;
+    bits ^= bits >> 31;
+  }
+  return bits;
+}
 
 }  // namespace
 
@@ -28,20 +41,12 @@ BooleanValues::Value BooleanValues::intern(Polynomial polynomial) {
   return entry->second;
 }
 
-/// Random bits for each monomial, none for the constant.
-std::uint64_t BooleanValues::mark_of(const Polynomial& polynomial) {
+/// The marks of its variables, random bits for each product of several, none for the constant.
+std::uint64_t BooleanValues::mark_of(const Polynomial& polynomial) const {
   std::uint64_t mark = 0;
   for (const Monomial& monomial : polynomial) {
     if (monomial.empty()) continue;
-    std::uint64_t bits = 0;
-    for (const std::uint32_t variable : monomial) {
-      // The mixing function of the SplitMix64 generator: Steele, Lea, Flood, OOPSLA 2014.
-      bits += 0x9e3779b97f4a7c15u * (std::uint64_t{variable} + 1);
-      bits = (bits ^ bits >> 30) * 0xbf58476d1ce4e5b9u;
-      bits = (bits ^ bits >> 27) * 0x94d049bb133111ebu;
-      bits ^= bits >> 31;
-    }
-    mark ^= bits;
+    mark ^= monomial.size() == 1 ? variable_marks_[monomial[0]] : random_bits(monomial);
   }
   return mark;
 }
@@ -57,7 +62,9 @@ bool BooleanValues::is_nearly_linear(const Polynomial& polynomial) {
 }
 
 BooleanValues::Value BooleanValues::fresh() {
-  return intern({Monomial{variables_++}});
+  const auto variable = static_cast<std::uint32_t>(variable_marks_.size());
+  variable_marks_.push_back(random_bits(std::span(&variable, 1)));
+  return intern({Monomial{variable}});
 }
 
 BooleanValues::Value BooleanValues::sum(Value a, Value b) {
@@ -70,7 +77,7 @@ BooleanValues::Value BooleanValues::sum(Value a, Value b) {
   // A name of its own, so that a carry's polynomial does not grow with its place; taking back what was added
   // gives the old value again.
   const Value named = fresh();
-  marks_[named] = marks_[a] ^ marks_[b];
+  marks_[named] = variable_marks_.back() = marks_[a] ^ marks_[b];
   sums_[std::minmax(named, a)] = b;
   sums_[std::minmax(named, b)] = a;
   return sums_[{a, b}] = named;

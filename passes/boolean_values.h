@@ -41,7 +41,7 @@ class BooleanValues {
   using Pair = std::pair<Value, Value>;
 
   Value intern(Polynomial polynomial);
-  static std::uint64_t mark_of(const Polynomial& polynomial);
+  std::uint64_t mark_of(const Polynomial& polynomial) const;
   static bool is_short(const Polynomial& polynomial);
   static bool is_nearly_linear(const Polynomial& polynomial);
 
@@ -50,7 +50,7 @@ class BooleanValues {
   std::map<Polynomial, Value> index_;
   std::map<Pair, Value> sums_;
   std::map<Pair, Value> products_;
-  std::uint32_t variables_ = 0;
+  std::vector<std::uint64_t> variable_marks_;  // that of a name for a long sum is the sum's own
 };
 
 }  // namespace isinglass

@@ -60,8 +60,9 @@ class Seen {
   std::unordered_map<std::size_t, std::size_t> last_;
 };
 
-/// One round over the piece; returns whether anything merged.
-bool merge_once(Circuit& circuit, std::vector<LocalRotation>& piece, std::size_t look_back) {
+/// One round over the piece, until the deadline; returns whether anything merged.
+bool merge_once(Circuit& circuit, std::vector<LocalRotation>& piece, std::size_t look_back,
+                const PassContext& context) {
   std::size_t wires = 0;
   const auto number = numbered_wires(piece, circuit.wires, wires);
   Tableau before(wires);  // conjugation by the inverse of the Clifford so far
@@ -69,6 +70,7 @@ bool merge_once(Circuit& circuit, std::vector<LocalRotation>& piece, std::size_t
   std::vector<std::size_t> place;  // of a seen rotation in the piece
   bool merged = false;
   for (std::size_t i = 0; i < piece.size(); ++i) {
+    if (i % 256 == 0 && context.out_of_time()) break;
     LocalRotation& rotation = piece[i];
     const std::size_t a = number[rotation.wire[0]], b = rotation.is_pair() ? number[rotation.wire[1]] : a;
     if (const auto quarters = quarters_of(rotation.angle)) {
@@ -105,7 +107,9 @@ Circuit merge_distant_rotations(Circuit circuit, const PassContext& context) {
   const int most_rounds = is_quick ? 2 : 10;
   rewrite_pieces(circuit, [&](Circuit& owner, std::vector<LocalRotation> piece, bool) {
     bool changed = false;
-    for (int round = 0; round < most_rounds && merge_once(owner, piece, look_back); ++round) changed = true;
+    for (int round = 0; round < most_rounds && merge_once(owner, piece, look_back, context); ++round) {
+      changed = true;
+    }
     return changed ? std::optional<RewrittenPiece>({std::move(piece), {}}) : std::nullopt;
   });
   return circuit;

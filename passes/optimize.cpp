@@ -5,6 +5,7 @@
 #include <atomic>
 #include <chrono>
 #include <cstring>
+#include <initializer_list>
 #include <iterator>
 #include <mutex>
 #include <stdexcept>
@@ -12,6 +13,7 @@
 #include <utility>
 
 #include "passes/approximate.h"
+#include "passes/pace.h"
 
 namespace isinglass {
 
@@ -27,6 +29,7 @@ struct Order {
   std::string_view name;
   Names on_source;
   Names on_native;
+  std::string_view only_if = {};  // the order ends where this pass changes nothing: others do the same
 };
 
 // One sweep and no more: merging takes gates on two wires and lowers them on its way.
@@ -58,6 +61,8 @@ const std::vector<Order>& steady_orders() {
   static const Names lower = {"lower"};
   // Toffolis found, before anything blurs them, and paired; the orders without this compete.
   static const Names paired = Names{"recover-toffolis"} + first_of_all + Names{"pair-toffolis"};
+  static const Names cubic =
+      Names{"recover-toffolis"} + first_of_all + Names{"cubic-networks", "rename-swaps", "pair-toffolis"};
   static const std::vector<Order> orders = {
       {"blocks", paired + Names{"choose-constructions"} + lower, rounds},
       {"distant", paired + Names{"choose-constructions", "merge-distant"} + lower,
@@ -66,6 +71,7 @@ const std::vector<Order>& steady_orders() {
        rounds + Names{"merge-distant"}},
       {"phases", first_of_all + Names{"expand-controls", "merge-distant"} + lower,
        rounds + Names{"merge-distant"}},
+      {"cubic", cubic + Names{"choose-constructions"} + lower, rounds, "cubic-networks"},
       {"plain", first_of_all + Names{"expand-controls"} + lower, rounds},
       {"networks", first_of_all + Names{"expand-controls", "merge-distant", "rotation-networks"} + lower,
        rounds},
@@ -106,30 +112,33 @@ bool are_alike(const Circuit& a, const Circuit& b) {
 /// Runs one order and writes down what each pass did.
 class Candidate {
  public:
-  Candidate(const Order& order, const PassContext& context, unsigned threads, bool keeps_steps)
-      : order_(&order), context_(context), keeps_steps_(keeps_steps) {
+  Candidate(const Order& order, const PassContext& context, unsigned threads, Pace& pace, bool keeps_steps)
+      : order_(&order), context_(context), pace_(&pace), keeps_steps_(keeps_steps) {
     context_.threads = threads;
     if (&order == &quick_order) context_.effort = Effort::quick;
   }
 
-  /// The first candidate runs whatever the time, so that there is a result; the others not once it is over.
+  /// The first candidate runs whatever the time, so that there is a result; the others as long as what comes
+  /// next can be expected to end in time.
   void run(const Circuit& source, bool is_first) {
     source_ = &source;
     result_.order = order_->name;
     const auto start = Clock::now();
     const Clock::time_point deadline = context_.deadline;
     for (const std::string_view name : order_->on_source) {
-      if (!is_first && context_.out_of_time()) return;
+      if (!is_first && !is_time_for({name})) return;
       // A pass that searches until its deadline leaves a fifth of the time to those after it.
       if (deadline != Clock::time_point::max()) context_.deadline = start + (deadline - start) / 5 * 4;
-      step(name, false);
+      const bool is_changed = step(name, false);
       context_.deadline = deadline;
+      is_idle_ = name == order_->only_if && !is_changed;
+      if (is_idle_) return;
     }
     result_.tally = rows_.back().after;
     if (!order_->on_native.empty()) {
       result_.is_complete = improve();
       if (context_.tolerance > 0) shorten();
-      step("lower", true);  // the normal form, whatever the last pass left
+      if (rows_.back().pass != "lower") step("lower", true);  // the normal form, whatever the last pass left
       result_.tally = rows_.back().after;
     }
     if (source_) circuit_ = *std::exchange(source_, nullptr);
@@ -138,6 +147,8 @@ class Candidate {
   }
 
   const TraceResult& result() const { return result_; }
+  /// Whether it ended early because another order does the same.
+  bool is_idle() const { return is_idle_; }
   std::vector<TraceRow>& rows() { return rows_; }
   Circuit& circuit() { return circuit_; }
   Steps& steps() { return steps_; }
@@ -160,7 +171,7 @@ class Candidate {
     double error = tally_of(now(), context_.cost).error;
     for (int round = 0; round < most_rounds; ++round) {
       for (const std::string_view name : order_->on_native) {
-        if (context_.out_of_time()) return false;
+        if (!is_time_for({name, "lower"})) return false;
         step(name, true);
       }
       const double after = tally_of(now(), context_.cost).error;
@@ -170,14 +181,24 @@ class Candidate {
     return true;
   }
 
+  /// Whether these passes, one after the other, will end before the deadline.
+  bool is_time_for(std::initializer_list<std::string_view> names) const {
+    if (context_.deadline == Clock::time_point::max()) return true;
+    double seconds = 0;
+    for (const std::string_view name : names) seconds += pace_->expected(pass_named(name), size_of(now()));
+    return seconds < -seconds_since(context_.deadline);
+  }
+
   /// Spends the tolerance, once, and goes round again with what that has opened.
   void shorten() {
+    if (!is_time_for({"approximate", "lower"})) return;
     result_.infidelity = approximated(now(), context_).infidelity;
     step("approximate", true);
     result_.is_complete = improve() && result_.is_complete;
   }
 
-  void step(std::string_view name, bool is_lowered) {
+  /// Runs a pass; false where it says that it changed nothing.
+  bool step(std::string_view name, bool is_lowered) {
     TraceRow row;
     row.order = order_->name;
     row.pass = name;
@@ -185,24 +206,28 @@ class Candidate {
     row.gates_before = size_of(now());
     if (is_lowered) row.before = tally_of(now(), context_.cost);
     const auto start = Clock::now();
-    apply(pass_named(name));
+    const bool is_changed = apply(pass_named(name));
     row.seconds = seconds_since(start);
+    // One that searched until its time was over has not shown what it needs.
+    if (!context_.out_of_time()) pace_->saw(pass_named(name), row.gates_before, row.seconds);
     row.gates_after = size_of(now());
     if (is_lowered || name == order_->on_source.back()) row.after = tally_of(now(), context_.cost);
     rows_.push_back(std::move(row));
+    return is_changed;
   }
 
   /// The source is copied only for a pass that cannot do without.
-  void apply(const Pass& pass) {
-    if (source_ && pass.run_beside) {
-      std::optional<Circuit> changed = pass.run_beside(*source_, context_);
-      if (!changed) return;
+  bool apply(const Pass& pass) {
+    if (pass.run_beside && (source_ || pass.name == order_->only_if)) {
+      std::optional<Circuit> changed = pass.run_beside(now(), context_);
+      if (!changed) return false;
       circuit_ = std::move(*changed);
     } else {
       circuit_ = pass.run(source_ ? *source_ : std::move(circuit_), context_);
     }
     source_ = nullptr;
     if (keeps_steps_) remember();
+    return true;
   }
 
   /// Keeps what has changed. Where that gets too much, every other step goes: the check takes larger ones
@@ -221,10 +246,12 @@ class Candidate {
 
   const Order* order_;
   PassContext context_;
+  Pace* pace_;
   const Circuit* source_ = nullptr;  // until a pass has changed it: then circuit_ holds what it has become
   Circuit circuit_;
   std::vector<TraceRow> rows_;
   TraceResult result_;
+  bool is_idle_ = false;
   bool keeps_steps_;
   Steps steps_;
 };
@@ -284,23 +311,25 @@ void run_all(std::vector<Candidate>& candidates, const Circuit& source, unsigned
 namespace {
 
 /// Orders that one search is tried in; the quick one first, which ends whatever the time.
-std::vector<Candidate> candidates_for(const Circuit& source, const PassContext& context, bool keep_steps) {
+std::vector<Candidate> candidates_for(const Circuit& source, const PassContext& context, Pace& pace,
+                                      bool keep_steps) {
   std::vector<Candidate> candidates;
-  candidates.emplace_back(quick_order, context, 1, keep_steps);
+  candidates.emplace_back(quick_order, context, 1, pace, keep_steps);
   if (context.effort == Effort::quick) return candidates;
   for (const Order& order : steady_orders()) {
-    candidates.emplace_back(order, context, 1, keep_steps);
+    candidates.emplace_back(order, context, 1, pace, keep_steps);
     if (is_one_stretch(source)) break;  // and the first order finds its best form
   }
   return candidates;
 }
 
 /// Searches on with other random choices as long as there is time for more than a glance.
-void search_on(Candidate& best, const PassContext& context, bool keep_steps, std::vector<Candidate>& found) {
+void search_on(Candidate& best, const PassContext& context, Pace& pace, bool keep_steps,
+               std::vector<Candidate>& found) {
   PassContext more = context;
   more.tolerance = 0;  // is spent
   const auto try_order = [&](const Order& order, const PassContext& given) {
-    Candidate candidate(order, given, context.threads, keep_steps);
+    Candidate candidate(order, given, context.threads, pace, keep_steps);
     Candidate& before = found.empty() ? best : found.back();
     candidate.run(before.circuit(), false);
     candidate.add_infidelity(before.result().infidelity);
@@ -321,17 +350,19 @@ void search_on(Candidate& best, const PassContext& context, bool keep_steps, std
 }  // namespace
 
 Circuit optimize(const Circuit& source, const PassContext& context, Trace* trace, Steps* steps) {
-  std::vector<Candidate> candidates = candidates_for(source, context, steps != nullptr);
+  Pace pace;
+  std::vector<Candidate> candidates = candidates_for(source, context, pace, steps != nullptr);
   run_all(candidates, source, context.threads);
   Candidate& best = best_of(candidates);
   std::vector<Candidate> found;
   const bool may_search = context.effort == Effort::deep && context.deadline != Clock::time_point::max();
-  if (may_search && !is_one_stretch(source)) search_on(best, context, steps != nullptr, found);
+  if (may_search && !is_one_stretch(source)) search_on(best, context, pace, steps != nullptr, found);
   Candidate& winner = found.empty() ? best : found.back();
   if (steps) *steps = std::move(winner.steps());
   if (trace) {
     for (std::vector<Candidate>* group : {&candidates, &found}) {
       for (Candidate& candidate : *group) {
+        if (candidate.is_idle()) continue;
         for (TraceRow& row : candidate.rows()) trace->rows.push_back(std::move(row));
         trace->results.push_back(candidate.result());
         trace->results.back().is_winner = &candidate == &winner;

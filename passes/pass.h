@@ -34,6 +34,7 @@ struct PassContext {
 struct Pass {
   std::string_view name;      // "merge-rotations"
   std::string_view sentence;  // what it does, one line
+  double us_a_gate;           // about what it takes on common circuits (bench_passes); see pace.h
   Circuit (*run)(Circuit circuit, const PassContext& context);
   /// The same for a circuit that is still wanted, nullopt where nothing changes: spares the copy that `run`
   /// would be given. Null: there is no such shortcut.

@@ -84,10 +84,10 @@ struct Place {
 /// One stretch of a block without classical control.
 class Stretch {
  public:
-  Stretch(Circuit& circuit, std::span<const Operation> operations)
-      : circuit_(circuit), operations_(operations) {}
+  Stretch(Circuit& circuit, std::span<const Operation> operations, const PassContext& context)
+      : circuit_(circuit), operations_(operations), context_(context) {}
 
-  /// The stretch rewritten, or nothing where no triple is found.
+  /// The stretch rewritten, or nothing where no triple is found in time.
   std::optional<Block> rewritten() {
     follow_bits();
     for (const auto& [value, angle] : phases_) {
@@ -95,6 +95,7 @@ class Stretch {
     }
     if (odd_marks_.empty()) return std::nullopt;
     find_triples();
+    if (context_.out_of_time()) return std::nullopt;
     choose();
     if (chosen_.empty()) return std::nullopt;
     return written();
@@ -153,11 +154,13 @@ class Stretch {
 
   // ---- triples ----
 
-  /// Looks at every time when a bit has just come to a wire, with the wires it is about to meet.
+  /// Looks at every time when a bit has just come to a wire, with the wires it is about to meet, until the
+  /// deadline.
   void find_triples() {
     on_wire_ = start_;
     for (std::uint32_t wire = 0; wire < circuit_.wires; ++wire) look_at(wire, 0);
     for (std::size_t i = 0; i < operations_.size(); ++i) {
+      if (i % 256 == 0 && context_.out_of_time()) return;
       for (const auto& [wire, value] : changes_[i]) on_wire_[wire] = value;
       for (const auto& [wire, value] : changes_[i]) look_at(wire, i + 1);
     }
@@ -293,6 +296,7 @@ class Stretch {
 
   Circuit& circuit_;
   std::span<const Operation> operations_;
+  const PassContext& context_;
   BooleanValues values_;
   std::vector<Value> start_;
   std::vector<Value> on_wire_;
@@ -444,7 +448,7 @@ void tidy(Circuit& circuit, Block& block) {
 
 }  // namespace
 
-Circuit recover_toffolis(Circuit circuit, const PassContext&) {
+Circuit recover_toffolis(Circuit circuit, const PassContext& context) {
   for (Block& block : circuit.blocks) {
     Block result;
     bool is_rewritten = false;
@@ -453,7 +457,7 @@ Circuit recover_toffolis(Circuit circuit, const PassContext&) {
       while (to < block.size() && !is_fence(block[to])) ++to;
       const std::span<const Operation> stretch(block.data() + from, to - from);
       std::optional<Block> better;
-      if (!stretch.empty()) better = Stretch(circuit, stretch).rewritten();
+      if (!stretch.empty()) better = Stretch(circuit, stretch, context).rewritten();
       if (better) tidy(circuit, *better);
       if (better && weight(*better) <= weight(stretch)) {
         is_rewritten = true;

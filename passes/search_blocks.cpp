@@ -314,7 +314,7 @@ Circuit search_blocks(Circuit circuit, const PassContext& context) {
             const bool is_zero = context.promise.zero_start || small.wires[q] >= form.shell.source_qubits;
             if (block.is_body && is_zero && untouched[small.wires[q]]) small.fresh |= 1u << q;
           }
-          const auto better = searcher.improve(small_circuit(block, small), small.fresh, block.is_body);
+          const auto better = searcher.improve(small_circuit(block, small), small.fresh, block.may_rename);
           if (!better) continue;
           replace(form, block, small, *better);
           has_changed = true;

@@ -73,7 +73,8 @@ void add_compiling_options(CLI::App& command, Settings& settings) {
                      "quick: one sweep; steady: passes compete; deep: search until --spend is over");
   command
       .add_option("--spend", settings.spend,
-                  "seconds after which improving stops, the best so far is kept (deep without it: 60)")
+                  "seconds that improving may take, the best by then is kept; reading, timing, checking and "
+                  "writing are not counted (deep without it: 60)")
       ->check(CLI::NonNegativeNumber)
       ->type_name("SECONDS");
   command

@@ -47,11 +47,6 @@ const Expression* first_variable(const Expression& expression) {
   return nullptr;
 }
 
-bool calls_extern(const Expression& expression) {
-  if (expression.kind == Expression::Kind::call && !is_function(expression.text, false)) return true;
-  return std::any_of(expression.arguments.begin(), expression.arguments.end(), calls_extern);
-}
-
 }  // namespace
 
 // Types and constants.
@@ -133,7 +128,11 @@ std::vector<std::uint32_t> Reader::array_shape(const syntax::Type& type) {
 Value Reader::evaluated(const SyntaxExpression& expression) {
   if (!fixed_.empty()) {
     const auto fixed = fixed_.find(&expression);
-    if (fixed != fixed_.end()) return fixed->second;
+    if (fixed != fixed_.end()) {
+      const Value& value = fixed->second;
+      const bool is_variable = value.runs && value.expression->kind == Expression::Kind::variable;
+      return is_variable ? variable_value(value.expression->variable, value.type) : value;
+    }
   }
   try {
     return evaluated_unchecked(expression);
@@ -298,6 +297,9 @@ Value Reader::call_value(const SyntaxExpression& expression) {
   }
   if (symbol != nullptr && symbol->kind == Symbol::Kind::broken) throw Trouble{};
   if (expression.text == "sizeof" && version_ != 20) return size_value(expression);
+  if (expression.text == "pow" && version_ == 32) {
+    fail(expression.at, "`pow` is no function from OpenQASM 3.2 on", {"help: write a ** b"});
+  }
   if (is_function(expression.text, version_ == 20)) {
     std::vector<Value> values;
     for (const SyntaxExpression& argument : expression.arguments) values.push_back(evaluated(argument));
@@ -337,6 +339,24 @@ Value Reader::timing_value(const SyntaxExpression& expression) {
 }
 
 // Angles.
+
+namespace {
+
+/// The pattern of an angle[n] times its grid, by casts that the standard's table has.
+Value in_radians(const Value& angle) {
+  Expression pattern = *angle.expression;
+  for (const Base base : {Base::bits, Base::natural}) {
+    Expression cast;
+    cast.kind = Expression::Kind::cast;
+    cast.text = text_of(Type{base, angle.type.width});
+    cast.arguments = {std::move(pattern)};
+    pattern = std::move(cast);
+  }
+  const double grid = 2 * pi / std::ldexp(1.0, static_cast<int>(angle.type.width));
+  return of_expression(operation("*", {std::move(pattern), literal(text_of(grid))}), {Base::real, 0}, false);
+}
+
+}  // namespace
 
 Angle Reader::derived_angle(const Value& value) {
   Expression expression = *value.expression;
@@ -393,6 +413,8 @@ Angle Reader::angle_of(const Value& value, syntax::Span at) {
   if (value.is_affine() && is_angle) return {value.real, value.form};
   if (!is_angle) fail(at, fmt::format("an angle is expected here, not {}", text_of(value.type)));
   if (!value.runs) {
+    // Sums and multiples of an angle[n] would stay on its grid: the native program adds its radians.
+    if (base == Base::angle && value.type.width > 0) return derived_angle(in_radians(value));
     if (value.expression->kind == Expression::Kind::input) {
       return {0, forms_->of_input(value.expression->variable)};
     }
@@ -403,10 +425,6 @@ Angle Reader::angle_of(const Value& value, syntax::Span at) {
 
 /// An angle or count that depends on running bits: one arm for every value of the first of them.
 void Reader::split_on(const Expression& expression, syntax::Span at) {
-  if (calls_extern(expression)) {
-    fail(at, "what an external function returns is known only while running; no angle can depend on it",
-         {"help: branch on it with if or switch"});
-  }
   const Expression* node = first_variable(expression);
   if (node == nullptr) fail(at, "an angle must be known while compiling, an input, or depend on a few bits");
   const bool is_index = node->kind == Expression::Kind::index;
@@ -436,6 +454,9 @@ void Reader::split_on(const Expression& expression, syntax::Span at) {
     split.count = is_truth ? 2 : 1u << split.type.width;
     split.selector = *node;
     if (is_index) split.selector = node->arguments[0];
+  }
+  if (fixed_variables_.contains(variable) || (split.bit != no_bit && fixed_bits_.contains(split.bit))) {
+    fail(at, fmt::format("this depends on `{}` in a way that no branch can settle", native.name));
   }
   if (fixed_bits_.size() + fixed_variables_.size() >= most_split_bits) {
     fail(at, fmt::format("this depends on more than {} running bits; it would need too many branches",

@@ -735,18 +735,22 @@ void Reader::define_subroutine(const syntax::Subroutine& definition, syntax::Spa
     }
   }
   Symbol symbol;
+  has_callables_ = true;
   symbol.kind = Symbol::Kind::subroutine;
   symbol.name = definition.name.text;
   symbol.at = definition.name.at;
   symbol.definition = &definition;
-  declare(std::move(symbol));
+  Symbol& declared = declare(std::move(symbol));
+  const std::size_t errors_before = errors_;
   check_subroutine(definition);
+  if (errors_ != errors_before) declared.kind = Symbol::Kind::broken;  // nor are its calls run
 }
 
 void Reader::define_extern(const syntax::Extern& definition, syntax::Span at) {
   if (scopes_.depth() != 1 || block_ != 0)
     fail(at, "external functions are declared at the outermost level only");
   Symbol symbol;
+  has_callables_ = true;
   symbol.kind = Symbol::Kind::external;
   symbol.name = definition.name.text;
   symbol.at = definition.name.at;

@@ -7,6 +7,7 @@
 
 #include "language/evaluate.h"
 #include "language/reader.h"
+#include "language/running_angle.h"
 #include "language/unitary.h"
 
 namespace isinglass {
@@ -188,14 +189,9 @@ void Reader::declare_gate_arguments(const syntax::GateDefinition& definition) {
 
 // Calls.
 
-std::vector<Angle> Reader::gate_arguments(const Symbol& symbol, const std::vector<SyntaxExpression>& angles,
+/// The template's arguments: the call's angles, and what the body derives from them.
+std::vector<Angle> Reader::gate_arguments(const Symbol& symbol, std::vector<Angle> arguments,
                                           syntax::Span at) {
-  if (angles.size() != symbol.gate->parameters) {
-    fail(at, fmt::format("`{}` takes {} angle{}, not {}", symbol.name, symbol.gate->parameters,
-                         plural(symbol.gate->parameters), angles.size()));
-  }
-  std::vector<Angle> arguments;
-  for (const SyntaxExpression& angle : angles) arguments.push_back(angle_of(angle));
   // What the body derives from its parameters otherwise than by sums and multiples.
   for (const Expression& expression : symbol.derived) {
     const Value value = at_place(at, [&] {
@@ -289,7 +285,7 @@ void Reader::check_distinct(const std::vector<std::uint32_t>& wires, const std::
     for (std::size_t j = 0; j < i; ++j) {
       if (wires[i] != wires[j]) continue;
       const std::string name = capture_ != nullptr ? operands[owner[i]].text : circuit_.wire_name(wires[i]);
-      fail(operands[owner[i]].at, fmt::format("qubit `{}` is given twice", name));
+      throw GivenTwice{{operands[owner[i]].at, fmt::format("qubit `{}` is given twice", name), {}}};
     }
   }
 }
@@ -329,7 +325,12 @@ void Reader::call_gate(const syntax::GateCall& call, syntax::Span at) {
   if (call.duration) {
     warn(call.duration->at, "the machine decides how long a gate takes; the duration given here is ignored");
   }
-  const std::vector<Angle> arguments = gate_arguments(*symbol, call.angles, call.name.at);
+  if (call.angles.size() != symbol->gate->parameters) {
+    fail(call.name.at, fmt::format("`{}` takes {} angle{}, not {}", symbol->name, symbol->gate->parameters,
+                                   plural(symbol->gate->parameters), call.angles.size()));
+  }
+  std::vector<Value> values;
+  for (const SyntaxExpression& angle : call.angles) values.push_back(evaluated(angle));
   const std::vector<Control> controls = controls_of(call);
   std::size_t expected = symbol->gate->operands;
   for (const Control& control : controls) expected += control.count;
@@ -340,18 +341,71 @@ void Reader::call_gate(const syntax::GateCall& call, syntax::Span at) {
   }
   std::vector<Qubits> operands;
   for (const SyntaxExpression& operand : call.operands) operands.push_back(qubits_of(operand));
+  if (call_by_bits(call, *symbol, values, controls, operands, at)) return;
+  std::vector<Angle> angles;
+  for (std::size_t i = 0; i < values.size(); ++i) angles.push_back(angle_of(values[i], call.angles[i].at));
+  apply_gate(call, *symbol, gate_arguments(*symbol, std::move(angles), call.name.at), controls, operands, at);
+}
+
+/// A rotation by a sum over running bits: each bit has its gate, under a condition. False where it is none.
+bool Reader::call_by_bits(const syntax::GateCall& call, const Symbol& symbol,
+                          const std::vector<Value>& values, const std::vector<Control>& controls,
+                          const std::vector<Qubits>& operands, syntax::Span at) {
+  std::size_t which = values.size();
+  for (std::size_t i = 0; i < values.size(); ++i) {
+    if (!values[i].runs) continue;
+    if (which != values.size()) return false;
+    which = i;
+  }
+  if (which == values.size() || !symbol.derived.empty()) return false;
+  const auto sum = running_angle(*values[which].expression, circuit_, rules());
+  if (!sum || sum->bits.size() < 2) return false;
+  std::vector<Angle> angles(values.size());
+  for (std::size_t i = 0; i < values.size(); ++i) {
+    if (i != which) angles[i] = angle_of(values[i], call.angles[i].at);
+    if (!angles[i].is_known()) return false;
+  }
+  const RotationTest test = rotation_in(*symbol.gate, angles, which);
+  if (!test.is_rotation || (sum->wraps && !test.has_period_2pi)) return false;
+  for (const syntax::Modifier& modifier : call.modifiers) {
+    // A whole power is a rotation too; principal fractions are not.
+    if (modifier.kind != syntax::Modifier::Kind::pow) continue;
+    const Value power = evaluated(*modifier.argument);
+    if (!power.is_known() || !(power.type.base == Base::integer || power.type.base == Base::natural))
+      return false;
+  }
+  const auto apply = [&](Angle angle) {
+    angles[which] = angle;
+    apply_gate(call, symbol, angles, controls, operands, at);
+  };
+  if (sum->fixed != Angle{}) apply(sum->fixed);
+  for (const auto& [bit, weight] : sum->bits) {
+    Branch branch;
+    branch.condition = bit;
+    branch.arms.push_back({{}, open_arm()});
+    apply({weight, 0});
+    close_arm();
+    append_branch(std::move(branch), at);
+  }
+  return true;
+}
+
+void Reader::apply_gate(const syntax::GateCall& call, const Symbol& symbol, std::span<const Angle> arguments,
+                        const std::vector<Control>& controls, const std::vector<Qubits>& operands,
+                        syntax::Span at) {
   if (call.modifiers.empty()) {
     for_each_call(call, operands, [&](const std::vector<std::uint32_t>& wires) {
-      emit_template(*symbol->gate, arguments, wires, at);
+      emit_template(*symbol.gate, arguments, wires, at);
     });
     return;
   }
+  const std::size_t expected = call.operands.size();
   // Modified once on numbered wires, then copied to where it is called.
   std::vector<std::uint32_t> numbered(expected);
   for (std::uint32_t i = 0; i < expected; ++i) numbered[i] = i;
   const std::span<const std::uint32_t> formal(numbered);
   const Acts acts = modified(
-      call, instance(*symbol->gate, arguments, formal.subspan(expected - symbol->gate->operands), *forms_),
+      call, instance(*symbol.gate, arguments, formal.subspan(expected - symbol.gate->operands), *forms_),
       controls, formal);
   for_each_call(call, operands, [&](const std::vector<std::uint32_t>& wires) {
     std::vector<std::uint32_t> placed;

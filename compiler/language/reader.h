@@ -36,6 +36,9 @@ struct Trouble {
   std::vector<std::string> notes;
 };
 
+/// One qubit given twice in a call. Where a running index has led there, it is the running program's fault.
+struct GivenTwice : Trouble {};
+
 /// A limit was exceeded: reading ends.
 struct Overflow {
   Trouble trouble;
@@ -203,8 +206,12 @@ class Reader final : public StatementSink {
   };
   void define_gate(const syntax::GateDefinition& definition, syntax::Span at);
   void declare_gate_arguments(const syntax::GateDefinition& definition);
-  std::vector<Angle> gate_arguments(const Symbol& gate, const std::vector<SyntaxExpression>& angles,
-                                    syntax::Span at);
+  std::vector<Angle> gate_arguments(const Symbol& symbol, std::vector<Angle> arguments, syntax::Span at);
+  bool call_by_bits(const syntax::GateCall& call, const Symbol& symbol, const std::vector<Value>& values,
+                    const std::vector<Control>& controls, const std::vector<Qubits>& operands,
+                    syntax::Span at);
+  void apply_gate(const syntax::GateCall& call, const Symbol& symbol, std::span<const Angle> arguments,
+                  const std::vector<Control>& controls, const std::vector<Qubits>& operands, syntax::Span at);
   void call_gate(const syntax::GateCall& call, syntax::Span at);
   void call_old_form(const syntax::GateCall& call, const Symbol& symbol, syntax::Span at);
   void for_each_call(const syntax::GateCall& call, const std::vector<Qubits>& operands,
@@ -226,6 +233,8 @@ class Reader final : public StatementSink {
   Ending run_checked(const syntax::Statement& statement);
   void run_plain_statement(const syntax::Statement& statement);
   void run_expression(const syntax::ExpressionStatement& statement, const syntax::Statement& whole_statement);
+  void hoist_calls(const syntax::GateCall& call);
+  void hoist_calls(const SyntaxExpression& expression);
   /// Runs `action`; where it needs a running value (see Split), once for every value in an arm of its own.
   void with_splits(syntax::Span at, const std::set<std::string>& assigned,
                    const std::function<void()>& action);
@@ -247,16 +256,41 @@ class Reader final : public StatementSink {
   void emit_statement(ClassicalStatement statement, syntax::Span at);
   void emit_assignment(Expression target, Expression value, syntax::Span at);
 
-  // Names in code that is not run (check.cpp).
+  // Code that is not run (check.cpp).
+
+  /// A name declared there.
+  struct Local {
+    Type type;  // none where it is not known
+    bool is_qubit = false;
+    bool is_scalar = false;  // a single qubit
+    bool is_array = false;
+    bool is_unknown = false;
+  };
+  /// What is known of an expression that is not evaluated.
+  struct Checked {
+    Type type;  // none where it is not known
+    std::optional<Value> value;
+  };
   void check_unrun(const syntax::Body& body);
   void check_subroutine(const syntax::Subroutine& definition);
   void check_list(const Statements& statements);
   void check_statement(const syntax::Statement& statement);
   void check_call(const syntax::GateCall& call);
-  void check_expression(const SyntaxExpression& expression);
-  void check_type(const syntax::Type& type);
-  void check_name(const std::string& name, syntax::Span at, const char* what);
-  bool is_local(const std::string& name) const;
+  void check_declaration(const syntax::Declaration& declaration);
+  void check_assignment(const syntax::Assignment& assignment);
+  void check_measurement(const syntax::Measurement& measurement);
+  void check_qubits(const SyntaxExpression& operand);
+  void check_truth(const SyntaxExpression& condition);
+  void check_fits(const Checked& value, Type type, syntax::Span at);
+  Checked check_expression(const SyntaxExpression& expression);
+  Checked checked_name(const SyntaxExpression& expression);
+  Checked checked_call(const SyntaxExpression& expression);
+  Checked checked_index(const SyntaxExpression& expression);
+  Checked applied(const std::vector<Checked>& operands, syntax::Span at,
+                  const std::function<Value(const std::vector<Value>&)>& operation);
+  Type checked_type(const syntax::Type& type);
+  Local local_of(const syntax::Type& type);
+  const Local* local(const std::string& name) const;
 
   // Timing (timing.cpp).
   void delay(const syntax::Delay& delay, syntax::Span at);
@@ -382,10 +416,12 @@ class Reader final : public StatementSink {
   std::vector<std::vector<std::uint32_t>> temporaries_ = std::vector<std::vector<std::uint32_t>>(1);
   std::map<std::string, std::uint32_t> derived_;  // by printed expression
 
-  std::vector<std::set<std::string>> check_levels_;  // names declared in code that is not run
-  std::set<const syntax::Body*> checked_;            // of the statement being run
+  std::vector<std::map<std::string, Local>> check_levels_;  // names declared in code that is not run
+  std::optional<Type> check_result_;                        // of the subroutine that is checked
+  std::set<const syntax::Body*> checked_;                   // of the statement being run
   std::vector<Annotation> annotations_;
   std::set<std::uint32_t> annotated_;  // places of annotations that are noted
+  bool has_callables_ = false;         // subroutines or externs
   bool times_asked_ = false;
   std::optional<GateTimes> times_;
   Forms lengths_;  // over the stretches; the form of a delay until they are solved

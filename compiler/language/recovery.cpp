@@ -50,10 +50,10 @@ bool begins_statement(std::size_t type) {
 
 /// What may begin an expression, a type or an operand is named by one word in "expected ...".
 constexpr std::array expression_starts = {
-    P::IDENTIFIER, P::INTEGER, P::REAL,       P::IMAGINARY,  P::TIMING,        P::TRUE,
-    P::FALSE,      P::STRING,  P::LEFT_PAREN, P::DURATIONOF, P::MINUS,         P::LOGICAL_NOT,
-    P::BIT_NOT,    P::BIT,     P::BOOL,       P::INT,        P::UINT,          P::FLOAT,
-    P::ANGLE,      P::COMPLEX, P::DURATION,   P::STRETCH,    P::HARDWARE_QUBIT};
+    P::IDENTIFIER, P::INTEGER, P::REAL,       P::IMAGINARY,  P::TIMING,         P::TRUE,
+    P::FALSE,      P::STRING,  P::LEFT_PAREN, P::DURATIONOF, P::MINUS,          P::LOGICAL_NOT,
+    P::BIT_NOT,    P::BIT,     P::BOOL,       P::INT,        P::UINT,           P::FLOAT,
+    P::ANGLE,      P::COMPLEX, P::DURATION,   P::STRETCH,    P::HARDWARE_QUBIT, P::POW};
 
 /// A long name or number is quoted up to a length, cut between characters.
 std::string shortened(std::string text) {

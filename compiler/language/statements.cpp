@@ -138,6 +138,32 @@ void Reader::note_broken(const syntax::Statement& statement) {
   scopes_.add(std::move(symbol));
 }
 
+/// Calls in the angles and indices of a gate call are made once, before it: their results are variables like
+/// all others then, and the gate may need an arm for each of their values.
+void Reader::hoist_calls(const syntax::GateCall& call) {
+  if (capture_ != nullptr || !has_callables_) return;
+  const Symbol* callee = scopes_.find(call.name.text);
+  if (callee != nullptr && callee->kind != Symbol::Kind::gate) return;  // a subroutine in the early form
+  for (const SyntaxExpression& angle : call.angles) hoist_calls(angle);
+  for (const SyntaxExpression& operand : call.operands) hoist_calls(operand);
+}
+
+void Reader::hoist_calls(const SyntaxExpression& expression) {
+  if (expression.kind == SyntaxExpression::Kind::call) {
+    const Symbol* callee = scopes_.find(expression.text);
+    const bool is_call = callee != nullptr &&
+                         (callee->kind == Symbol::Kind::subroutine || callee->kind == Symbol::Kind::external);
+    if (is_call) {
+      const Value value = evaluated(expression);
+      // What an extern gave is in a variable of its own already.
+      const bool is_kept = callee->kind == Symbol::Kind::external;
+      fixed_[&expression] = is_kept ? value : kept(value, callee->name + "_value");
+      return;
+    }
+  }
+  for (const SyntaxExpression& argument : expression.arguments) hoist_calls(argument);
+}
+
 void Reader::with_splits(syntax::Span at, const std::set<std::string>& assigned,
                          const std::function<void()>& action) {
   const std::size_t before = emitted_;
@@ -196,7 +222,12 @@ void Reader::run_split(const Split& split, const std::set<std::string>& assigned
       fixed_variables_[split.variable] = value;
     }
     arm.block = open_arm();
-    with_splits(split.at, assigned, action);
+    try {
+      with_splits(split.at, assigned, action);
+    } catch (const GivenTwice&) {
+      warn(split.at, "for some values of the running index a qubit is given twice; nothing is done for them");
+      circuit_.blocks[arm.block].clear();
+    }
     close_arm();
     fixed_ = outer_indices;
     fixed_variables_ = outer_variables;
@@ -213,7 +244,10 @@ Ending Reader::run_statement(const syntax::Statement& statement) {
     fail(at, "inside a gate there are calls of gates, barriers and for loops only");
   }
   if (const auto* s = std::get_if<GateCall>(&statement.what)) {
+    const auto fixed = fixed_;
+    hoist_calls(*s);
     with_splits(at, {}, [&] { call_gate(*s, at); });
+    fixed_ = fixed;
     return has_ended_ ? Ending::ends : Ending::falls;
   }
   if (const auto* s = std::get_if<Declaration>(&statement.what)) {
@@ -337,6 +371,10 @@ void Reader::declare_qubits(const syntax::QubitDeclaration& declaration, syntax:
   symbol.name = declaration.name.text;
   symbol.at = declaration.name.at;
   symbol.is_scalar = !declaration.size;
+  if (version_ == 20 && symbol.is_scalar) {
+    fail(declaration.name.at, fmt::format("the register `{}` needs a size", symbol.name),
+         {fmt::format("help: write qreg {}[1];", symbol.name)});
+  }
   const std::uint32_t size = declaration.size ? size_of(*declaration.size, 0, "the size of a register") : 1;
   if (circuit_.wires + std::uint64_t(size) > most_qubits) {
     fail(at, fmt::format("a program has at most {} qubits", most_qubits));
@@ -359,6 +397,10 @@ void Reader::declare_variable(const syntax::Declaration& declaration, syntax::Sp
   const bool global = scopes_.depth() == 1;
   symbol.type = scalar_type(is_array ? declaration.type.element[0] : declaration.type);
   if (symbol.type.base == Base::none) fail(declaration.type.at, "a variable cannot be void");
+  if (version_ == 20 && declaration.old_form && declaration.type.width.empty()) {
+    fail(declaration.name.at, fmt::format("the register `{}` needs a size", symbol.name),
+         {fmt::format("help: write creg {}[1];", symbol.name)});
+  }
   if (is_array) {
     if (!global) fail(at, "arrays are declared at the outermost level only");
     if (symbol.type.base == Base::bit || symbol.type.base == Base::bits ||
@@ -478,9 +520,13 @@ void Reader::initialize(Symbol symbol, const syntax::Declaration& declaration, s
 
 void Reader::declare_input(const syntax::Declaration& declaration, Symbol symbol, syntax::Span at) {
   if (declaration.value) fail(at, "an input gets its value from outside; it has none here");
-  if (symbol.type.base == Base::duration || symbol.type.base == Base::stretch ||
-      symbol.type.base == Base::complex) {
-    fail(declaration.type.at, fmt::format("an input of type {} is not supported", text_of(symbol.type)));
+  if (symbol.type.base == Base::duration || symbol.type.base == Base::stretch) {
+    fail(declaration.type.at, fmt::format("an input of type {} is not supported", text_of(symbol.type)),
+         {"note: times are fixed when a program is compiled; compile it once for each length"});
+  }
+  if (symbol.type.base == Base::complex) {
+    fail(declaration.type.at, fmt::format("an input of type {} is not supported", text_of(symbol.type)),
+         {"help: take its real and its imaginary part as two inputs of type float"});
   }
   symbol.kind = Symbol::Kind::input;
   symbol.is_set = true;

@@ -767,6 +767,12 @@ Expression TreeBuilder::primary(P::PrimaryContext& context) {
       call.arguments = expressions(context.arguments()->expressions());
       return call;
     }
+    case P::POW: {
+      Expression call = literal(Kind::call, token);
+      call.at = at(context);
+      call.arguments = expressions(context.arguments()->expressions());
+      return call;
+    }
     case P::INTEGER:
       return literal(Kind::integer, token);
     case P::REAL:

@@ -47,7 +47,7 @@ class NativeWriter {
   /// Without a stream the text is kept.
   NativeWriter(std::ostream* out, const Circuit& circuit, std::span<const std::uint32_t> start)
       : out_(out), circuit_(circuit), start_(start), bits_(bit_names(circuit)) {
-    for (std::uint32_t i = 0; i < circuit_.wires; ++i) ions_.push_back(fmt::format("ion[{}]", i));
+    for (std::uint32_t i = 0; i < circuit_.wires; ++i) ions_.emplace_back(fmt::format("ion[{}]", i));
   }
 
   std::string write(const NativeHeading& heading) {
@@ -227,7 +227,7 @@ class NativeWriter {
   TextWriter out_;
   const Circuit& circuit_;
   std::span<const std::uint32_t> start_;
-  std::vector<std::string> ions_;
+  std::vector<ShortText> ions_;
   std::vector<std::string> bits_;
   AnnotationPlaces notes_;
 };

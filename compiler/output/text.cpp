@@ -1,7 +1,14 @@
 // Angles, bits and classical code as text; see text.h.
 #include "output/text.h"
 
+#include <algorithm>
+
 namespace isinglass {
+
+void TextWriter::grow(std::size_t size) {
+  flush();
+  if (used_ + size > buffer_.size()) buffer_.resize(used_ + std::max(size, piece));
+}
 
 std::string angle_text(Angle angle, const Circuit& circuit) {
   if (angle.form == 0) return fmt::format("{}", angle.constant);

@@ -5,14 +5,30 @@
 #include <fmt/format.h>
 
 #include <bit>
+#include <cstring>
 #include <ostream>
+#include <stdexcept>
 #include <string>
 #include <string_view>
+#include <utility>
 #include <vector>
 
 #include "circuit/circuit.h"
 
 namespace isinglass {
+
+/// A name of at most 23 characters, copied without asking how long it is.
+struct ShortText {
+  char text[23] = {};
+  std::uint8_t size = 0;
+
+  ShortText() = default;
+  /// Throws std::length_error where the name is longer.
+  explicit ShortText(std::string_view name) : size(static_cast<std::uint8_t>(name.size())) {
+    if (name.size() > sizeof text) throw std::length_error("a name too long to be short");
+    name.copy(text, name.size());
+  }
+};
 
 /// Collects text and hands it on in large pieces.
 class TextWriter {
@@ -23,22 +39,38 @@ class TextWriter {
   TextWriter(const TextWriter&) = delete;
   TextWriter& operator=(const TextWriter&) = delete;
 
-  void add(std::string_view text) {
-    buffer_.append(text);
-    if (out_ != nullptr && buffer_.size() > piece) flush();
+  /// Literals: their size is known, so that copying is a few moves.
+  template <std::size_t Size>
+  void add(const char (&text)[Size]) {
+    std::memcpy(room(Size - 1), text, Size - 1);
+    used_ += Size - 1;
   }
-  void add(std::uint64_t number) { fmt::format_to(std::back_inserter(buffer_), FMT_COMPILE("{}"), number); }
+  void add(std::string_view text) {
+    std::memcpy(room(text.size()), text.data(), text.size());
+    used_ += text.size();
+  }
+  void add(const ShortText& name) {
+    std::memcpy(room(sizeof name.text), name.text, sizeof name.text);
+    used_ += name.size;
+  }
+  void add(std::uint64_t number) {
+    char* const at = room(most_digits);
+    used_ += static_cast<std::size_t>(fmt::format_to(at, FMT_COMPILE("{}"), number) - at);
+  }
   /// The shortest text that reads back to the same number. Programs repeat their angles: texts are
   /// remembered.
   void add(double number) {
     const auto bits = std::bit_cast<std::uint64_t>(number);
     Known& known = known_[(bits * 0x9e3779b97f4a7c15u) >> (64 - cache_bits)];
-    if (known.bits != bits || known.size == 0) {
+    char* const at = room(sizeof known.text);
+    if (known.bits == bits && known.size > 0) {
+      std::memcpy(at, known.text, sizeof known.text);
+    } else {
       known.bits = bits;
-      known.size =
-          static_cast<std::uint8_t>(fmt::format_to(known.text, FMT_COMPILE("{}"), number) - known.text);
+      known.size = static_cast<std::uint8_t>(fmt::format_to(at, FMT_COMPILE("{}"), number) - at);
+      std::memcpy(known.text, at, sizeof known.text);
     }
-    add(std::string_view(known.text, known.size));
+    used_ += known.size;
   }
 
   template <class... Parts>
@@ -47,14 +79,19 @@ class TextWriter {
   }
   void flush() {
     if (out_ == nullptr) return;
-    out_->write(buffer_.data(), static_cast<std::streamsize>(buffer_.size()));
-    buffer_.clear();
+    out_->write(buffer_.data(), static_cast<std::streamsize>(used_));
+    used_ = 0;
   }
   /// What was kept; nothing where a stream has it.
-  std::string take() { return out_ == nullptr ? std::move(buffer_) : std::string(); }
+  std::string take() {
+    if (out_ != nullptr) return {};
+    buffer_.resize(std::exchange(used_, 0));
+    return std::move(buffer_);
+  }
 
  private:
   static constexpr std::size_t piece = std::size_t{1} << 16;
+  static constexpr std::size_t most_digits = 20;  // of 64 bits
   static constexpr int cache_bits = 10;
   static constexpr std::size_t cache_size = std::size_t{1} << cache_bits;
   struct Known {
@@ -63,8 +100,17 @@ class TextWriter {
     char text[31];  // the longest double has 24 characters
   };
 
+  /// Where the next `size` bytes go.
+  char* room(std::size_t size) {
+    if (used_ + size > buffer_.size()) [[unlikely]]
+      grow(size);
+    return buffer_.data() + used_;
+  }
+  void grow(std::size_t size);  // apart, so that room() stays small enough to be everywhere
+
   std::ostream* out_;
-  std::string buffer_;
+  std::string buffer_;  // longer than the text in it
+  std::size_t used_ = 0;
   std::vector<Known> known_;
 };
 

@@ -10,6 +10,7 @@
 #include "verify/dense.h"
 #include "verify/late_bits.h"
 #include "verify/memory.h"
+#include "verify/paths.h"
 #include "verify/programs.h"
 #include "verify/rotations.h"
 #include "verify/side_by_side.h"
@@ -265,24 +266,45 @@ Verdict compare_side_by_side(const Job& job) {
                 words + for_inputs(job, sets));
 }
 
+/// Without amplitudes: both as sums over paths. Shows sameness or nothing.
+Verdict compare_paths(const Job& job) {
+  bool are_same = true;
+  PathResult worst;
+  const int sets = for_each_input_set(job, [&](const InputValues& values) {
+    if (!are_same) return;
+    const double before = worst.distance;
+    worst = by_paths(job, values);
+    worst.distance = std::max(worst.distance, before);
+    are_same = worst.are_same;
+  });
+  if (!are_same) return not_shown("Their sums over paths are not written alike, which proves nothing.");
+  const Deviation deviation{worst.distance, worst.distance * worst.distance, 0};
+  const std::string words = fmt::format(
+      "Both circuits were written as sums over paths, polynomials in {} variables; all of them are equal, "
+      "which decides.",
+      worst.variables);
+  return judged(job, "paths", deviation, words + for_inputs(job, sets));
+}
+
 /// The methods without amplitudes, the cheaper first.
 Verdict compare_sparsely(const Job& job) {
   if (!is_simple(job)) {
     return not_shown("The programs are too large for state vectors, and measure on the way.");
   }
   if (job.options.most_followed_wires == 0) return compare_rotations(job);
-  const Verdict followed = compare_side_by_side(job);
-  if (followed.answer != Answer::not_shown) return followed;
-  Verdict rotated;
-  try {
-    rotated = compare_rotations(job);
-  } catch (const Unsupported& limit) {
-    rotated =
-        not_shown(fmt::format("Pauli rotations came to no end either: {} was beyond them.", limit.what()));
+  Verdict verdict = compare_side_by_side(job);
+  for (const auto method : {compare_paths, compare_rotations}) {
+    if (verdict.answer != Answer::not_shown) return verdict;
+    std::string words = verdict.explanation;
+    try {
+      verdict = method(job);
+      if (verdict.answer == Answer::not_shown) verdict.explanation = words + " " + verdict.explanation;
+    } catch (const Unsupported& limit) {
+      verdict.explanation =
+          fmt::format("{} Another method came to no end either: {} was beyond it.", words, limit.what());
+    }
   }
-  if (rotated.answer == Answer::not_shown)
-    rotated.explanation = followed.explanation + " " + rotated.explanation;
-  return rotated;
+  return verdict;
 }
 
 }  // namespace

@@ -82,7 +82,9 @@ TypeName parsed_type(const std::string& text) {
   if (starts("uint")) return {Type::natural, width ? width : 64, {}};
   if (starts("int")) return {Type::integer, width ? width : 64, {}};
   if (starts("float")) return {Type::real, 64, {}};
-  if (starts("angle")) return {Type::angle, width ? width : 64, {}};
+  // Without a width an angle is a real number that is never reduced, as the language room has it.
+  if (starts("angle") && width == 0) return {Type::real, 64, {}};
+  if (starts("angle")) return {Type::angle, width, {}};
   throw Unsupported("values of type " + text);
 }
 

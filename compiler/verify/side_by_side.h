@@ -4,11 +4,9 @@
 //
 // A gate of the source multiplies D from the left, one of the compiled circuit its inverse from the right.
 // Where a pass rewrote a stretch, D grows over the wires of the stretch and falls apart again behind it, into
-// one-qubit factors (frames that have moved on) and exchanged wires (swaps that were renamed). Where wires
-// start in |0>, only the states that the compiled circuit can be in count, as long as they are known on few
-// wires; where all that is left are measurements, phases of basis states do not. If D is nothing at the end,
-// the circuits are the same, exactly, whatever their size; cost is linear in the gates as long as D stays
-// narrow. If it has to grow over too many wires the method gives up, which proves nothing.
+// one-qubit factors (frames that have moved on) and exchanged wires (swaps that were renamed). If D is
+// nothing at the end, the circuits are the same, exactly, whatever their size; cost is linear in the gates as
+// long as D stays narrow. If it has to grow over too many wires the method gives up, which proves nothing.
 #pragma once
 
 #include "verify/job.h"

@@ -332,3 +332,31 @@ c[1] = measure q[1];
   CHECK(run_program({"verify", source, native}).status == 0);
   CHECK(run_program({"compile", folder.write("e.qasm", "OPENQASM 3.0;\nqubit q;\n@alone\n")}).status == 3);
 }
+
+TEST_CASE("bind: arithmetic on an input angle[n] wraps, on other inputs it does not, under a control too") {
+  const Folder folder;
+  const std::string heading = "OPENQASM 3.1;\ninclude \"stdgates.inc\";\n";
+  const std::string body =
+      "qubit[2] q;\nctrl @ rx(a + b) q[0], q[1];\nctrl @ rx(3 * a) q[0], q[1];\ncrz(a) q[1], q[0];\n"
+      "ctrl @ rx(a * k) q[0], q[1];\nctrl @ rx(w * v) q[0], q[1];\nctrl @ rx(2 * w + 0.1) q[0], q[1];\n";
+  const std::string source = folder.write(
+      "s.qasm", heading +
+                    "input angle[4] a; input angle[4] b; input uint[3] k; input angle w; input float v;\n" +
+                    body);
+  // 13 and 7 sixteenths of a turn.
+  const std::string bound =
+      folder.write("b.qasm", heading +
+                                 "const angle[4] a = angle[4](\"1101\"); const angle[4] b = "
+                                 "angle[4](\"0111\"); const uint[3] k = 5; "
+                                 "const float w = 2.5; const float v = 3.5;\n" +
+                                 body);
+  const std::string values =
+      folder.write("v.csv", "a,b,k,w,v\n5.105088062083414,2.748893571891069,5,2.5,3.5\n");
+  const std::string plan = folder.path("plan.qasm");
+  REQUIRE(run_program({"compile", source, "--out", plan, "--quiet"}).status == 0);
+  REQUIRE(run_program({"bind", plan, "--values", values, "--out", folder.path("n.qasm"), "--quiet"}).status ==
+          0);
+  const Ran same = run_program({"verify", bound, folder.path("n.qasm")});
+  INFO(same.out << same.err);
+  CHECK(same.status == 0);
+}

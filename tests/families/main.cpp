@@ -91,13 +91,14 @@ void report(const Row& row, const Circuit& circuit, double seconds = 0) {
         std::chrono::steady_clock::now() + std::chrono::duration_cast<std::chrono::steady_clock::duration>(
                                                std::chrono::duration<double>(seconds));
   }
-  const Circuit result = optimize(circuit, context);
+  Steps steps;
+  const Circuit result = optimize(circuit, context, nullptr, &steps);
   const Tally tally = tally_of(result);
   const std::size_t before = before_of(circuit).two_qubit;
   CheckOptions options;
   options.threads = 2;
   options.most_unitary_wires = 12;
-  const Verdict verdict = compare(circuit, result, {}, options);
+  const Verdict verdict = compare_along(circuit, steps, result, {}, options);
   print_row(row, fmt::format("{}", before),
             fmt::format("{} ({:.2f} times fewer)", tally.xx,
                         tally.xx > 0 ? static_cast<double>(before) / static_cast<double>(tally.xx) : 0.0),

@@ -113,13 +113,13 @@ class ProgramWriter {
                  pick({"", " = {{1, 2, 3}, {4, 5, 6}}", " = {1, 2}"}) + ";\n";
         break;
       case 13:
-        numbers_.push_back({fresh("d")});
-        text_ += pick({"duration ", "const duration ", "stretch "}) + numbers_.back().name +
-                 pick({" = 100ns", " = 2 * 1.5us", "", " = durationof({ })"}) + ";\n";
+        times_.push_back({fresh("d")});
+        text_ += pick({"duration ", "const duration ", "stretch ", "stretch "}) + times_.back().name +
+                 pick({" = 100ns", " = 2 * 1.5us", "", "", " = durationof({ cx q[0], q[1]; })"}) + ";\n";
         break;
       case 14:
-        text_ +=
-            pick({"pragma keep this\n", "@note here\n", "extern ex(int) -> int;\n", "output bit[2] out;\n"});
+        text_ += pick(
+            {"pragma keep this\n", "@note here\n", "extern ex(int) -> uint[5];\n", "output bit[2] out;\n"});
         break;
       default:
         statement(0);
@@ -171,7 +171,7 @@ class ProgramWriter {
 
   void subroutine() {
     const ProgramWriter outside = *this;  // its names come back at the end
-    qubits_ = bits_ = wholes_ = reals_ = numbers_ = arrays_ = {};
+    qubits_ = bits_ = wholes_ = reals_ = numbers_ = arrays_ = times_ = {};
     const std::string name = fresh("f");
     text_ += "def " + name + "(" +
              pick({"", "int k", "qubit z", "qubit[2] z, float k", "readonly array[int[8], #dim = 1] z"}) +
@@ -183,6 +183,7 @@ class ProgramWriter {
   }
 
   void statement(int depth) {
+    if (choose(24) == 23) text_ += pick({"@note here\n", "@a.b\n"});
     const unsigned kinds = depth < deepest ? 22 : 10;
     switch (choose(kinds)) {
       case 0:
@@ -198,7 +199,8 @@ class ProgramWriter {
         break;
       case 5:
         text_ += pick({"reset " + operand(), "barrier", "barrier " + operand(), "nop",
-                       "delay[10ns] " + operand(), "delay[" + value(3) + "] " + operand()}) +
+                       "delay[" + time() + "] " + operand(), "delay[" + time() + "] " + operand(),
+                       "delay[" + value(3) + "] " + operand()}) +
                  ";\n";
         break;
       case 6:
@@ -252,8 +254,7 @@ class ProgramWriter {
         text_ += "}\n";
         break;
       case 16:
-        text_ += pick({"box ", "box[1ms] ", "box[" + value(3) + "] ", ""});
-        block(depth);
+        box(depth);
         break;
       case 17:
       case 18:
@@ -267,6 +268,27 @@ class ProgramWriter {
       default:
         gate_call();
     }
+  }
+
+  /// A block, sometimes with stretches that are to fill it.
+  void box(int depth) {
+    text_ += pick({"box ", "box[1ms] ", "box[1ms] ", "box[" + time() + "] ", ""});
+    if (choose(2) == 0) return block(depth);
+    const ProgramWriter outside = *this;
+    text_ += "{ ";
+    for (unsigned i = choose(3); i > 0; --i) {
+      times_.push_back({fresh("s")});
+      text_ += "stretch " + times_.back().name + "; ";
+    }
+    for (unsigned i = choose(6); i > 0; --i) {
+      if (choose(2) == 0) {
+        text_ += "delay[" + time() + "] " + operand() + "; ";
+      } else {
+        statement(depth + 1);
+      }
+    }
+    text_ += "} ";
+    restore(outside);
   }
 
   void assignment() {
@@ -302,6 +324,7 @@ class ProgramWriter {
     reals_ = outside.reals_;
     numbers_ = outside.numbers_;
     arrays_ = outside.arrays_;
+    times_ = outside.times_;
   }
 
   void block(int depth) {
@@ -353,6 +376,7 @@ class ProgramWriter {
   }
 
   std::string operand() {
+    if (choose(16) == 15) return pick({"$0", "$1", "$3"});
     if (qubits_.empty()) return "q";
     const Named& one = qubits_[choose(static_cast<unsigned>(qubits_.size()))];
     const unsigned form = choose(12);
@@ -395,9 +419,27 @@ class ProgramWriter {
     const unsigned form = choose(depth >= deepest ? 6 : 10);
     if (form < 3) return pick({"pi", "pi/2", "-pi/4", "0.5", "1e-3", "2.", "tau", "1/2"});
     if (form < 6) return pick(reals_, "0.25");
+    if (form == 9 && choose(2) == 0) {  // bits of the running program
+      return pick({bit() + " * 0.3", "uint[4](c) * pi / 8", "angle[4](c)", "-angle[4](c)", "ex(1) * 0.1",
+                   "pow(2, " + bit() + ")"});
+    }
     if (form == 6) return pick({"sin(", "cos(", "sqrt(", "exp(", "arctan("}) + real(depth + 1) + ")";
     return real(depth + 1) + pick({" + ", " - ", " * ", " / "}) +
            (choose(3) == 0 ? whole(depth + 1) : real(depth + 1));
+  }
+
+  /// A duration.
+  std::string time() {
+    switch (choose(6)) {
+      case 0:
+        return pick({"10ns", "1.5us", "100dt", "0s"});
+      case 1:
+        return pick({"2 * ", "0.5 * ", "-1 * ", "3us - "}) + pick(times_, "7ns");
+      case 2:
+        return pick(times_, "7ns") + pick({" + ", " - "}) + pick(times_, "10us");
+      default:
+        return pick(times_, "20us");
+    }
   }
 
   /// An expression of anything.
@@ -442,7 +484,7 @@ class ProgramWriter {
   std::size_t at_ = 0;
   std::string text_;
   unsigned names_ = 0;
-  std::vector<Named> qubits_, bits_, wholes_, reals_, numbers_, arrays_, gates_, subroutines_;
+  std::vector<Named> qubits_, bits_, wholes_, reals_, numbers_, arrays_, times_, gates_, subroutines_;
 };
 
 }  // namespace isinglass::fuzz

@@ -215,6 +215,54 @@ TEST_CASE("barrier, reset, delay, box, durations") {
   CHECK(errors_in("duration d = 1ns * 1ns;").size() == 1);
 }
 
+TEST_CASE("running indices that may meet: nothing is done where they do") {
+  const std::string body = "qubit[3] q; bit[2] c; c = measure q[0:1]; uint[2] k = uint[2](c);\n";
+  const Circuit circuit = circuit_of(heading + body + "cx q[k], q[(k + 1) % 3];");
+  std::size_t gates = 0;
+  for (const Block& block : circuit.blocks) {
+    for (const Operation& op : block) gates += op.kind == Kind::x ? 1 : 0;
+  }
+  CHECK(gates == 6);  // all ordered pairs
+  CHECK(errors_of(heading + body + "cx q[1], q[1];").size() == 1);
+}
+
+TEST_CASE("running angles: conditional gates for rotations, arms for the rest, a limit") {
+  const auto branches = [](const std::string& body) {
+    const Circuit circuit =
+        circuit_of(heading + "qubit[2] q; bit[2] c; uint[16] k; bit[16] r; r[0] = measure q[0];\n" +
+                   "k = uint[16](r); extern f() -> uint[16]; extern g() -> float; extern few() -> "
+                   "uint[2];\n" +
+                   body);
+    std::size_t arms = 0;
+    for (const Branch& branch : circuit.branches) arms += branch.arms.size();
+    return std::to_string(circuit.branches.size()) + " " + std::to_string(arms);
+  };
+  CHECK(branches("rz(k * pi / 7) q[0];") == "16 16");
+  CHECK(branches("rz(k * pi / 7) q;") == "16 16");
+  CHECK(branches("rz(f() * pi / 7) q[0];") == "16 16");
+  CHECK(branches("U(few() * 0.1, 0, 0.2) q[0];") == "1 4");
+  const std::string reads = "def m(qubit p) -> uint[2] { bit[2] d; d[0] = measure p; return uint[2](d); }\n";
+  CHECK(branches(reads + "rx(m(q[1]) * 0.6) q[0];") == "2 2");
+  CHECK(branches(reads + "U(m(q[1]) * 0.6, 0, 0.2) q[0];") == "1 4");
+  CHECK(branches(reads + "x q[m(q[1]) % 2];") == "1 2");
+  CHECK(branches("input float t; ry(t + k * 0.1) q[0];") == "16 16");
+  CHECK(branches("c[0] = measure q[0]; c[1] = measure q[1]; rz(c[0] * pi) q[0]; U(c[0] * 0.1, c[1] * pi, 0) "
+                 "q[0];") == "4 8");
+  const auto refused = [](const std::string& body) {
+    const auto errors = errors_in(
+        "uint[16] k; bit[16] r; r[0] = measure q[0]; k = uint[16](r); extern f() -> uint[16];"
+        "extern g() -> float;" +
+        body);
+    return errors.size() == 1 ? errors[0] : "";
+  };
+  CHECK(refused("U(k * 0.1, 0, 0.2) q[0];").find("cannot be compiled") != std::string::npos);
+  CHECK(refused("U(f() * 0.1, 0, 0.2) q[0];").find("cannot be compiled") != std::string::npos);
+  CHECK(refused("rz(g()) q[0];").find("cannot be compiled") != std::string::npos);
+  CHECK(refused("rz((k + 1) * 0.1) q[0];").find("cannot be compiled") != std::string::npos);
+  CHECK(refused("angle[16] a = angle[16](r); crz(2 * a) q[0], q[1];").find("cannot be compiled") !=
+        std::string::npos);
+}
+
 TEST_CASE("what is not supported says so") {
   CHECK(errors_in("cal { }").size() == 1);
   CHECK(errors_in("defcal x $0 { }").size() == 1);
@@ -325,7 +373,7 @@ TEST_CASE("extern calls are kept, called once each") {
   CHECK(circuit.externs[0] == "extern decide(bit[2], int[8]) -> bit;");
   CHECK(printed(circuit.statements[0].value, circuit) == "decide(c, int[8](3))");
   CHECK(circuit.statements.back().kind == ClassicalStatement::Kind::call);
-  CHECK(errors_in("extern f(float) -> float; rz(f(1.0)) q[0];").size() == 1);
+  CHECK(errors_in("extern f(float) -> float; rz(f(1.0)) q[0];").size() == 1);  // a float
   CHECK(errors_in("extern f(float) -> float; float a = f();").size() == 1);
 }
 

@@ -63,6 +63,79 @@ TEST_CASE("code that is not run is read nevertheless") {
   CHECK(errors_in("def f(int n) -> int { return n < 1 ? 1 : 2; }").size() == 1);  // no such operator
 }
 
+TEST_CASE("code that is not run: types, counts and indices are checked") {
+  const auto one = [](const std::string& body) {
+    INFO(body);
+    const Lines dead = errors_in("if (false) { " + body + " }");
+    CHECK(dead.size() == 1);
+    const Lines uncalled = errors_in("def f(qubit a, qubit[3] v, int n, bit[2] r, float w) { " + body + " }");
+    CHECK(uncalled.size() >= 1);
+  };
+  for (const std::string body : {"int k = \"01\";",
+                                 "uint[4] k = 1; k = k & 1.5;",
+                                 "bit[2] b = \"011\";",
+                                 "bool k = 2ns;",
+                                 "const int k = 1.5;",
+                                 "float y = sin(\"01\");",
+                                 "float y = sin(1, 2);",
+                                 "duration d = 3;",
+                                 "int k = 2 * \"01\";",
+                                 "rx(\"01\") $0;",
+                                 "rx(2ns) $0;",
+                                 "delay[5] $0;",
+                                 "int k = sizeof(3, 4, 5) + q9;",
+                                 "gphase(1) $0;",
+                                 "gphase(1, 2);",
+                                 "rx $0;",
+                                 "cx $0;",
+                                 "if (2ns) x $0;",
+                                 "while (1 im) x $0;",
+                                 "bit[3] b; b[3] = 1;",
+                                 "bit[3] b; x $0; b[-4] = 1;",
+                                 "int[8] k; k[0.5] = 1;",
+                                 "int k; k = measure $0;",
+                                 "int k; reset k;",
+                                 "int k; x k;",
+                                 "array[int[8], 2] k; reset $0;",
+                                 "angle[4] k; k = k * 1.5;",
+                                 "g9($0);",
+                                 "uint[4] k = 3; k <<= 0.5;",
+                                 "pi = 3;",
+                                 "int k = 1; k += 2ns;"}) {
+    one(body);
+  }
+  CHECK(errors_in("def f(int n) { } if (false) f();").size() == 1);
+  CHECK(errors_in("def f(int n) { } if (false) f(1, 2);").size() == 1);
+  CHECK(errors_in("extern f(int) -> int; if (false) { int k = f(1, 2); }").size() == 1);
+  CHECK(errors_in("def f() -> int { return \"01\"; }").size() == 1);
+  CHECK(errors_in("def f(qubit a) { x a[0]; }").size() == 1);
+  CHECK(errors_in("if (false) { x q[9]; }").size() == 1);
+  CHECK(errors_in("if (false) { c[7] = 1; }").size() == 1);
+  // Once, although the subroutine is called as well.
+  CHECK(errors_in("def f() -> int { int k = \"01\"; return k; } int m = f();").size() == 1);
+}
+
+TEST_CASE("code that is not run: what has a meaning with other values passes") {
+  for (const std::string body :
+       {"int k = 1 / 0;", "const int n = 0; rx(pi / n) q[0];",
+        "uint[4] k = 3; for int i in [0:3] { k = k & i; }", "uint[4] k = 1; k <<= 9;",
+        "float y = sqrt(-1.0); float z = arccos(2);", "bit[2] r; if (r == 3) x q[0];",
+        "bit[2] r; uint[2] k = uint[2](r); int m = k % 2; rx(m * pi) q[0];",
+        "duration d = 3ns; delay[2 * d - 1ns] q;",
+        "angle[4] a = 0.3; a = 2 * a + pi; rz(a) q[0]; bit b = a[1];",
+        "bit b = measure q[0]; bool d = b; d = !b;", "const int n = 3; bit[n] r; r[2] = 1; int[n] k = r[0];",
+        "int k = 3; int m = -k ** 2;", "let a = q[0:1]; x a[0];", "complex z = 1 + 2 im; float y = real(z);",
+        "bit[2] d = \"01\"; d ^= \"11\"; bit b = d[0] & d[1]; d[0] = b ^ 1;",
+        "uint[8] k = 1; k[0:1] = \"11\"; bit d = k[7];"}) {
+    INFO(body);
+    CHECK(errors_in("if (false) { " + body + " }").empty());
+  }
+  CHECK(errors_in("array[int[8], 2, 3] v; if (false) { int k = v[1, 2] + v[0][1]; v[0] = v[1]; }").empty());
+  CHECK(errors_in(
+            "def f(readonly array[int[8], #dim = 2] v, mutable array[bit, 3] w) -> int { return v[0, 1]; }")
+            .size() == 0);
+}
+
 TEST_CASE("help: names one slip away, missing includes, casts") {
   const auto notes = [](const std::string& text) {
     const Reading reading = read("f.qasm", text);

@@ -135,6 +135,13 @@ TEST_CASE("functions on constants") {
   CHECK(holds("rotl(\"0011\", -1) == rotr(\"0011\", 1) && rotr(\"0011\", 1) == \"1001\""));
   CHECK(holds("rotl(\"0011\", 5) == \"0110\""));
   CHECK(number("real(2.0 + 3.0im) + imag(2.0 + 3.0im)") == 5);
+  CHECK(number("pow(2, 10) + pow(2.0, -1) + pow(pow(2, 2), 2)") == 1040.5);
+  CHECK(holds("pow(2, 3) == 8 && -pow(2, 2) == -4"));
+  CHECK(errors_in("rz(pow(2)) q;").size() == 1);
+  CHECK(errors_in("rz(pow) q;").size() == 1);
+  CHECK(meaning::errors_of("OPENQASM 3.2;\nconst int n = pow(2, 3);") ==
+        std::vector<std::string>{"2:15: error: `pow` is no function from OpenQASM 3.2 on"});
+  CHECK(meaning::errors_of("OPENQASM 3.0;\nconst int n = pow(2, 3);").empty());
   CHECK(errors_in("rz(arccos(2)) q;").size() == 1);
   CHECK(errors_in("rz(sqrt(-1)) q;").size() == 1);
   CHECK(errors_in("rz(sin()) q;").size() == 1);

@@ -136,3 +136,9 @@ TEST_CASE("OpenQASM 2: malformed files end in an error at the right place") {
   CHECK(first("opaque o a; qreg q[1]; o q[0];") == "3:24: error: `o` is opaque: nothing says what it does");
   CHECK(first("qreg q[2]; qreg q[3];") == "3:17: error: `q` is declared already");
 }
+
+TEST_CASE("version 2: a register has a size") {
+  CHECK(errors_of("OPENQASM 2.0;\nqreg q;") ==
+        std::vector<std::string>{"2:6: error: the register `q` needs a size"});
+  CHECK(errors_of("OPENQASM 2.0;\ncreg c;").size() == 1);
+}

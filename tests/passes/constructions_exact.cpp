@@ -257,13 +257,16 @@ TEST_CASE("a clean wire is not lent a second time as a dirty one") {
     for (const std::uint32_t idle : {1u, 2u, 3u}) {
       Circuit source;
       add_register(source, "q", k + 1 + idle);
-      for (std::uint32_t w = 0; w <= k; ++w) source.body().push_back(source.make(Kind::h, {w}));
+      for (std::uint32_t w = 0; w <= k; ++w) {
+        source.body().push_back(source.make(Kind::r, {w}, {{1.9 + 0.1 * w}, {0.3 * w}}));
+      }
       source.body().push_back(source.make(Kind::x, range(k + 1)));
       PassContext context;
       context.promise.zero_start = true;
       const Circuit result = choose_constructions(source, context);
       CAPTURE(k);
       CAPTURE(idle);
+      check_invariants(result);
       CHECK(support::distance_from_zero(source, result) < 1e-9);
     }
   }
@@ -282,5 +285,6 @@ TEST_CASE("random circuits through the pass alone") {
     CAPTURE(listed(source));
     CHECK(support::distance_from_zero(source, result) < 1e-8);
     if (!context.promise.zero_start) CHECK(support::distance(source, result) < 1e-8);
+    for (const Operation& op : result.body()) CHECK(op.operand_count <= 2);
   }
 }

@@ -2,7 +2,6 @@
 #include "measured.h"
 
 #include <algorithm>
-#include <stdexcept>
 
 namespace isinglass::support {
 
@@ -31,11 +30,23 @@ bool value_of(const Circuit& circuit, const Expression& expression, const std::v
 
 class Walk {
  public:
+  struct Place {
+    std::uint32_t block;
+    std::size_t operation;
+  };
+
   Walk(const Circuit& circuit, const std::vector<std::uint32_t>& kept) : circuit_(circuit), kept_(kept) {}
 
-  void follow(std::size_t place, State state, std::vector<bool> bits) {
-    for (; place < circuit_.body().size(); ++place) {
-      const Operation& op = circuit_.body()[place];
+  /// Follows the operation at the last of the places (each in a block that the one before it stands in front
+  /// of), and all that come after it.
+  void follow(std::vector<Place> places, State state, std::vector<bool> bits) {
+    while (!places.empty()) {
+      const Block& block = circuit_.blocks[places.back().block];
+      if (places.back().operation == block.size()) {
+        places.pop_back();
+        continue;
+      }
+      const Operation& op = block[places.back().operation++];
       if (op.is_unitary()) {
         apply(state, circuit_, op);
       } else if (op.kind == Kind::measure || op.kind == Kind::reset) {
@@ -45,14 +56,17 @@ class Walk {
           std::vector<bool> known = bits;
           if (op.kind == Kind::measure && op.payload != no_bit) known[op.payload] = outcome;
           if (op.kind == Kind::reset && outcome) branch.apply(pauli_x(), std::span(op.operand, 1));
-          follow(place + 1, branch, known);
+          follow(places, branch, known);
         }
         return;
       } else if (op.kind == Kind::classical) {
         const ClassicalStatement& statement = circuit_.statements[op.payload];
+        if (statement.kind == ClassicalStatement::Kind::end_program) break;
         bits[flat_bit(circuit_, statement.target)] = value_of(circuit_, statement.value, bits);
       } else if (op.kind == Kind::branch) {
-        throw std::logic_error("outcomes_of follows no branches");
+        const Branch& branch = circuit_.branches[op.payload];
+        const std::size_t arm = value_of(circuit_, branch.condition, bits) ? 0 : 1;
+        if (arm < branch.arms.size()) places.push_back({branch.arms[arm].block, 0});
       }
     }
     end(state, bits);
@@ -91,7 +105,7 @@ Outcomes outcomes_of(const Circuit& circuit, const State& start, const std::vect
   State state(circuit.wires);
   std::copy(start.amplitudes.begin(), start.amplitudes.end(), state.amplitudes.begin());
   Walk walk(circuit, kept);
-  walk.follow(0, state, std::vector<bool>(circuit.bits, false));
+  walk.follow({{0, 0}}, state, std::vector<bool>(circuit.bits, false));
   return walk.outcomes;
 }
 

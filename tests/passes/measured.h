@@ -14,7 +14,8 @@ namespace isinglass::support {
 using Outcomes = std::map<std::vector<bool>, Matrix>;
 
 /// The wires start in `start` (2^wires amplitudes; other wires in |0>). kept: the source qubits whose state
-/// is looked at; the others are traced out. No branches; statements are assignments of bits made of ~, &, ^.
+/// is looked at; the others are traced out. Branches are ifs; statements are ends of the program and
+/// assignments of bits; expressions are made of bits, ~, &, ^.
 Outcomes outcomes_of(const Circuit& circuit, const State& start, const std::vector<std::uint32_t>& kept);
 
 /// Largest difference of any entry.

@@ -103,14 +103,20 @@ TEST_CASE("stretches: written with the interactions and the error that were prom
     Circuit source = random_piece(random, qubits, 4 + round % 12, families[round % 6]);
     const bool may_rename = round % 4 != 0;
     const auto wires = static_cast<unsigned>(qubits);
-    const Sequence sequence{turns_of(source), at_home(wires)};
+    Sequence sequence{turns_of(source), at_home(wires)};
+    for (Turn& turn : sequence.turns) {
+      if (!random.chance(0.5)) continue;
+      turn.negative = true;
+      turn.angle = source.forms.negated(turn.angle);
+    }
     const Circuit result = circuit_of(source, sequence, true, may_rename);
     CHECK(support::distance(source, result, values) < 1e-8);
     const Cost cost;
     const Price price = price_of(sequence.turns, wires, may_rename, cost);
     const Tally tally = tally_of(result);
     CHECK(static_cast<int>(tally.xx) == price.interactions);
-    if (families[round % 6] == Family::clifford || families[round % 6] == Family::clifford_t) {
+    if (families[round % 6] == Family::clifford || families[round % 6] == Family::clifford_t ||
+        families[round % 6] == Family::symbolic) {
       // No tiny angles: what the search counts with by invariants is what canonical coordinates say.
       PairStretches stretches(wires, may_rename);
       for (const Turn& turn : sequence.turns) stretches.add(turn);
@@ -140,6 +146,36 @@ TEST_CASE("greedy networks keep the unitary, with and without renaming") {
     if (!may_rename) CHECK(sequence->home == at_home(wires));
     CHECK(support::distance(source, circuit_of(source, *sequence, false), values) < 1e-8);
   }
+}
+
+TEST_CASE("greedy networks keep to their limit of interactions, homecoming included") {
+  support::Random random(27);
+  int refused = 0;
+  for (int round = 0; round < 300; ++round) {
+    const int qubits = 3 + round % 3;
+    Circuit source = random_piece(random, qubits, 5 + round % 20, families[round % 6]);
+    const auto wires = static_cast<unsigned>(qubits);
+    const Network network = network_of(turns_of(source), wires);
+    const bool may_rename = round % 2 == 0;
+    Taste taste;
+    taste.uses_tables = round % 3 != 0;
+    const auto interactions_of = [&](const Sequence& sequence) {
+      PairStretches stretches(wires, may_rename);
+      for (const Turn& turn : sequence.turns) stretches.add(turn);
+      return stretches.interactions();
+    };
+    Dice dice(1);
+    const auto any = greedy_sequence(network, taste, {1000000, may_rename}, dice);
+    REQUIRE(any);
+    const int taken = interactions_of(*any);
+    for (int limit = std::max(0, taken - 3); limit <= taken; ++limit) {
+      Dice again(1);
+      const auto limited = greedy_sequence(network, taste, {limit, may_rename}, again);
+      if (limited) CHECK(interactions_of(*limited) <= limit);
+      refused += !limited;
+    }
+  }
+  CHECK(refused > 300);
 }
 
 TEST_CASE("window search keeps the unitary and is never dearer") {

@@ -102,6 +102,96 @@ TEST_CASE("a random three-qubit unitary takes eleven interactions, the parameter
   CHECK(!fitted(target, pairs, search(3), {}));
 }
 
+TEST_CASE("ranks bound the interactions from below (computed)") {
+  const Matrix identity = Matrix::Identity(8, 8);
+  CHECK(least_couplings({3, identity, 0}) == 0);
+  // A Toffoli has rank 2 across each of three cuts, and one coupling crosses two of them.
+  CHECK(least_couplings(gate(Kind::x, 2)) == 2);
+  // The cyclic exchange of three qubits has rank 4 across each: two couplings across each of three cuts.
+  Matrix cycle = Matrix::Zero(8, 8);
+  for (int i = 0; i < 8; ++i) cycle((i << 1 | i >> 2) & 7, i) = 1;
+  CHECK(least_couplings({3, cycle, 0}) == 3);
+}
+
+TEST_CASE("a search makes no more starts than it may, and leaves out what can be left out") {
+  support::Random random(8);
+  const SmallTarget target{3, support::haar_unitary(random, 3), 0};
+  std::int64_t budget = 5;
+  SmallSearch bounded = search(8);
+  bounded.budget = &budget;
+  CHECK(!fitted(target, {{0, 1}, {1, 2}, {0, 2}, {0, 1}}, bounded, {}));
+  CHECK(budget == 0);
+  // Two couplings about the same axes with others around them: one of the two can go, whichever it is.
+  for (const std::size_t twin : {0u, 3u}) {
+    SmallCircuit circuit;
+    circuit.locals.assign(3, Su2::Identity());
+    const Axis axes[] = {Axis::UnitX(), Axis::UnitZ(), Axis::UnitY()};
+    const std::pair<int, int> pairs[] = {{0, 1}, {1, 2}, {0, 2}, {0, 1}};
+    for (std::size_t j = 0; j < 4; ++j) {
+      Coupling coupling;
+      coupling.qubit[0] = static_cast<std::uint8_t>(pairs[j].first);
+      coupling.qubit[1] = static_cast<std::uint8_t>(pairs[j].second);
+      coupling.axis[0] = axes[j % 3];
+      coupling.axis[1] = axes[(j + 1) % 3];
+      coupling.angle = 0.4 + 0.2 * static_cast<double>(j);
+      circuit.couplings.push_back(coupling);
+      if (j == twin) circuit.couplings.push_back(coupling);
+    }
+    const SmallTarget whole{3, matrix_of(circuit), 0};
+    const auto shorter = with_one_fewer(whole, circuit, search(1), {});
+    REQUIRE(shorter);
+    CHECK(shorter->couplings.size() == 4);
+    CHECK(support::distance(simulated(*shorter), whole.matrix) < 1e-11);
+  }
+}
+
+TEST_CASE("angles are made small, and of more starts the best is kept") {
+  // 0.9 and -0.6 about the same axes, with an interaction between them that commutes: 0.3 is enough.
+  SmallCircuit wasteful;
+  wasteful.locals.assign(3, Su2::Identity());
+  const std::pair<std::pair<int, int>, double> couplings[] = {{{0, 1}, 0.9}, {{1, 2}, 0.5}, {{0, 1}, -0.6}};
+  for (const auto& [pair, angle] : couplings) {
+    Coupling coupling;
+    coupling.qubit[0] = static_cast<std::uint8_t>(pair.first);
+    coupling.qubit[1] = static_cast<std::uint8_t>(pair.second);
+    coupling.axis[0] = coupling.axis[1] = Axis::UnitX();
+    coupling.angle = angle;
+    wasteful.couplings.push_back(coupling);
+  }
+  const SmallTarget target{3, matrix_of(wasteful), 0};
+  const SmallCircuit better = with_less_angle(target, wasteful, search(1), {});
+  CHECK(support::distance(simulated(better), target.matrix) < 1e-11);
+  double sum = 0;
+  for (const Coupling& c : better.couplings) sum += std::abs(c.angle);
+  CHECK(sum < 0.81);
+
+  support::Random random(9);
+  const std::vector<std::pair<int, int>> pairs = {{0, 1}, {1, 2}, {0, 1}, {0, 2}, {1, 2}};
+  for (int trial = 0; trial < 3; ++trial) {
+    SmallCircuit drawn;
+    drawn.locals.assign(3, Su2::Identity());
+    for (std::size_t j = 0; j < 4; ++j) {
+      Coupling coupling;
+      coupling.qubit[0] = static_cast<std::uint8_t>(pairs[j].first);
+      coupling.qubit[1] = static_cast<std::uint8_t>(pairs[j].second);
+      for (Axis& axis : coupling.axis)
+        axis = Axis(random.gaussian(), random.gaussian(), random.gaussian()).normalized();
+      coupling.angle = random.real(0.2, 1.4);
+      drawn.couplings.push_back(coupling);
+    }
+    const SmallTarget wanted{3, matrix_of(drawn), 0};
+    double least = 1;
+    for (int starts = 1; starts <= 6; ++starts) {
+      const auto found = fitted(wanted, pairs, search(starts), {});
+      if (!found) continue;
+      const double error = error_of(*found, {});
+      CHECK(error <= least + 1e-12);
+      least = std::min(least, error);
+    }
+    CHECK(least < 1);
+  }
+}
+
 TEST_CASE("invariants do not change under one-qubit gates, and tell gates apart") {
   support::Random random(7);
   const SmallTarget toffoli = gate(Kind::x, 2);

@@ -9,6 +9,7 @@
 #include "measured.h"
 #include "passes/approximate.h"
 #include "passes/bits_at_end.h"
+#include "passes/cubic_networks.h"
 #include "passes/expand_controls.h"
 #include "passes/known_start.h"
 #include "passes/lower.h"
@@ -73,6 +74,7 @@ constexpr Subject subjects[] = {
     {"known-start", known_start, false},
     {"bits-at-end", bits_at_end, false},
     {"merge-gates", merge_gates, false},
+    {"cubic-networks", cubic_networks, false},
     {"expand-controls", expand_controls, false},
     {"merge-rotations", merge_rotations, true},
     {"two-qubit-stretches", two_qubit_stretches, true},

@@ -49,7 +49,7 @@ TEST_CASE("a pass beside the circuit gives what it gives on a copy") {
       }
     }
   }
-  CHECK(tried == 3);
+  CHECK(tried == 4);
 }
 
 TEST_CASE("interactions meet however many runs lie between, closed ones forgotten") {

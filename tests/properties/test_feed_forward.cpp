@@ -116,6 +116,29 @@ TEST_CASE("feed-forward: measured qubits used again") {
       "ry(0.2) q[1];\n");
 }
 
+TEST_CASE("feed-forward: rotations by sums over running bits") {
+  const std::string start =
+      "qubit[3] q; bit[3] c; h q; ry(0.4) q[1]; rz(0.3) q[2]; c = measure q; ry(0.9) q; h q[0];\n";
+  const auto with = [&](const std::string& body) { check(start + body); };
+  with("uint[3] k = uint[3](c); rz(k * pi / 8) q[0]; h q[0];");
+  with("uint[3] k = uint[3](c); rx(float(k) * 0.3 - 0.7) q[0]; cry(2 * k * pi / 8) q[0], q[1];");
+  with("int[3] k = int[3](c); rx(k * 0.37) q[0]; ctrl @ rz(k / 2.0) q[0], q[1]; h q[0];");
+  with("angle[3] a = angle[3](c); rz(a) q[0]; rx(a) q[1]; ctrl @ rx(a) q[1], q[2]; p(3 * a) q[0]; h q;");
+  with("angle[3] a = angle[3](c); cp(-a) q[0], q[1]; p(a + a) q[1]; h q;");
+  with("cp(angle[3](c)) q[0], q[1]; crx(c[0] * 0.4 + c[2] * 1.1) q[1], q[2]; h q;");
+  with(
+      "uint[3] k = uint[3](c); negctrl @ inv @ ry(k * 0.2) q[0], q[1]; pow(3) @ rx(k * 0.2) q[2]; rz(k * "
+      "0.7) q; h q;");
+  with(
+      "gate g(a) p, r { h p; cx p, r; rz(a) r; cx p, r; h p; } uint[3] k = uint[3](c); g(k * 0.21) q[0], "
+      "q[2];");
+  with("uint[3] k = uint[3](c); ctrl @ gphase(k * 0.3) q[0]; h q[0];");
+  // No rotations, or none modulo 2 pi: an arm for every value.
+  with("uint[3] k = uint[3](c); U(k * 0.3, 0.2, 0) q[0]; pow(0.5) @ p(k * 0.9) q[1]; h q;");
+  with("angle[3] a = angle[3](c); ctrl @ rx(3 * a) q[0], q[1]; crz(-a) q[1], q[2]; h q;");
+  with("gate g(a) p { rx(a) p; rz(a) p; } uint[3] k = uint[3](c); g(k * 0.3) q[0]; rx((k + 7) * 0.3) q[1];");
+}
+
 /// A random program: gates, measurements, resets, branches on bits.
 std::string random_program(support::Random& random, int qubits, int lines) {
   std::string text = head + "qubit[" + std::to_string(qubits) + "] q; bit[3] c;\n";
