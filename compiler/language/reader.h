@@ -296,7 +296,12 @@ class Reader final : public StatementSink {
   void delay(const syntax::Delay& delay, syntax::Span at);
   Ending box(const syntax::Box& box, syntax::Span at);
   Value duration_of(const SyntaxExpression& expression);
-  double length_of(std::uint32_t block, std::size_t first);
+  /// When the last of some operations ends, in nanoseconds from the first, and on which wire.
+  struct Length {
+    double ns = 0;
+    std::uint32_t wire = 0;
+  };
+  Length length_of(std::uint32_t block, std::size_t first);
   double time_of(const Operation& op);
   const GateTimes& times();
   bool can_stretch(const Operation& op) const { return op.kind == Kind::delay && op.form[0] != 0; }

@@ -82,14 +82,19 @@ Ending Reader::box(const syntax::Box& box, syntax::Span at) {
          "running");
   }
   if (limit && !shrinks) {
-    const double needed = length_of(block_, first);
-    if (needed > *limit + 1e-6) {
+    const Length needed = length_of(block_, first);
+    if (needed.ns > *limit + 1e-6) {
       const std::string text =
           fmt::format("what is in the box takes about {:.6g} us, longer than its length of {:.6g} us",
-                      needed / 1e3, *limit / 1e3);
+                      needed.ns / 1e3, *limit / 1e3);
       if (stretches) fail(box.length->at, text);
       warn(box.length->at, text);
       limit.reset();
+    } else if (!stretches && !branches && needed.ns < *limit - 1e-6) {
+      // Who ends last waits for the end of the box, and the others for him.
+      Operation wait = circuit_.make(Kind::delay, {needed.wire});
+      wait.value[0] = (*limit - needed.ns) / 1e3;
+      append(std::move(wait), at);
     }
   }
   if (stretches) spans_.push_back({pieces_of(block_, inside), limit, box.length ? box.length->at : at});
@@ -125,9 +130,9 @@ double Reader::time_of(const Operation& op) {
 }
 
 /// Nanoseconds that the operations of a block from `first` on take when each starts as early as it can.
-double Reader::length_of(std::uint32_t block, std::size_t first) {
+Reader::Length Reader::length_of(std::uint32_t block, std::size_t first) {
   std::map<std::uint32_t, double> ready;
-  double end = 0;
+  Length end;
   for (std::size_t i = first; i < circuit_.blocks[block].size(); ++i) {
     const Operation& op = circuit_.blocks[block][i];
     const auto operands = circuit_.operands(op);
@@ -135,7 +140,7 @@ double Reader::length_of(std::uint32_t block, std::size_t first) {
     for (const std::uint32_t wire : operands) start = std::max(start, ready[wire]);
     const double takes = time_of(op);
     for (const std::uint32_t wire : operands) ready[wire] = start + takes;
-    end = std::max(end, start + takes);
+    if (!operands.empty() && start + takes >= end.ns) end = {start + takes, operands.back()};
   }
   return end;
 }
@@ -159,7 +164,7 @@ Value Reader::duration_of(const SyntaxExpression& expression) {
         has_running || op.kind == Kind::branch || op.kind == Kind::measure || op.kind == Kind::classical;
     stretches = stretches || can_stretch(op);
   }
-  const double length = length_of(arm, 0);
+  const double length = length_of(arm, 0).ns;
   while (circuit_.blocks.size() > arm) {
     circuit_.blocks.pop_back();
     phase_.pop_back();

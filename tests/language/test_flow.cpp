@@ -194,7 +194,7 @@ TEST_CASE("barrier, reset, delay, box, durations") {
                  "const duration d = 2 * 100ns + 1us; delay[d - 0.2us] q; stretch s; delay[s] q[0];\n"
                  "box[1ms] { x q[0]; cx q[0], q[1]; }");
   const Block& body = circuit.body();
-  REQUIRE(body.size() == 12);
+  REQUIRE(body.size() == 13);
   CHECK(body[0].operand_count == 3);
   CHECK(body[1].operand_count == 2);
   CHECK(body[2].kind == Kind::reset);
@@ -204,8 +204,10 @@ TEST_CASE("barrier, reset, delay, box, durations") {
   CHECK(body[6].value[0] == doctest::Approx(1.0));
   CHECK(body[7].value[0] == 0);
   CHECK(body[8].kind == Kind::barrier);
-  CHECK(body[11].kind == Kind::barrier);
-  CHECK(body[11].operand_count == 2);
+  CHECK(body[11].kind == Kind::delay);  // what is left of the box
+  CHECK(body[11].value[0] == doctest::Approx(1000 - 215));
+  CHECK(body[12].kind == Kind::barrier);
+  CHECK(body[12].operand_count == 2);
   CHECK(meaning::holds("d / 100ns == 2.5", "duration d = 0.25us;"));
   CHECK(meaning::holds("durationof({ x q; }) > 0ns"));
   CHECK(meaning::holds("1 µs == 1us && 1000ms == 1s"));

@@ -97,6 +97,16 @@ TEST_CASE("stretches fill a box of given length") {
                {47.5, 52.5, 95});
 }
 
+TEST_CASE("a box of given length without stretches is waited for") {
+  check_delays("box[100us] { x q[0]; x q[0]; h q[1]; }", {90});
+  check_delays("box[300us] { cx q[0], q[1]; x q[0]; delay[95us] q[2]; }", {95, 85});
+  check_delays("box[10us] { x q[0]; delay[5us] q[0]; }", {5});
+  check_delays("box { x q[0]; }", {});
+  check_delays("box[100us] { box[50us] { x q[0]; } x q[0]; }", {45, 45});
+  check_delays("bit b; box[400us] { b = measure q[0]; if (b) x q[1]; }",
+               {});  // how long it takes is not known
+}
+
 TEST_CASE("stretches: lower bounds, and the min-max among what fits") {
   check_delays("stretch a = 80us; stretch b; box[100us] { delay[a] q[0]; delay[b] q[0]; }", {80, 20});
   check_delays("stretch a = 10us; stretch b; box[100us] { delay[a] q[0]; delay[b] q[0]; }", {50, 50});
