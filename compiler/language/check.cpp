@@ -113,6 +113,7 @@ Reader::Checked Reader::applied(const std::vector<Checked>& operands, syntax::Sp
   }
   const auto with = [&](const std::function<Value(const Checked&)>& value_of) {
     std::vector<Value> values;
+    values.reserve(operands.size());
     for (const Checked& operand : operands) values.push_back(value_of(operand));
     return operation(values);
   };

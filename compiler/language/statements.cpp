@@ -67,6 +67,9 @@ Ending Reader::run_checked(const syntax::Statement& statement) {
   const std::size_t targets = targets_.size();
   const std::size_t arms = arms_.size();
   const std::uint32_t block = block_;
+  const auto fixed = fixed_;
+  const auto fixed_variables = fixed_variables_;
+  const auto fixed_bits = fixed_bits_;
   Ending ending = Ending::falls;
   std::optional<Trouble> trouble;
   try {
@@ -86,6 +89,9 @@ Ending Reader::run_checked(const syntax::Statement& statement) {
     targets_.resize(targets);
     arms_.resize(arms);
     block_ = block;
+    fixed_ = fixed;
+    fixed_variables_ = fixed_variables;
+    fixed_bits_ = fixed_bits;
     is_statement_call_ = false;
     report(*trouble);
     note_broken(statement);
