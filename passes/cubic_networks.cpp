@@ -363,16 +363,35 @@ class Rewriter {
   }
 
   bool rewrite(const Stretch& stretch, bool may_rename, Block& out) {
+    // Searches from other random choices go on as long as the first one paid.
+    const int tries = context_.effort == Effort::deep ? 12 : 3;
+    Dice dice(context_.seed);
+    std::optional<Network> best;
+    for (int k = 0; k < tries && (k == 0 || (best && !context_.out_of_time())); ++k) {
+      auto network = cheaper_network(stretch, may_rename, dice);
+      if (network && (!best || network->price < best->price)) best = std::move(network);
+    }
+    if (!best) return false;
+    Writer(circuit_, stretch, out).write(best->products, best->route);
+    return true;
+  }
+
+  struct Network {
+    Products products;
+    FormRoute route;
+    double price;  // in CNOTs
+  };
+
+  std::optional<Network> cheaper_network(const Stretch& stretch, bool may_rename, Dice& dice) {
     const double before = stretch.price(prices_) / prices_.pair;
     const auto count = static_cast<unsigned>(stretch.products().terms().size());
-    Dice dice(context_.seed);
     ProductsPlan plan;
     plan.cubic = prices_.toffoli / prices_.pair;
-    plan.folds = 4 * count;
+    plan.folds = 2 * count;
     plan.flips = 200 * count;
     plan.deadline = context_.deadline;
     const Products products = fewer_products(stretch.products(), plan, dice);
-    if (price_of(products, plan) >= before) return false;
+    if (price_of(products, plan) >= before) return std::nullopt;
 
     FormTask task{stretch.size(), {}, stretch.forms()};
     for (const Product& product : products.terms()) {
@@ -382,19 +401,19 @@ class Rewriter {
     }
     for (Form& form : task.home) form &= ~unity;
     const std::size_t cubic = products.cubic_count();
-    const double left = before - plan.cubic * static_cast<double>(cubic) -
-                        static_cast<double>(products.terms().size() - cubic);
+    const double fixed =
+        plan.cubic * static_cast<double>(cubic) + static_cast<double>(products.terms().size() - cubic);
     FormRoutePlan search;
     search.starts = 10 + 2 * count;
-    search.windows = 100 * count;
-    search.worth = static_cast<std::size_t>(left);
+    search.windows = 150 * count;
+    search.worth = static_cast<std::size_t>(before - fixed);
     search.deadline = context_.deadline;
-    const auto route = find_form_route(task, search, dice);
-    if (!route) return false;
+    auto route = find_form_route(task, search, dice);
+    if (!route) return std::nullopt;
     const std::size_t additions = route->additions.size() + (may_rename ? 0 : 3 * swaps_in(route->where));
-    if (static_cast<double>(additions) > left - 1e-9) return false;
-    Writer(circuit_, stretch, out).write(products, *route);
-    return true;
+    const double price = fixed + static_cast<double>(additions);
+    if (price > before - 1e-9) return std::nullopt;
+    return Network{products, std::move(*route), price};
   }
 
   Circuit& circuit_;

@@ -235,8 +235,8 @@ class Improver {
     Additions best = route;
     for (unsigned k = 0; k < plan_.windows && route.size() >= least; ++k) {
       if (k % 64 == 0 && plan_.deadline <= std::chrono::steady_clock::now()) break;
-      if (k > plan_.windows / 8 && best.size() > plan_.worth) break;
-      heat_ = 0.01 + 0.6 * (1 - static_cast<double>(k) / plan_.windows);
+      if (k > plan_.windows / 8 && 4 * best.size() > 5 * plan_.worth) break;  // windows rarely save so much
+      heat_ = 0.01 + 1.0 * (1 - static_cast<double>(k) / plan_.windows);
       try_window(route);
       if (route.size() < best.size()) best = route;
     }

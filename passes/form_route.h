@@ -43,7 +43,7 @@ struct FormTask {
 struct FormRoutePlan {
   unsigned starts = 100;  // greedy routes
   unsigned windows = 1000;
-  std::size_t worth = 1000;  // longer routes are of no use: where none is shorter soon, the search ends
+  std::size_t worth = 1000;  // longer routes are of no use: where all are much longer, the search ends soon
   std::chrono::steady_clock::time_point deadline = std::chrono::steady_clock::time_point::max();
 };
 
