@@ -89,6 +89,11 @@ class Histogram {
   std::vector<std::array<double, 3>> single_;
 };
 
+bool has_inputs(const Network& network) {
+  return std::any_of(network.exponentials.begin(), network.exponentials.end(),
+                     [](const Exponential& exponential) { return !exponential.angle.is_known(); });
+}
+
 /// A quarter turn about letters[p] (x) letters[q].
 struct Move {
   unsigned a = 0, b = 0, p = 0, q = 0;
@@ -103,7 +108,7 @@ class Greedy {
         dice_(dice),
         wires_(network.wires),
         histogram_(wires_),
-        stretches_(wires_, limits.may_rename),
+        stretches_(wires_, limits.may_rename, has_inputs(network)),
         free_turns_(wires_ * wires_, unknown) {
     value_[0] = clifford_value_[0] = 0;
     for (unsigned w = 1; w < value_.size(); ++w) {

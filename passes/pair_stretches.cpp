@@ -4,6 +4,7 @@
 #include <Eigen/Eigenvalues>
 #include <algorithm>
 #include <cmath>
+#include <span>
 
 namespace isinglass {
 
@@ -67,8 +68,8 @@ std::array<Complex, 16> gamma_of(const std::array<Complex, 16>& u) {
   return g;
 }
 
-/// Of interactions of these three angles (radians, each reduced to [0, pi/2]).
-Price price_of_angles(const std::array<double, 3>& angles, const Cost& cost) {
+/// Of interactions of these angles (radians, each reduced to [0, pi/2]).
+Price price_of_angles(std::span<const double> angles, const Cost& cost) {
   Price price;
   for (const double angle : angles) {
     if (angle <= least_interaction) continue;
@@ -80,8 +81,9 @@ Price price_of_angles(const std::array<double, 3>& angles, const Cost& cost) {
 
 }  // namespace
 
-PairStretch::PairStretch(unsigned a, unsigned b, bool may_rename)
+PairStretch::PairStretch(unsigned a, unsigned b, bool may_rename, bool has_inputs)
     : a_(a), b_(b), may_rename_(may_rename), matrix_{} {
+  if (has_inputs) form_.emplace();
   for (int k = 0; k < 4; ++k) matrix_[static_cast<std::size_t>(5 * k)] = 1;
 }
 
@@ -102,10 +104,17 @@ bool PairStretch::commutes_with_all(Letter la, Letter lb) const {
   return true;
 }
 
+Turn PairStretch::named(const Turn& turn) const {
+  Turn result = turn;
+  result.a = turn.a == a_ ? 0 : 1;
+  result.b = turn.is_pair() && turn.b == b_ ? 1 : 0;
+  return result;
+}
+
 bool PairStretch::can_take(const Turn& turn) const {
   if (!symbolic_ && turn.angle.is_known()) return true;
   const auto [la, lb] = letters(turn);
-  return commuting_ && commutes_with_all(la, lb);
+  return (commuting_ && commutes_with_all(la, lb)) || (form_ && form_->can_take(named(turn)));
 }
 
 void PairStretch::Axes::add(Letter la, Letter lb, const Turn& turn) {
@@ -142,6 +151,15 @@ int PairStretch::count(const Matrix& matrix, bool may_rename) {
   return std::min(plain, isinglass::count({trace.imag(), -trace.real()}, -square));
 }
 
+int PairStretch::count(const PairForm& form, bool may_rename) {
+  const auto count = [&](bool is_mirrored) {
+    const auto angles = form.interactions(is_mirrored);
+    return static_cast<int>(
+        std::count_if(angles.begin(), angles.end(), [](double angle) { return angle > least_interaction; }));
+  };
+  return may_rename ? std::min(count(false), count(true)) : count(false);
+}
+
 void PairStretch::multiply(Matrix& matrix, Letter la, Letter lb, double angle) {
   const Complex c = std::cos(angle / 2), s = Complex(0, -std::sin(angle / 2));
   const int flip = (static_cast<int>(la) & 1) | (static_cast<int>(lb) & 1) << 1;
@@ -164,6 +182,11 @@ int PairStretch::interactions_with(const Turn& turn) const {
     axes.add(la, lb, turn);
     return count(axes, may_rename_);
   }
+  if (symbolic_ || !turn.angle.is_known()) {
+    PairForm form = *form_;
+    form.add(named(turn));
+    return count(form, may_rename_);
+  }
   Matrix matrix = matrix_;
   multiply(matrix, la, lb, turn.signed_constant());
   return count(matrix, may_rename_);
@@ -174,19 +197,30 @@ void PairStretch::take(const Turn& turn) {
   symbolic_ |= !turn.angle.is_known();
   commuting_ = commuting_ && commutes_with_all(la, lb);
   if (commuting_) axes_.add(la, lb, turn);
+  if (form_ && !form_->add(named(turn))) form_.reset();
   if (!symbolic_) multiply(matrix_, la, lb, turn.signed_constant());
-  interactions_ = commuting_ ? count(axes_, may_rename_) : count(matrix_, may_rename_);
+  recount();
+}
+
+void PairStretch::recount() {
+  interactions_ = commuting_  ? count(axes_, may_rename_)
+                  : symbolic_ ? count(*form_, may_rename_)
+                              : count(matrix_, may_rename_);
 }
 
 bool PairStretch::take_single(const Turn& turn) {
   const auto [la, lb] = letters(turn);
   const bool commutes = commuting_ && commutes_with_all(la, lb);
-  if ((symbolic_ || !turn.angle.is_known()) && !commutes) return false;
+  if ((symbolic_ || !turn.angle.is_known()) && !commutes && !(form_ && form_->can_take(named(turn)))) {
+    return false;
+  }
+  if (form_ && !form_->add(named(turn))) form_.reset();
   commuting_ = commutes;
   symbolic_ |= !turn.angle.is_known();
   const bool on_a = la != Letter::I;
   singles_[on_a ? 0 : 1] |= static_cast<std::uint8_t>(1 << static_cast<int>(on_a ? la : lb));
   if (!symbolic_) multiply(matrix_, la, lb, turn.signed_constant());
+  if (symbolic_) recount();
   return true;
 }
 
@@ -202,6 +236,12 @@ PairStretch::Prices PairStretch::prices(const Cost& cost) const {
       mirrored[k] = is_symbolic ? pi / 2 : reduced(angle + pi / 2);
     }
     return {price_of_angles(plain, cost), price_of_angles(mirrored, cost)};
+  }
+  if (symbolic_) {
+    const auto price = [&](bool is_mirrored) {
+      return price_of_angles(form_->interactions(is_mirrored), cost);
+    };
+    return {price(false), price(true)};
   }
   // Eigenvalues of g are exp(2i(x - y + z)), exp(2i(x + y - z)), exp(-2i(x + y + z)), exp(2i(-x + y + z)).
   const auto g = gamma_of(matrix_);
@@ -238,7 +278,10 @@ int PairStretches::add(const Turn& turn) {
   if (!turn.is_pair()) {
     if (current == none) return none;
     PairStretch& stretch = stretches_[static_cast<std::size_t>(current)];
-    if (open(stretch.a(), stretch.b()) == nullptr || !stretch.take_single(turn)) current = none;
+    interactions_ -= stretch.interactions();
+    const bool goes_on = open(stretch.a(), stretch.b()) != nullptr && stretch.take_single(turn);
+    interactions_ += stretch.interactions();
+    if (!goes_on) current = none;
     return current;
   }
   const PairStretch* found = open(turn.a, turn.b);
@@ -249,7 +292,7 @@ int PairStretches::add(const Turn& turn) {
     interactions_ += stretch.interactions();
     return current;
   }
-  stretches_.emplace_back(turn.a, turn.b, may_rename_);
+  stretches_.emplace_back(turn.a, turn.b, may_rename_, has_inputs_);
   stretches_.back().take(turn);
   interactions_ += stretches_.back().interactions();
   current_[turn.a] = current_[turn.b] = static_cast<int>(stretches_.size()) - 1;
@@ -279,8 +322,12 @@ Price PairStretches::price(const Cost& cost) const {
   return price;
 }
 
+bool has_inputs(const std::vector<Turn>& turns) {
+  return std::any_of(turns.begin(), turns.end(), [](const Turn& turn) { return !turn.angle.is_known(); });
+}
+
 Price price_of(const std::vector<Turn>& turns, unsigned wires, bool may_rename, const Cost& cost) {
-  PairStretches stretches(wires, may_rename);
+  PairStretches stretches(wires, may_rename, has_inputs(turns));
   for (const Turn& turn : turns) stretches.add(turn);
   return stretches.price(cost);
 }

@@ -9,6 +9,7 @@
 #include <vector>
 
 #include "circuit/cost.h"
+#include "passes/pair_form.h"
 #include "passes/turns.h"
 
 namespace isinglass {
@@ -22,16 +23,16 @@ struct Price {
   double error = 0;
 };
 
-/// One stretch: its unitary where all angles are known, and the angle about each axis as long as all its
-/// turns commute.
+/// One stretch: its unitary where all angles are known, the angle about each axis as long as all its turns
+/// commute, and in sequences with unknown angles its form as commuting rotations and a Clifford.
 class PairStretch {
  public:
-  PairStretch(unsigned a, unsigned b, bool may_rename);
+  PairStretch(unsigned a, unsigned b, bool may_rename, bool has_inputs);
 
   unsigned a() const { return a_; }
   unsigned b() const { return b_; }
   int interactions() const { return interactions_; }
-  /// Whether the pair turn can join: an angle that is not known only joins a commuting stretch.
+  /// Whether the pair turn can join: with angles that are not known only where the rotations commute.
   bool can_take(const Turn& turn) const;
   /// Interactions after the turn; the stretch must be able to take it.
   int interactions_with(const Turn& turn) const;
@@ -44,6 +45,9 @@ class PairStretch {
   bool is_mirrored(const Cost& cost) const;
   /// Whether all its turns commute.
   bool is_commuting() const { return commuting_; }
+  bool is_symbolic() const { return symbolic_; }
+  /// The turn with the stretch's wires named 0 and 1.
+  Turn named(const Turn& turn) const;
   /// Of a stretch without unknown angles: 4x4, row-major, index = wire a + 2 * wire b.
   const std::array<std::complex<double>, 16>& matrix() const { return matrix_; }
 
@@ -66,8 +70,10 @@ class PairStretch {
 
   static int count(const Axes& axes, bool may_rename);
   static int count(const Matrix& matrix, bool may_rename);
+  static int count(const PairForm& form, bool may_rename);
   static void multiply(Matrix& matrix, Letter la, Letter lb, double angle);
   Prices prices(const Cost& cost) const;
+  void recount();
   bool commutes_with_all(Letter la, Letter lb) const;
   std::pair<Letter, Letter> letters(const Turn& turn) const;
 
@@ -79,12 +85,15 @@ class PairStretch {
   Axes axes_;
   std::array<std::uint8_t, 2> singles_{};  // letters of one-wire turns on a and b, bit 1 << letter
   Matrix matrix_;
+  std::optional<PairForm> form_;
 };
 
 /// The stretches of a growing sequence.
 class PairStretches {
  public:
-  PairStretches(unsigned wires, bool may_rename) : current_(wires, none), may_rename_(may_rename) {}
+  /// `has_inputs`: whether any turn's angle may be unknown.
+  PairStretches(unsigned wires, bool may_rename, bool has_inputs)
+      : current_(wires, none), may_rename_(may_rename), has_inputs_(has_inputs) {}
 
   /// Adds a turn at the end and returns the stretch it became part of, none for a one-wire turn outside of
   /// all.
@@ -101,9 +110,12 @@ class PairStretches {
  private:
   std::vector<PairStretch> stretches_;
   std::vector<int> current_;  // a wire's last stretch while it may go on
-  bool may_rename_;
+  bool may_rename_, has_inputs_;
   int interactions_ = 0;
 };
+
+/// Whether any turn's angle is unknown.
+bool has_inputs(const std::vector<Turn>& turns);
 
 /// The price of turns on wires 0 to wires - 1.
 Price price_of(const std::vector<Turn>& turns, unsigned wires, bool may_rename, const Cost& cost);

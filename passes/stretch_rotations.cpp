@@ -11,8 +11,12 @@ namespace {
 
 class Writer {
  public:
-  Writer(unsigned wires, bool may_rename, const Cost& cost, Circuit& circuit)
-      : cost_(cost), circuit_(circuit), forms_(circuit.forms), stretches_(wires, may_rename), where_(wires) {
+  Writer(unsigned wires, bool may_rename, bool has_inputs, const Cost& cost, Circuit& circuit)
+      : cost_(cost),
+        circuit_(circuit),
+        forms_(circuit.forms),
+        stretches_(wires, may_rename, has_inputs),
+        where_(wires) {
     std::iota(where_.begin(), where_.end(), 0u);
   }
 
@@ -71,6 +75,8 @@ class Writer {
     for (const Turn& turn : turns) origin = circuit_.origins.merged(origin, turn.origin);
     if (stretch.is_commuting()) {
       write_commuting(stretch, turns, origin);
+    } else if (stretch.is_symbolic()) {
+      write_form(stretch, turns, origin);
     } else {
       write_known(stretch, origin);
     }
@@ -143,6 +149,65 @@ class Writer {
     }
   }
 
+  // ---- commuting rotations and a Clifford
+
+  struct Left {
+    Row string;
+    Angle angle;
+  };
+
+  void write_form(const PairStretch& stretch, const std::vector<Turn>& turns, Origin origin) {
+    const unsigned wire[2] = {stretch.a(), stretch.b()};
+    PairForm form;
+    std::vector<Angle> angles;
+    for (const Turn& turn : turns) {
+      const Turn local = stretch.named(turn);
+      const bool is_negative = form.seen(local).negative;
+      const auto place = static_cast<std::size_t>(*form.add(local) + 1);  // 0: in the Clifford
+      if (place == 0) continue;
+      angles.resize(std::max(angles.size(), place));
+      Angle& sum = angles[place - 1];
+      sum = forms_.sum(sum, is_negative ? forms_.negated(turn.angle) : turn.angle);
+    }
+    std::vector<Left> left;
+    for (std::size_t k = 0; k < angles.size(); ++k) left.push_back({form.rotations()[k].string, angles[k]});
+    const auto signed_angle_of = [&](const Left& rotation) {
+      return rotation.string.negative ? forms_.negated(rotation.angle) : rotation.angle;
+    };
+    const auto write_singles = [&] {
+      std::erase_if(left, [&](const Left& rotation) {
+        if (rotation.string.weight() > 1) return false;
+        const unsigned side = rotation.string.support() == 1 ? 0 : 1;
+        single(wire[side], rotation.string.letter(side), signed_angle_of(rotation), origin);
+        return true;
+      });
+    };
+    std::array<Row, 4> rows = form.rows();
+    for (const Row& about : form.quarter_turns(stretch.is_mirrored(cost_))) {
+      write_singles();
+      Angle angle = {pi / 2};
+      std::erase_if(left, [&](const Left& rotation) {
+        const bool is_same = rotation.string.same_letters(about);
+        if (is_same) angle = forms_.sum(angle, signed_angle_of(rotation));
+        return is_same;
+      });
+      pair(wire[0], about.letter(0), wire[1], about.letter(1), angle, origin);
+      for (Row& row : rows) conjugate(row, about);
+      for (Left& rotation : left) conjugate(rotation.string, about);
+    }
+    write_singles();
+    for (const Left& rotation : left) {
+      pair(wire[0], rotation.string.letter(0), wire[1], rotation.string.letter(1), signed_angle_of(rotation),
+           origin);
+    }
+    std::vector<Turn> change;
+    for (unsigned k = 0; k < 2; ++k) {
+      append_local_clifford(rows[2 * k], rows[2 * k + 1], rows[2 * k].support() == 1 ? 0 : 1, change);
+    }
+    for (const Turn& turn : change) single(wire[turn.a], turn.la, turn.angle, origin);
+    if (rows[0].support() == 2) exchange(wire[0], wire[1]);
+  }
+
   // ---- any turns of known angles
 
   void local(unsigned wire, const Su2& unitary, Origin origin) {
@@ -189,7 +254,7 @@ class Writer {
 
 WrittenSequence written(const Sequence& sequence, unsigned wires, bool may_rename, const Cost& cost,
                         Circuit& circuit) {
-  return Writer(wires, may_rename, cost, circuit).run(sequence);
+  return Writer(wires, may_rename, has_inputs(sequence.turns), cost, circuit).run(sequence);
 }
 
 }  // namespace isinglass

@@ -14,8 +14,16 @@ Row single(unsigned wire, Letter letter) {
   return {(value & 1) << wire, (value >> 1) << wire, false};
 }
 
-/// V string V^-1 of the string with letters la on a and lb on b, where V takes X_k, Z_k to the rows.
-Row image(const std::vector<Row>& rows, unsigned a, Letter la, unsigned b, Letter lb) {
+Row image(const std::vector<Row>& rows, const Row& local, unsigned a, unsigned b) {
+  Row result = a == b ? image(rows, a, local.letter(a), b, Letter::I)
+                      : image(rows, a, local.letter(a), b, local.letter(b));
+  result.negative ^= local.negative;
+  return result;
+}
+
+}  // namespace
+
+Row image(std::span<const Row> rows, unsigned a, Letter la, unsigned b, Letter lb) {
   Row result;
   int phase = 0;
   const auto times = [&](unsigned wire, Letter letter) {
@@ -29,15 +37,6 @@ Row image(const std::vector<Row>& rows, unsigned a, Letter la, unsigned b, Lette
   result.negative ^= (phase & 2) != 0;
   return result;
 }
-
-Row image(const std::vector<Row>& rows, const Row& local, unsigned a, unsigned b) {
-  Row result = a == b ? image(rows, a, local.letter(a), b, Letter::I)
-                      : image(rows, a, local.letter(a), b, local.letter(b));
-  result.negative ^= local.negative;
-  return result;
-}
-
-}  // namespace
 
 int multiply(Row& left, const Row& right) {
   const std::uint64_t ax = left.x, az = left.z, bx = right.x, bz = right.z;

@@ -3,6 +3,7 @@
 #pragma once
 
 #include <array>
+#include <span>
 #include <vector>
 
 #include "algebra/pauli.h"
@@ -41,6 +42,10 @@ struct Row {
 int multiply(Row& left, const Row& right);
 /// row := g row g^-1, g = exp(-i pi/4 axis) with axis = +- la (x) lb as in Turn.
 void conjugate(Row& row, unsigned a, Letter la, unsigned b, Letter lb, bool negative);
+
+/// V string V^-1 of the string with letters la on wire a and lb on b, where V takes X_k, Z_k to rows 2k and
+/// 2k + 1.
+Row image(std::span<const Row> rows, unsigned a, Letter la, unsigned b, Letter lb);
 
 /// A rotation exp(-i angle/2 string).
 struct Exponential {

@@ -118,7 +118,7 @@ TEST_CASE("stretches: written with the interactions and the error that were prom
     if (families[round % 6] == Family::clifford || families[round % 6] == Family::clifford_t ||
         families[round % 6] == Family::symbolic) {
       // No tiny angles: what the search counts with by invariants is what canonical coordinates say.
-      PairStretches stretches(wires, may_rename);
+      PairStretches stretches(wires, may_rename, true);
       for (const Turn& turn : sequence.turns) stretches.add(turn);
       CHECK(stretches.interactions() == price.interactions);
     }
@@ -160,7 +160,7 @@ TEST_CASE("greedy networks keep to their limit of interactions, homecoming inclu
     Taste taste;
     taste.uses_tables = round % 3 != 0;
     const auto interactions_of = [&](const Sequence& sequence) {
-      PairStretches stretches(wires, may_rename);
+      PairStretches stretches(wires, may_rename, true);
       for (const Turn& turn : sequence.turns) stretches.add(turn);
       return stretches.interactions();
     };
