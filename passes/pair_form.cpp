@@ -56,20 +56,26 @@ Row PairForm::seen(const Turn& turn) const {
   return result;
 }
 
-bool PairForm::can_take(const Turn& turn) const {
-  if (quarters_of(turn.angle)) return true;
-  const Row string = seen(turn);
-  return std::all_of(rotations_.begin(), rotations_.end(),
-                     [&](const Rotation& rotation) { return rotation.string.commutes_with(string); });
+std::optional<std::size_t> PairForm::home_of(const Row& string) const {
+  for (std::size_t i = rotations_.size(); i-- > 0;) {
+    if (rotations_[i].string.same_letters(string)) return i;
+    if (!rotations_[i].string.commutes_with(string)) break;
+  }
+  return std::nullopt;
 }
 
-std::optional<int> PairForm::add(const Turn& turn) {
+bool PairForm::can_take(const Turn& turn) const {
+  constexpr std::size_t most_rotations = 6;
+  return rotations_.size() < most_rotations || quarters_of(turn.angle) || home_of(seen(turn));
+}
+
+int PairForm::add(const Turn& turn) {
   if (const auto quarters = quarters_of(turn.angle)) {
     // K becomes g K, so the rows become K^-1 (g^-1 X_k g) K.
     std::array<Row, 4> changed;
     for (unsigned i = 0; i < 4; ++i) {
-      Row local = row_of(i / 2 == 0 ? (i % 2 == 0 ? Letter::X : Letter::Z) : Letter::I,
-                         i / 2 == 1 ? (i % 2 == 0 ? Letter::X : Letter::Z) : Letter::I);
+      const Letter letter = i % 2 == 0 ? Letter::X : Letter::Z;
+      Row local = i < 2 ? row_of(letter, Letter::I) : row_of(Letter::I, letter);
       for (int q = 0; q < *quarters; ++q) conjugate(local, turn.a, turn.la, turn.b, turn.lb, !turn.negative);
       changed[i] = image(rows_, 0, local.letter(0), 1, local.letter(1));
       changed[i].negative ^= local.negative;
@@ -77,17 +83,16 @@ std::optional<int> PairForm::add(const Turn& turn) {
     rows_ = changed;
     return in_clifford;
   }
-  if (!can_take(turn)) return std::nullopt;
   const Row string = seen(turn);
-  auto found = std::find_if(rotations_.begin(), rotations_.end(),
-                            [&](const Rotation& rotation) { return rotation.string.same_letters(string); });
-  if (found == rotations_.end()) {
+  auto home = home_of(string);
+  if (!home) {
+    home = rotations_.size();
     rotations_.push_back({{string.x, string.z, false}, 0, false});
-    found = rotations_.end() - 1;
   }
-  found->angle += string.negative ? -turn.angle.constant : turn.angle.constant;
-  found->is_symbolic |= !turn.angle.is_known();
-  return static_cast<int>(found - rotations_.begin());
+  Rotation& rotation = rotations_[*home];
+  rotation.angle += string.negative ? -turn.angle.constant : turn.angle.constant;
+  rotation.is_symbolic |= !turn.angle.is_known();
+  return static_cast<int>(*home);
 }
 
 std::vector<Row> PairForm::quarter_turns(bool is_mirrored) const {
@@ -110,26 +115,82 @@ std::vector<Row> PairForm::quarter_turns(bool is_mirrored) const {
   return three;
 }
 
-std::vector<double> PairForm::interactions(bool is_mirrored) const {
-  const auto reduced = [](const Rotation& rotation, double more) {
-    return rotation.is_symbolic ? pi / 2 : std::abs(std::remainder(rotation.angle + more, pi));
-  };
-  std::vector<Rotation> left = rotations_;
-  std::vector<double> angles;
-  const auto drop_singles = [&] {
-    std::erase_if(left, [](const Rotation& rotation) { return rotation.string.weight() < 2; });
-  };
-  drop_singles();
-  for (const Row& about : quarter_turns(is_mirrored)) {
-    const auto same = std::find_if(left.begin(), left.end(), [&](const Rotation& rotation) {
-      return rotation.string.same_letters(about);
-    });
-    angles.push_back(same == left.end() ? pi / 2 : reduced(*same, pi / 2));
-    if (same != left.end()) left.erase(same);
-    for (Rotation& rotation : left) conjugate(rotation.string, about);
-    drop_singles();
+std::vector<PairForm::Step> PairForm::steps(bool is_mirrored, bool extras_first) const {
+  std::vector<Step> steps;
+  std::vector<Step> left;  // rotations to perform, in order
+  for (const Rotation& rotation : rotations_) {
+    left.push_back({rotation.string, static_cast<int>(left.size()), false});
   }
-  for (const Rotation& rotation : left) angles.push_back(reduced(rotation, 0));
+  const auto is_ready = [&](std::size_t i) {
+    return std::all_of(left.begin(), left.begin() + static_cast<std::ptrdiff_t>(i),
+                       [&](const Step& earlier) { return earlier.string.commutes_with(left[i].string); });
+  };
+  const auto perform = [&](std::size_t i) {
+    steps.push_back(left[i]);
+    left.erase(left.begin() + static_cast<std::ptrdiff_t>(i));
+  };
+  const auto perform_singles = [&] {
+    for (std::size_t i = 0; i < left.size();) {
+      if (left[i].string.weight() == 1 && is_ready(i)) {
+        perform(i);
+        i = 0;
+      } else {
+        ++i;
+      }
+    }
+  };
+  const auto turns = quarter_turns(is_mirrored);
+  perform_singles();
+  if (extras_first) {  // those in front that no quarter turn will make free
+    const auto helps = [&](const Row& about) {
+      return about.same_letters(left[0].string) || !about.commutes_with(left[0].string);
+    };
+    while (!left.empty() && std::none_of(turns.begin(), turns.end(), helps)) {
+      perform(0);
+      perform_singles();
+    }
+  }
+  for (const Row& about : turns) {
+    Step turn{about, in_clifford, true};
+    for (std::size_t i = 0; i < left.size(); ++i) {
+      if (!left[i].string.same_letters(about) || !is_ready(i)) continue;
+      turn = {left[i].string, left[i].rotation, true};
+      left.erase(left.begin() + static_cast<std::ptrdiff_t>(i));
+      break;
+    }
+    steps.push_back(turn);
+    for (Step& other : left) conjugate(other.string, about);
+    perform_singles();
+  }
+  while (!left.empty()) {
+    perform(0);
+    perform_singles();
+  }
+  return steps;
+}
+
+std::vector<PairForm::Step> PairForm::steps(bool is_mirrored) const {
+  const auto pairs = [](const std::vector<Step>& list) {
+    return std::count_if(list.begin(), list.end(),
+                         [](const Step& step) { return step.string.weight() == 2; });
+  };
+  std::vector<Step> late = steps(is_mirrored, false);
+  std::vector<Step> early = steps(is_mirrored, true);
+  return pairs(early) < pairs(late) ? early : late;
+}
+
+std::vector<double> PairForm::interactions(bool is_mirrored) const {
+  std::vector<double> angles;
+  for (const Step& step : steps(is_mirrored)) {
+    if (step.string.weight() < 2) continue;
+    if (step.rotation == in_clifford) {
+      angles.push_back(pi / 2);
+      continue;
+    }
+    const Rotation& rotation = rotations_[static_cast<std::size_t>(step.rotation)];
+    const double angle = rotation.angle + (step.is_quarter ? pi / 2 : 0);  // whatever the signs
+    angles.push_back(rotation.is_symbolic ? pi / 2 : std::abs(std::remainder(angle, pi)));
+  }
   return angles;
 }
 

@@ -1,5 +1,5 @@
-// A stretch of turns on one pair of wires whose angles need not be known: rotations that commute, followed by
-// one Clifford, K R3(t3) R2(t2) R1(t1), strings as seen from the start.
+// A stretch of turns on one pair of wires whose angles need not be known: a few rotations followed by one
+// Clifford, K ... R2(t2) R1(t1), strings as seen from the start.
 //
 //   XX(t)  ZX(90)      is  Y(t) on the first wire after ZX(90): one interaction, not two
 //
@@ -8,7 +8,8 @@
 // quarter turns a two-qubit Clifford needs, as seen from the start: none; one about a string Q; or, times
 // SWAP, none or one about Q. SWAP is three quarter turns about any three two-letter strings that commute, so
 // SWAP times a quarter turn about Q is two quarter turns about strings that make such a three with Q.
-// (Derived here from the classes of two-qubit Cliffords: Vatan, Williams, quant-ph/0308006.)
+// (Derived here from the classes of two-qubit Cliffords: Vatan, Williams, quant-ph/0308006.) The count is one
+// that can be reached, not always the least, where rotations do not commute.
 #pragma once
 
 #include <array>
@@ -31,8 +32,9 @@ class PairForm {
   PairForm();
 
   /// Takes a turn, its wires named 0 and 1: returns the number of the rotation that it became part of, or
-  /// in_clifford; nullopt, and nothing is changed, where it does not commute with the rotations so far.
-  std::optional<int> add(const Turn& turn);
+  /// in_clifford. The form must be able to take it.
+  int add(const Turn& turn);
+  /// Whether there is room for the turn.
   bool can_take(const Turn& turn) const;
   /// The turn's string as seen from the start, with the sign that the turn enters with.
   Row seen(const Turn& turn) const;
@@ -41,13 +43,24 @@ class PairForm {
   /// Rows 2k and 2k + 1: K^-1 X_k K and K^-1 Z_k K.
   const std::array<Row, 4>& rows() const { return rows_; }
 
-  /// Two-letter strings for quarter turns, first to last, that leave the Clifford without interactions: as it
-  /// is, or with a SWAP after it that is done by renaming.
-  std::vector<Row> quarter_turns(bool is_mirrored) const;
+  /// A turn about `string`, by the angle of a rotation (with the sign of the string), by a quarter, or both.
+  struct Step {
+    Row string;
+    int rotation = in_clifford;  // none
+    bool is_quarter = false;
+  };
+  /// What performs the rotations and leaves of the Clifford what takes no interaction: as it is, or with a
+  /// SWAP after it that is done by renaming.
+  std::vector<Step> steps(bool is_mirrored) const;
   /// The angles of all interactions, known ones reduced to [0, pi/2], pi/2 for symbolic ones.
   std::vector<double> interactions(bool is_mirrored) const;
 
  private:
+  std::vector<Row> quarter_turns(bool is_mirrored) const;
+  std::vector<Step> steps(bool is_mirrored, bool extras_first) const;
+  /// The rotation that another about the string can be added to, or none.
+  std::optional<std::size_t> home_of(const Row& string) const;
+
   std::vector<Rotation> rotations_;
   std::array<Row, 4> rows_;
 };

@@ -114,7 +114,9 @@ Turn PairStretch::named(const Turn& turn) const {
 bool PairStretch::can_take(const Turn& turn) const {
   if (!symbolic_ && turn.angle.is_known()) return true;
   const auto [la, lb] = letters(turn);
-  return (commuting_ && commutes_with_all(la, lb)) || (form_ && form_->can_take(named(turn)));
+  if (commuting_ && commutes_with_all(la, lb)) return true;
+  if (!form_ || !form_->can_take(named(turn))) return false;
+  return interactions_with(turn) <= interactions_ + 1;  // else it does better on its own
 }
 
 void PairStretch::Axes::add(Letter la, Letter lb, const Turn& turn) {
@@ -197,9 +199,15 @@ void PairStretch::take(const Turn& turn) {
   symbolic_ |= !turn.angle.is_known();
   commuting_ = commuting_ && commutes_with_all(la, lb);
   if (commuting_) axes_.add(la, lb, turn);
-  if (form_ && !form_->add(named(turn))) form_.reset();
+  add_to_form(turn);
   if (!symbolic_) multiply(matrix_, la, lb, turn.signed_constant());
   recount();
+}
+
+/// The form is given up where it has no room.
+void PairStretch::add_to_form(const Turn& turn) {
+  if (form_ && !form_->can_take(named(turn))) form_.reset();
+  if (form_) form_->add(named(turn));
 }
 
 void PairStretch::recount() {
@@ -211,10 +219,10 @@ void PairStretch::recount() {
 bool PairStretch::take_single(const Turn& turn) {
   const auto [la, lb] = letters(turn);
   const bool commutes = commuting_ && commutes_with_all(la, lb);
-  if ((symbolic_ || !turn.angle.is_known()) && !commutes && !(form_ && form_->can_take(named(turn)))) {
-    return false;
+  if ((symbolic_ || !turn.angle.is_known()) && !commutes) {
+    if (!form_ || !form_->can_take(named(turn)) || interactions_with(turn) > interactions_) return false;
   }
-  if (form_ && !form_->add(named(turn))) form_.reset();
+  add_to_form(turn);
   commuting_ = commutes;
   symbolic_ |= !turn.angle.is_known();
   const bool on_a = la != Letter::I;

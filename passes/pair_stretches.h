@@ -32,7 +32,7 @@ class PairStretch {
   unsigned a() const { return a_; }
   unsigned b() const { return b_; }
   int interactions() const { return interactions_; }
-  /// Whether the pair turn can join: with angles that are not known only where the rotations commute.
+  /// Whether the pair turn can join: with angles that are not known only where that takes at most one more.
   bool can_take(const Turn& turn) const;
   /// Interactions after the turn; the stretch must be able to take it.
   int interactions_with(const Turn& turn) const;
@@ -74,6 +74,7 @@ class PairStretch {
   static void multiply(Matrix& matrix, Letter la, Letter lb, double angle);
   Prices prices(const Cost& cost) const;
   void recount();
+  void add_to_form(const Turn& turn);
   bool commutes_with_all(Letter la, Letter lb) const;
   std::pair<Letter, Letter> letters(const Turn& turn) const;
 

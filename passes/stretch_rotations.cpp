@@ -149,56 +149,38 @@ class Writer {
     }
   }
 
-  // ---- commuting rotations and a Clifford
-
-  struct Left {
-    Row string;
-    Angle angle;
-  };
+  // ---- rotations and a Clifford
 
   void write_form(const PairStretch& stretch, const std::vector<Turn>& turns, Origin origin) {
     const unsigned wire[2] = {stretch.a(), stretch.b()};
     PairForm form;
-    std::vector<Angle> angles;
+    std::vector<Angle> angles;  // of the form's rotations
     for (const Turn& turn : turns) {
       const Turn local = stretch.named(turn);
       const bool is_negative = form.seen(local).negative;
-      const auto place = static_cast<std::size_t>(*form.add(local) + 1);  // 0: in the Clifford
-      if (place == 0) continue;
-      angles.resize(std::max(angles.size(), place));
-      Angle& sum = angles[place - 1];
+      const int place = form.add(local);
+      if (place == PairForm::in_clifford) continue;
+      angles.resize(form.rotations().size());
+      Angle& sum = angles[static_cast<std::size_t>(place)];
       sum = forms_.sum(sum, is_negative ? forms_.negated(turn.angle) : turn.angle);
     }
-    std::vector<Left> left;
-    for (std::size_t k = 0; k < angles.size(); ++k) left.push_back({form.rotations()[k].string, angles[k]});
-    const auto signed_angle_of = [&](const Left& rotation) {
-      return rotation.string.negative ? forms_.negated(rotation.angle) : rotation.angle;
-    };
-    const auto write_singles = [&] {
-      std::erase_if(left, [&](const Left& rotation) {
-        if (rotation.string.weight() > 1) return false;
-        const unsigned side = rotation.string.support() == 1 ? 0 : 1;
-        single(wire[side], rotation.string.letter(side), signed_angle_of(rotation), origin);
-        return true;
-      });
-    };
     std::array<Row, 4> rows = form.rows();
-    for (const Row& about : form.quarter_turns(stretch.is_mirrored(cost_))) {
-      write_singles();
-      Angle angle = {pi / 2};
-      std::erase_if(left, [&](const Left& rotation) {
-        const bool is_same = rotation.string.same_letters(about);
-        if (is_same) angle = forms_.sum(angle, signed_angle_of(rotation));
-        return is_same;
-      });
-      pair(wire[0], about.letter(0), wire[1], about.letter(1), angle, origin);
-      for (Row& row : rows) conjugate(row, about);
-      for (Left& rotation : left) conjugate(rotation.string, about);
-    }
-    write_singles();
-    for (const Left& rotation : left) {
-      pair(wire[0], rotation.string.letter(0), wire[1], rotation.string.letter(1), signed_angle_of(rotation),
-           origin);
+    for (const PairForm::Step& step : form.steps(stretch.is_mirrored(cost_))) {
+      Angle angle;
+      if (step.rotation != PairForm::in_clifford) angle = angles[static_cast<std::size_t>(step.rotation)];
+      if (step.string.negative) angle = forms_.negated(angle);
+      if (step.is_quarter) {
+        angle.constant += pi / 2;
+        for (Row& row : rows) conjugate(row, step.string);
+      }
+      const Letter la = step.string.letter(0), lb = step.string.letter(1);
+      if (step.string.weight() == 2) {
+        pair(wire[0], la, wire[1], lb, angle, origin);
+      } else if (la != Letter::I) {
+        single(wire[0], la, angle, origin);
+      } else {
+        single(wire[1], lb, angle, origin);
+      }
     }
     std::vector<Turn> change;
     for (unsigned k = 0; k < 2; ++k) {
