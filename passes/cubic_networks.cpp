@@ -429,7 +429,7 @@ std::optional<Circuit> cubic_networks_beside(const Circuit& circuit, const PassC
   };
   if (std::none_of(circuit.blocks.begin(), circuit.blocks.end(), has_toffolis)) return std::nullopt;
   Circuit result = circuit;
-  const bool may_rename = !may_end_early(circuit);
+  const bool may_rename = may_rename_wires(circuit);
   bool is_changed = false;
   for (std::size_t b = 0; b < circuit.blocks.size(); ++b) {
     auto better = Rewriter(result, context).rewritten(circuit.blocks[b], b == 0 && may_rename);
