@@ -735,7 +735,7 @@ void Reader::define_subroutine(const syntax::Subroutine& definition, syntax::Spa
     }
   }
   Symbol symbol;
-  has_callables_ = true;
+  has_hoisted_ = true;
   symbol.kind = Symbol::Kind::subroutine;
   symbol.name = definition.name.text;
   symbol.at = definition.name.at;
@@ -750,7 +750,7 @@ void Reader::define_extern(const syntax::Extern& definition, syntax::Span at) {
   if (scopes_.depth() != 1 || block_ != 0)
     fail(at, "external functions are declared at the outermost level only");
   Symbol symbol;
-  has_callables_ = true;
+  has_hoisted_ = true;
   symbol.kind = Symbol::Kind::external;
   symbol.name = definition.name.text;
   symbol.at = definition.name.at;

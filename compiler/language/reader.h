@@ -426,7 +426,7 @@ class Reader final : public StatementSink {
   std::set<const syntax::Body*> checked_;                   // of the statement being run
   std::vector<Annotation> annotations_;
   std::set<std::uint32_t> annotated_;  // places of annotations that are noted
-  bool has_callables_ = false;         // subroutines or externs
+  bool has_hoisted_ = false;           // subroutines or externs
   bool times_asked_ = false;
   std::optional<GateTimes> times_;
   Forms lengths_;  // over the stretches; the form of a delay until they are solved

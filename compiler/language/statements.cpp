@@ -145,9 +145,9 @@ void Reader::note_broken(const syntax::Statement& statement) {
 }
 
 /// Calls in the angles and indices of a gate call are made once, before it: their results are variables like
-/// all others then, and the gate may need an arm for each of their values.
+/// all others then, and the gate may need an arm for each of their values. Running cells of arrays likewise.
 void Reader::hoist_calls(const syntax::GateCall& call) {
-  if (capture_ != nullptr || !has_callables_) return;
+  if (capture_ != nullptr || !has_hoisted_) return;
   const Symbol* callee = scopes_.find(call.name.text);
   if (callee != nullptr && callee->kind != Symbol::Kind::gate) return;  // a subroutine in the early form
   for (const SyntaxExpression& angle : call.angles) hoist_calls(angle);
@@ -164,6 +164,15 @@ void Reader::hoist_calls(const SyntaxExpression& expression) {
       // What an extern gave is in a variable of its own already.
       const bool is_kept = callee->kind == Symbol::Kind::external;
       fixed_[&expression] = is_kept ? value : kept(value, callee->name + "_value");
+      return;
+    }
+  }
+  if (expression.kind == SyntaxExpression::Kind::index &&
+      expression.arguments[0].kind == SyntaxExpression::Kind::name) {
+    const Symbol* array = scopes_.find(expression.arguments[0].text);
+    if (array != nullptr && array->is_array() && array->runs &&
+        expression.arguments.size() == array->shape.size() + 1) {
+      fixed_[&expression] = kept(evaluated(expression), array->name + "_cell");
       return;
     }
   }
@@ -415,6 +424,7 @@ void Reader::declare_variable(const syntax::Declaration& declaration, syntax::Sp
            {"help: a register bit[n] holds many bits"});
     }
     symbol.shape = array_shape(declaration.type);
+    has_hoisted_ = true;
   }
   if (declaration.role == Role::constant && is_array)
     fail(at, "constants are scalars; an array cannot be const");

@@ -247,6 +247,9 @@ TEST_CASE("running angles: conditional gates for rotations, arms for the rest, a
   CHECK(branches(reads + "rx(m(q[1]) * 0.6) q[0];") == "2 2");
   CHECK(branches(reads + "U(m(q[1]) * 0.6, 0, 0.2) q[0];") == "1 4");
   CHECK(branches(reads + "x q[m(q[1]) % 2];") == "1 2");
+  CHECK(branches("array[uint[16], 2, 2] a; a[1, 0] = k; rz(a[1, 0] * pi / 7) q[0];") == "16 16");
+  CHECK(branches("array[uint[2], 2] a; a[1] = uint[2](r[0:1]); U(a[1] * 0.1, 0, 0.2) q[0];") == "1 4");
+  CHECK(branches("array[uint[2], 2] a; a[1] = 3; U(a[1] * 0.1, 0, 0.2) q[0];") == "0 0");
   CHECK(branches("input float t; ry(t + k * 0.1) q[0];") == "16 16");
   CHECK(branches("c[0] = measure q[0]; c[1] = measure q[1]; rz(c[0] * pi) q[0]; U(c[0] * 0.1, c[1] * pi, 0) "
                  "q[0];") == "4 8");
