@@ -449,7 +449,8 @@ void Reader::split_on(const Expression& expression, syntax::Span at) {
            fmt::format("an angle that depends on `{}`, a {} known only while running, cannot be compiled",
                        native.name, native.type),
            {fmt::format("help: give it a type of at most {} bits, such as uint[4], or branch on it",
-                        most_split_bits)});
+                        most_split_bits),
+            "note: in a rotation (p, rx, ry, rz, cp ...) whose angle is a sum over its bits it may have 64"});
     }
     split.count = is_truth ? 2 : 1u << split.type.width;
     split.selector = *node;
