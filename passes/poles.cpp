@@ -31,9 +31,11 @@ bool suits(const Need& need, const Axis& pole) {
 }
 
 Axis nearest_perpendicular(const Axis& axis, const Axis& old) {
-  const Axis flat = old - axis * axis.dot(old);
+  const Axis unit = axis.normalized();
+  const Axis flat = old - unit * unit.dot(old);
   // What is left of an axis that is nearly parallel is mostly rounding.
-  return flat.norm() > 1e-4 ? Axis(flat.normalized()) : Axis(axis.unitOrthogonal());
+  if (flat.norm() < 1e-4) return unit.unitOrthogonal();
+  return (flat - unit * unit.dot(flat)).normalized();  // again: the division has magnified what was left
 }
 
 /// For stretches of known angles: greedy over runs.
@@ -102,8 +104,11 @@ class PoleWalk {
         offer_both(need.axis.cross(axis).normalized());
       }
     }
-    offer(nearest_perpendicular(need.axis, old));
-    return *best;
+    const Axis nearest = nearest_perpendicular(need.axis, old);
+    offer(nearest);
+    if (best) return *best;
+    next = first + 1;  // an axis that rounding has taken from unit length: as perpendicular as can be
+    return nearest;
   }
 
   std::span<const Need> needs_;

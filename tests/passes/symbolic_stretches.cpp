@@ -6,6 +6,7 @@
 
 #include "passes/lower.h"
 #include "passes/optimize.h"
+#include "passes/poles.h"
 #include "support/random_circuits.h"
 #include "support/simulator.h"
 
@@ -241,5 +242,24 @@ TEST_CASE("random stretches with unknown angles, between interactions and alone"
     for (const Operation& op : source.body()) plainly += op.operand_count == 1 && op.kind != Kind::rz;
     CHECK(pulses_of(result) <= plainly);
     CHECK(pulses_of(lower(result, {})) <= pulses_of(result));
+  }
+}
+
+// The walk along numeric axes must find a pole for any axis, however near the old pole it lies and however
+// far rounding has taken it from unit length.
+TEST_CASE("an axis close to the pole finds a pole of its own") {
+  for (const double tilt : {1e-2, 1e-3, 3e-4, 1e-4, 3e-5, 1e-5, 1e-6, 1e-7, 1e-9, 0.0}) {
+    for (const double stretch : {1.0, 1 + 1e-9, 1 - 1e-9, 1 + 1e-8, 1 - 1e-8}) {
+      for (int turn = 0; turn < 12; ++turn) {
+        CAPTURE(tilt);
+        CAPTURE(stretch);
+        const Axis axis =
+            Axis(tilt * std::cos(turn), tilt * std::sin(turn), std::sqrt(1 - tilt * tilt)) * stretch;
+        std::vector<Axis> poles(2);
+        choose_poles(std::vector<Need>{{axis, 0}, {Axis::UnitZ(), 1, Need::What::end, true}}, poles);
+        CHECK(std::abs(poles[0].dot(axis)) < 1e-8);
+        CHECK(poles[0].norm() == doctest::Approx(1));
+      }
+    }
   }
 }
