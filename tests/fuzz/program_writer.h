@@ -15,7 +15,9 @@ class ProgramWriter {
   ProgramWriter(const std::uint8_t* bytes, std::size_t size) : bytes_(bytes), size_(size) {}
 
   std::string program() {
-    text_ = "OPENQASM 3.1;\ninclude \"stdgates.inc\";\nqubit[4] q;\nbit[4] c;\nint n = 3;\nfloat t = 0.25;\n";
+    text_ =
+        "OPENQASM 3.1;\ninclude \"stdgates.inc\";\nqubit[4] q;\nbit[4] c;\nint n = 3;\nfloat t = "
+        "0.25;\nextern ex(int) -> uint[5];\n";
     qubits_ = {{"q", 4}};
     bits_ = {{"c", 4}};
     wholes_ = {{"n"}};
@@ -79,7 +81,9 @@ class ProgramWriter {
       case 5: {
         const auto variables = std::exchange(reals_, {});
         const auto integers = std::exchange(wholes_, {});
+        const bool outside = std::exchange(may_run_, false);
         const std::string expression = real(2);
+        may_run_ = outside;
         reals_ = variables;
         wholes_ = integers;
         reals_.push_back({fresh("e")});
@@ -119,7 +123,7 @@ class ProgramWriter {
         break;
       case 14:
         text_ += pick(
-            {"pragma keep this\n", "@note here\n", "extern ex(int) -> uint[5];\n", "output bit[2] out;\n"});
+            {"pragma keep this\n", "@note here\n", "extern ey(int) -> float;\n", "output bit[2] out;\n"});
         break;
       default:
         statement(0);
@@ -151,6 +155,7 @@ class ProgramWriter {
     std::vector<Named> outer_qubits = std::move(qubits_);
     std::vector<Named> outer_reals = std::exchange(reals_, {});
     qubits_.clear();
+    may_run_ = false;
     text_ += "gate " + name + "(";
     for (unsigned i = 0; i < angles; ++i) {
       reals_.push_back({"p" + std::to_string(i)});
@@ -166,12 +171,14 @@ class ProgramWriter {
     text_ += "}\n";
     qubits_ = std::move(outer_qubits);
     reals_ = std::move(outer_reals);
+    may_run_ = true;
     gates_.push_back({name, arity, angles});
   }
 
   void subroutine() {
     const ProgramWriter outside = *this;  // its names come back at the end
     qubits_ = bits_ = wholes_ = reals_ = numbers_ = arrays_ = times_ = {};
+    may_run_ = false;
     const std::string name = fresh("f");
     text_ += "def " + name + "(" +
              pick({"", "int k", "qubit z", "qubit[2] z, float k", "readonly array[int[8], #dim = 1] z"}) +
@@ -325,6 +332,7 @@ class ProgramWriter {
     numbers_ = outside.numbers_;
     arrays_ = outside.arrays_;
     times_ = outside.times_;
+    may_run_ = outside.may_run_;
   }
 
   void block(int depth) {
@@ -377,7 +385,7 @@ class ProgramWriter {
 
   std::string operand() {
     if (choose(16) == 15) return pick({"$0", "$1", "$3"});
-    if (qubits_.empty()) return "q";
+    if (qubits_.empty()) return pick({"$0", "$1", "$2"});
     const Named& one = qubits_[choose(static_cast<unsigned>(qubits_.size()))];
     const unsigned form = choose(12);
     if (one.size == 0 || form == 0) return one.name;
@@ -386,7 +394,7 @@ class ProgramWriter {
   }
 
   std::string distinct_operand(unsigned k) {
-    if (qubits_.empty()) return "q";
+    if (qubits_.empty()) return "$" + std::to_string(k % 4);
     if (qubits_[0].name == "q") return "q[" + std::to_string(k % 4) + "]";
     return qubits_[k % qubits_.size()].name;
   }
@@ -419,9 +427,9 @@ class ProgramWriter {
     const unsigned form = choose(depth >= deepest ? 6 : 10);
     if (form < 3) return pick({"pi", "pi/2", "-pi/4", "0.5", "1e-3", "2.", "tau", "1/2"});
     if (form < 6) return pick(reals_, "0.25");
-    if (form == 9 && choose(2) == 0) {  // bits of the running program
-      return pick({bit() + " * 0.3", "uint[4](c) * pi / 8", "angle[4](c)", "-angle[4](c)", "ex(1) * 0.1",
-                   "pow(2, " + bit() + ")"});
+    if (form == 9 && may_run_ && choose(2) == 0) {  // bits of the running program
+      return pick({"c[0] * 0.3", "uint[4](c) * pi / 8", "angle[4](c)", "-angle[4](c)", "ex(1) * 0.1",
+                   "pow(2, c[1])"});
     }
     if (form == 6) return pick({"sin(", "cos(", "sqrt(", "exp(", "arctan("}) + real(depth + 1) + ")";
     return real(depth + 1) + pick({" + ", " - ", " * ", " / "}) +
@@ -484,6 +492,7 @@ class ProgramWriter {
   std::size_t at_ = 0;
   std::string text_;
   unsigned names_ = 0;
+  bool may_run_ = true;  // whether values of the running program may stand here
   std::vector<Named> qubits_, bits_, wholes_, reals_, numbers_, arrays_, times_, gates_, subroutines_;
 };
 
