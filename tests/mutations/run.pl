@@ -12,9 +12,9 @@
 use strict;
 use warnings;
 use Cwd qw(abs_path);
+use Fcntl qw(:flock);
 use File::Basename qw(dirname);
 use File::Temp qw(tempdir);
-use POSIX qw(:sys_wait_h);
 
 my $tree = abs_path(dirname(__FILE__) . '/../..');
 my $list = "$tree/tests/mutations/list.txt";
@@ -144,6 +144,8 @@ sub verdict {
   return 'missed';
 }
 
+my @all = mutations();
+
 # Results of earlier runs, by name.
 sub known_results {
   my %results;
@@ -154,18 +156,29 @@ sub known_results {
   return %results;
 }
 
+# Adds a result to those in the table, which another run may be writing, too.
+sub record {
+  my ($name, $result) = @_;
+  open(my $lock, '<', $list) or die "$list: $!\n";
+  flock($lock, LOCK_EX) or die "$list: $!\n";
+  my %results = known_results();
+  $results{$name} = $result;
+  write_table(\%results);
+  close $lock;
+}
+
 sub write_table {
-  my ($mutations, $results) = @_;
+  my ($results) = @_;
   my ($head) = split /\Q$marker\E/, -e $table ? slurp($table) : '';
   my (%total, %noticed, @files);
   my $rows = '';
-  for my $m (@$mutations) {
+  for my $m (@all) {
     my $result = $results->{$m->{name}} // 'not run';
     push @files, $m->{file} unless $total{$m->{file}}++;
     $noticed{$m->{file}} += $result =~ /^noticed/ ? 1 : 0;
     $rows .= "| $m->{name} | $m->{what} | $result |\n";
   }
-  my ($all, $seen) = (scalar @$mutations, 0);
+  my ($all, $seen) = (scalar @all, 0);
   my $summary = '';
   for my $file (@files) {
     $seen += $noticed{$file};
@@ -178,7 +191,6 @@ sub write_table {
   rename("$table.new", $table) or die "$table: $!\n";
 }
 
-my @all = mutations();
 my @stale = grep { !eval { mutated($_); 1 } && print STDERR $@ } @all;
 die scalar(@stale) . " mutations do not fit the tree\n" if @stale;
 my %results = known_results();
@@ -197,14 +209,15 @@ if (@chosen == @all) {
 }
 my $missed = 0;
 for my $m (@chosen) {
+  my %now = known_results();  # another run may have been there
+  next if $only_open && ($now{$m->{name}} // '') =~ /^noticed/;
   my $begin = time;
   my $result = verdict($m);
   printf "%-26s %4d s  %s\n", $m->{name}, time - $begin, $result;
   STDOUT->flush();
   $missed += $result !~ /^noticed/;
   next if $only_first && $result eq 'missed';
-  $results{$m->{name}} = $result;
-  write_table(\@all, \%results);
+  record($m->{name}, $result);
 }
 printf "%d of %d noticed\n", @chosen - $missed, scalar @chosen;
 exit($missed ? 1 : 0);

@@ -454,6 +454,25 @@ TEST_CASE("many controls are expanded exactly") {
   }
 }
 
+// ---- pair-toffolis
+
+TEST_CASE("a target that may no longer hold 0 takes an exact Toffoli") {
+  Circuit swapped = on(4);
+  for (const std::uint32_t q : {0u, 1u, 3u}) add(swapped, Kind::r, {q}, {{0.7 + q}, {0.3}});
+  add(swapped, Kind::swap, {2, 3});
+  add(swapped, Kind::x, {0, 1, 2});
+  CHECK(support::distance_from_zero(swapped, pair_toffolis(swapped, zero_start())) < 1e-12);
+
+  Circuit branched = on(4);
+  add_bits(branched, "c", 1);
+  for (const std::uint32_t q : {0u, 1u, 3u}) add(branched, Kind::r, {q}, {{0.7 + q}, {0.3}});
+  measure(branched, 3, 0);
+  branch_on_first_bit(branched, {branched.make(Kind::h, {2})});
+  add(branched, Kind::x, {0, 1, 2});
+  const Circuit result = pair_toffolis(branched, zero_start());
+  CHECK(outcome_distance(branched, result, {0, 1, 2}, true) < 1e-12);
+}
+
 // ---- known-start
 
 TEST_CASE("a known bit as control or target leaves what is left of the gate") {
@@ -560,6 +579,28 @@ TEST_CASE("interactions about the same axes meet: either way round, and when oth
     }
   }
   CHECK(count_of(merge_rotations(lower(circuit, {}), {}), Kind::xx) == 0);
+}
+
+TEST_CASE("interactions about the same axes: with quick effort gates are lowered on the way") {
+  Circuit circuit = on(2);
+  add(circuit, Kind::x, {0, 1});
+  PassContext context;
+  context.effort = Effort::quick;
+  const Circuit result = merge_rotations(circuit, context);
+  for (const Operation& op : result.body()) CHECK(op.is_native());
+}
+
+TEST_CASE("interactions about the same axes and inputs that cancel leave the known part of the angle") {
+  Circuit circuit = on(2);
+  circuit.inputs.push_back({"t", "float", false, {}});
+  const std::uint32_t t = circuit.forms.of_input(0);
+  add(circuit, Kind::r, {0}, {{0.3, t}, {0}});
+  add(circuit, Kind::xx, {0, 1}, {{0.4}, {0}, {0}});
+  add(circuit, Kind::r, {0}, {{0.2, circuit.forms.scaled(t, -1)}, {0}});
+  add(circuit, Kind::xx, {0, 1}, {{0.4}, {1}, {0}});
+  const Circuit result = merge_rotations(lower(circuit, {}), {});
+  CHECK(tally_of(result).r < tally_of(lower(circuit, {})).r);
+  CHECK(support::distance(circuit, result, std::vector<double>{0.7}) < 1e-12);
 }
 
 TEST_CASE("lines of the source: what has merged comes from all of them") {
@@ -743,6 +784,63 @@ TEST_CASE("small blocks: wires keep their names in arms and where the program ma
   const Circuit in_arm = searched(inner);
   CHECK(in_arm.end_wire == inner.end_wire);
   CHECK(outcome_distance(inner, in_arm, {0, 1, 2}) < 1e-9);
+}
+
+namespace {
+
+Circuit searched(const Circuit& circuit, PassContext context = {}) {
+  context.effort = Effort::deep;
+  context.deadline = std::chrono::steady_clock::now() + std::chrono::minutes(1);
+  return search_blocks(lower(circuit, context), context);
+}
+
+}  // namespace
+
+TEST_CASE("small blocks end at wires that others have used in between") {
+  for (const bool is_symbolic : {false, true}) {
+    // The first and the last are inverse, but for the one between them.
+    Circuit circuit = on(4);
+    circuit.inputs.push_back({"t", "float", false, {}});
+    add(circuit, Kind::xx, {0, 1}, {{0.5}, {0}, {0}});
+    add(circuit, Kind::xx, {1, 2}, {{0.4}, {0}, {0}});
+    add(circuit, Kind::xx, {0, is_symbolic ? 1u : 3u},
+        {{0.7, is_symbolic ? circuit.forms.of_input(0) : 0}, {pi / 2}, {0}});
+    add(circuit, Kind::xx, {1, 2}, {{0.3}, {0}, {0.1}});
+    add(circuit, Kind::xx, {0, 1}, {{0.5}, {pi}, {0}});
+    CHECK(support::distance(circuit, searched(circuit), std::vector<double>{0.3}) < 1e-9);
+  }
+}
+
+TEST_CASE("small blocks: outputs may move on by one, and only untouched wires hold 0") {
+  // Two iSWAPs are two CZs and a cyclic exchange of the three wires.
+  Circuit moved = on(3);
+  for (const auto& [a, b] : {std::pair{0u, 1u}, std::pair{1u, 2u}}) {
+    add(moved, Kind::xx, {a, b}, {{pi / 2}, {0}, {0}});
+    add(moved, Kind::xx, {a, b}, {{pi / 2}, {pi / 2}, {pi / 2}});
+  }
+  const Circuit result = searched(moved);
+  CHECK(tally_of(result).xx == 2);
+  CHECK(support::distance(moved, result) < 1e-9);
+
+  support::Random random(80);
+  Circuit used = on(4);
+  for (const Wires& pair :
+       {Wires{0, 3}, Wires{1, 3}, Wires{2, 3}, Wires{0, 1}, Wires{1, 2}, Wires{0, 2}, Wires{0, 1}}) {
+    add(used, Kind::xx, pair, {{random.real(0.3, 1.2)}, {random.real(-3, 3)}, {random.real(-3, 3)}});
+    for (const std::uint32_t q : pair) add(used, Kind::r, {q}, {{random.real(0.3, 2)}, {random.real(-3, 3)}});
+  }
+  CHECK(support::distance_from_zero(used, searched(used, zero_start())) < 1e-9);
+}
+
+// ---- the end
+
+TEST_CASE("interactions right before resets of both their wires go") {
+  Circuit circuit = on(3);
+  add(circuit, Kind::h, {2});
+  add(circuit, Kind::xx, {0, 1}, {{0.4}, {0.3}, {0.2}});
+  add(circuit, Kind::reset, {0});
+  add(circuit, Kind::reset, {1});
+  CHECK(count_of(trim_end(lower(circuit, {}), {}), Kind::xx) == 0);
 }
 
 TEST_CASE("swaps of a program's body are names from there on, in arms, too") {

@@ -120,6 +120,10 @@ TEST_CASE("a target that is known to be 0 takes a Toffoli of three interactions"
   CHECK(tally_of(through(source, zero)).xx == 3);
   CHECK(tally_of(through(source)).xx == 5);
   CHECK(support::distance_from_zero(source, through(source, zero)) < 1e-12);
+  source.body().insert(source.body().end() - 1, source.make(Kind::h, {2}));
+  CHECK(tally_of(through(source, zero)).xx == 5);
+  source.body().insert(source.body().end() - 1, source.make(Kind::reset, {2}));
+  CHECK(tally_of(through(source)).xx == 3);
 }
 
 TEST_CASE("random circuits of Toffolis and other gates keep their unitaries") {

@@ -135,6 +135,26 @@ TEST_CASE("random Clifford and T circuits: exact") {
   }
 }
 
+TEST_CASE("Toffolis among other gates: half of a sign on three bits stays what it is") {
+  // T on three bits and on their sum: a CCZ would leave phases on the three sums of two, 8 interactions
+  // for 4.
+  Circuit source;
+  add_register(source, "q", 3);
+  const auto add = [&](Kind kind, std::initializer_list<std::uint32_t> operands,
+                       std::initializer_list<Angle> angles = {}) {
+    source.body().push_back(source.make(kind, operands, angles));
+  };
+  for (const std::uint32_t q : {0u, 1u, 2u}) add(Kind::p, {q}, {{pi / 4}});
+  add(Kind::x, {0, 2});
+  add(Kind::x, {1, 2});
+  add(Kind::p, {2}, {{pi / 4}});
+  add(Kind::x, {1, 2});
+  add(Kind::x, {0, 2});
+  const Circuit result = recover_toffolis(source, {});
+  CHECK(count_of(result, 3) == 0);
+  CHECK(count_of(result, 2) == 4);
+}
+
 TEST_CASE("nothing moves across classical control") {
   support::Random random(33);
   for (int trial = 0; trial < 60; ++trial) {

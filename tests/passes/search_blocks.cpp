@@ -62,6 +62,16 @@ TEST_CASE("deep effort searches small blocks") {
   CHECK(tally_of(result).xx <= 4);
 }
 
+TEST_CASE("deep effort searches on until a glance before its time is over") {
+  const Circuit source = gate(Kind::x, {0, 1, 2});
+  PassContext context = deep();
+  const auto start = std::chrono::steady_clock::now();
+  context.deadline = start + std::chrono::milliseconds(600);
+  const Circuit result = optimize(source, context);
+  CHECK(std::chrono::steady_clock::now() - start > std::chrono::milliseconds(450));
+  CHECK(support::distance(source, result) < 1e-9);
+}
+
 TEST_CASE("a random three-qubit unitary is cut down to eleven (computed)") {
   support::Random random(41);
   const Circuit source = support::random_circuit(random, {3, 60, 0, support::Family::native});

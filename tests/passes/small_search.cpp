@@ -165,30 +165,18 @@ TEST_CASE("angles are made small, and of more starts the best is kept") {
   for (const Coupling& c : better.couplings) sum += std::abs(c.angle);
   CHECK(sum < 0.81);
 
+  // Eleven couplings leave the angles of a random unitary some freedom: every start ends elsewhere.
   support::Random random(9);
-  const std::vector<std::pair<int, int>> pairs = {{0, 1}, {1, 2}, {0, 1}, {0, 2}, {1, 2}};
-  for (int trial = 0; trial < 3; ++trial) {
-    SmallCircuit drawn;
-    drawn.locals.assign(3, Su2::Identity());
-    for (std::size_t j = 0; j < 4; ++j) {
-      Coupling coupling;
-      coupling.qubit[0] = static_cast<std::uint8_t>(pairs[j].first);
-      coupling.qubit[1] = static_cast<std::uint8_t>(pairs[j].second);
-      for (Axis& axis : coupling.axis)
-        axis = Axis(random.gaussian(), random.gaussian(), random.gaussian()).normalized();
-      coupling.angle = random.real(0.2, 1.4);
-      drawn.couplings.push_back(coupling);
-    }
-    const SmallTarget wanted{3, matrix_of(drawn), 0};
-    double least = 1;
-    for (int starts = 1; starts <= 6; ++starts) {
-      const auto found = fitted(wanted, pairs, search(starts), {});
-      if (!found) continue;
-      const double error = error_of(*found, {});
-      CHECK(error <= least + 1e-12);
-      least = std::min(least, error);
-    }
-    CHECK(least < 1);
+  const SmallTarget wanted{3, support::haar_unitary(random, 3), 0};
+  std::vector<std::pair<int, int>> pairs;
+  const std::pair<int, int> cycle[] = {{0, 1}, {1, 2}, {0, 2}};
+  for (int i = 0; i < 11; ++i) pairs.push_back(cycle[i % 3]);
+  double least = 1;
+  for (int starts = 1; starts <= 5; ++starts) {
+    const auto found = fitted(wanted, pairs, search(starts), {});
+    REQUIRE(found);
+    CHECK(error_of(*found, {}) <= least);
+    least = error_of(*found, {});
   }
 }
 
