@@ -747,6 +747,22 @@ TEST_CASE("approximation is reported, and spent once however long the search goe
   }
 }
 
+TEST_CASE("the whole goes round until no pass of its rounds gains any more") {
+  support::Random random(85);
+  for (int trial = 0; trial < 60; ++trial) {
+    const auto family = trial % 2 ? support::Family::native : support::Family::clifford_t;
+    const Circuit source = support::random_circuit(random, {random.between(3, 4), 40, 1, family});
+    Trace trace;
+    const Circuit result = optimize(source, {}, &trace);
+    if (trace.results.front().is_winner) continue;  // the quick order does not go round
+    const double error = tally_of(result).error;
+    CAPTURE(listed(source));
+    for (const auto pass : {merge_rotations, two_qubit_stretches, mirrored_stretches}) {
+      CHECK(tally_of(pass(result, {})).error >= error * (1 - 1e-6));
+    }
+  }
+}
+
 // ---- small blocks
 
 TEST_CASE("small blocks: wires keep their names in arms and where the program may end early") {
@@ -856,6 +872,15 @@ TEST_CASE("interactions right before resets of both their wires go") {
   add(circuit, Kind::reset, {0});
   add(circuit, Kind::reset, {1});
   CHECK(count_of(trim_end(lower(circuit, {}), {}), Kind::xx) == 0);
+}
+
+TEST_CASE("swaps of physical qubits are work") {
+  Circuit circuit;
+  add_register(circuit, "$0", 1, true);
+  add_register(circuit, "$1", 1, true);
+  add(circuit, Kind::swap, {0, 1});
+  CHECK(count_of(rename_swaps(circuit, {}), Kind::swap) == 1);
+  CHECK(tally_of(optimize(circuit, {})).xx == 3);
 }
 
 TEST_CASE("swaps of a program's body are names from there on, in arms, too") {

@@ -66,9 +66,9 @@ TEST_CASE("deep effort searches on until a glance before its time is over") {
   const Circuit source = gate(Kind::x, {0, 1, 2});
   PassContext context = deep();
   const auto start = std::chrono::steady_clock::now();
-  context.deadline = start + std::chrono::milliseconds(600);
+  context.deadline = start + std::chrono::seconds(2);
   const Circuit result = optimize(source, context);
-  CHECK(std::chrono::steady_clock::now() - start > std::chrono::milliseconds(450));
+  CHECK(std::chrono::steady_clock::now() > context.deadline - std::chrono::milliseconds(200));
   CHECK(support::distance(source, result) < 1e-9);
 }
 
