@@ -848,21 +848,6 @@ TEST_CASE("small blocks: outputs may move on by one, and only untouched wires ho
   CHECK(support::distance_from_zero(used, searched(used, zero_start())) < 1e-9);
 }
 
-// ---- the start
-
-TEST_CASE("a known start with a reset: only a wire that holds 0 needs none") {
-  for (const double angle : {0.0, 1.1}) {
-    Circuit circuit = on(2);
-    if (angle != 0) add(circuit, Kind::r, {0}, {{angle}, {0.2}});
-    add(circuit, Kind::reset, {0});
-    add(circuit, Kind::r, {0}, {{0.4}, {0.1}});
-    add(circuit, Kind::xx, {0, 1}, {{0.4}, {0.3}, {0.2}});
-    const Circuit result = trim_start(lower(circuit, {}), zero_start());
-    CHECK(outcome_distance(circuit, result, {0, 1}, true) < 1e-12);
-    if (angle != 0) CHECK(count_of(result, Kind::reset) == 1);
-  }
-}
-
 // ---- the end
 
 TEST_CASE("interactions right before resets of both their wires go") {
