@@ -848,6 +848,18 @@ TEST_CASE("small blocks: outputs may move on by one, and only untouched wires ho
   CHECK(support::distance_from_zero(used, searched(used, zero_start())) < 1e-9);
 }
 
+// ---- the start
+
+TEST_CASE("a known start with two interactions on one pair takes one") {
+  Circuit circuit = on(2);
+  add(circuit, Kind::xx, {0, 1}, {{0.4}, {0.3}, {0.2}});
+  add(circuit, Kind::r, {0}, {{0.7}, {0.2}});
+  add(circuit, Kind::xx, {0, 1}, {{0.9}, {1.3}, {0.2}});
+  const Circuit result = trim_start(lower(circuit, {}), zero_start());
+  CHECK(tally_of(result).xx == 1);
+  CHECK(support::distance_from_zero(circuit, result) < 1e-12);
+}
+
 // ---- the end
 
 TEST_CASE("interactions right before resets of both their wires go") {

@@ -171,12 +171,16 @@ TEST_CASE("angles are made small, and of more starts the best is kept") {
   std::vector<std::pair<int, int>> pairs;
   const std::pair<int, int> cycle[] = {{0, 1}, {1, 2}, {0, 2}};
   for (int i = 0; i < 11; ++i) pairs.push_back(cycle[i % 3]);
-  double least = 1;
-  for (int starts = 1; starts <= 5; ++starts) {
-    const auto found = fitted(wanted, pairs, search(starts), {});
-    REQUIRE(found);
-    CHECK(error_of(*found, {}) <= least);
-    least = error_of(*found, {});
+  for (const std::uint64_t seed : {1u, 2u, 3u}) {
+    double least = 1;
+    for (int starts = 1; starts <= 3; ++starts) {
+      SmallSearch some = search(starts);
+      some.seed = seed;
+      const auto found = fitted(wanted, pairs, some, {});
+      REQUIRE(found);
+      CHECK(error_of(*found, {}) <= least);
+      least = error_of(*found, {});
+    }
   }
 }
 
