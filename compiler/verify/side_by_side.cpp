@@ -71,10 +71,11 @@ class Queue {
   /// Looking back from the measurements: gates that turn phases of basis states of measured wires change no
   /// outcome and are left out; those that exchange basis states, phases apart, are the tail.
   void find_tail(const Circuit& circuit) {
-    std::vector<bool> is_open(next_.size(), false);
+    is_measured_.assign(next_.size(), false);
     for (const Operation& op : circuit.body()) {
-      if (op.kind == Kind::measure) is_open[circuit.operands(op)[0]] = true;
+      if (op.kind == Kind::measure) is_measured_[circuit.operands(op)[0]] = true;
     }
+    std::vector<bool> is_open = is_measured_;
     std::vector<Kernel> kept;
     std::vector<bool> in_tail;
     for (; !kernels_.empty(); kernels_.pop_back()) {
@@ -92,10 +93,6 @@ class Queue {
     }
     kernels_.assign(std::make_move_iterator(kept.rbegin()), std::make_move_iterator(kept.rend()));
     in_tail_.assign(in_tail.rbegin(), in_tail.rend());
-    is_measured_ = std::move(is_open);
-    for (const Operation& op : circuit.body()) {
-      if (op.kind == Kind::measure) is_measured_[circuit.operands(op)[0]] = true;
-    }
   }
 
   static bool is_diagonal(const Kernel& kernel) {

@@ -14,10 +14,10 @@
 #include "passes/clifford_table.h"
 #include "passes/lower.h"
 #include "passes/optimize.h"
-#include "passes/stretch_rotations.h"
 #include "passes/two_qubit_stretches.h"
 #include "support/families_arithmetic.h"
 #include "support/families_chemistry.h"
+#include "support/families_textbook.h"
 #include "support/random_circuits.h"
 #include "verify/equivalence.h"
 
@@ -46,18 +46,6 @@ Circuit single(Kind kind, std::initializer_list<std::uint32_t> operands,
                std::initializer_list<Angle> angles = {}) {
   Circuit circuit = on(static_cast<std::uint32_t>(operands.size()));
   add(circuit, kind, operands, angles);
-  return circuit;
-}
-
-Circuit fourier(std::uint32_t n) {
-  Circuit circuit = on(n);
-  for (std::uint32_t target = n; target-- > 0;) {
-    add(circuit, Kind::h, {target});
-    for (std::uint32_t control = target; control-- > 0;) {
-      add(circuit, Kind::p, {control, target}, {{pi / std::pow(2.0, target - control)}});
-    }
-  }
-  for (std::uint32_t q = 0; q < n / 2; ++q) add(circuit, Kind::swap, {q, n - 1 - q});
   return circuit;
 }
 
@@ -111,18 +99,6 @@ void report(const Row& row, const Circuit& circuit, double seconds = 0) {
             fmt::format("{} ({})", name(verdict.answer), verdict.method));
 }
 
-Circuit random_pair(support::Random& random) {
-  Circuit circuit = on(2);
-  for (int layer = 0; layer < 12; ++layer) {
-    for (const std::uint32_t q : {0u, 1u}) {
-      add(circuit, Kind::u, {q},
-          {{std::acos(1 - 2 * random.real())}, {random.real(-pi, pi)}, {random.real(-pi, pi)}});
-    }
-    if (layer < 11) add(circuit, Kind::xx, {0, 1}, {{random.real(-pi, pi)}, {0}, {0}});
-  }
-  return circuit;
-}
-
 /// What many circuits of one kind come down to.
 struct Mean {
   double xx = 0;
@@ -153,7 +129,7 @@ void report_random_pairs() {
   support::Random random(21);
   Mean kept, renamed;
   for (int i = 0; i < 1000; ++i) {
-    const Circuit circuit = random_pair(random);
+    const Circuit circuit = support::random_pair(random);
     renamed.include(circuit, optimize(circuit, {}));
     kept.include(circuit, lower(two_qubit_stretches(lower(circuit, {}), {}), {}));
   }
@@ -167,20 +143,7 @@ void report_random_pairs() {
 /// Quarter turns of pairs that a Clifford circuit needs at least, the names of its wires at the end being
 /// free.
 int fewest_quarter_turns(const Circuit& clifford) {
-  Circuit copy = clifford;
-  std::vector<LocalRotation> rotations;
-  for (const Operation& op : clifford.body()) append_rotations(copy, op, rotations);
-  std::vector<Turn> turns;
-  for (const LocalRotation& r : rotations) {
-    turns.push_back({static_cast<std::uint8_t>(r.wire[0]),
-                     static_cast<std::uint8_t>(r.wire[1]),
-                     r.letter[0],
-                     r.letter[1],
-                     false,
-                     r.angle,
-                     {}});
-  }
-  return clifford_distance(network_of(turns, clifford.wires).rows, true);
+  return clifford_distance(support::network_of_circuit(clifford)->rows, true);
 }
 
 void report_cliffords() {
@@ -253,7 +216,7 @@ void report_small() {
   for (const std::uint32_t n : {4u, 8u, 16u, 32u}) {
     report({fmt::format("QFT {}", n),
             fmt::format("{} xx, {:.4f}", n * (n - 1) / 2, n - 2 + std::pow(2.0, 1.0 - n)), "computed"},
-           fourier(n));
+           support::fourier(n));
   }
   report(
       {"two Toffolis around what uses their target", "3 + 1 + 3 xx", "Song, Klappenecker, quant-ph/0312225"},

@@ -8,6 +8,7 @@
 
 #include "circuit/cost.h"
 #include "passes/optimize.h"
+#include "support/families_textbook.h"
 #include "support/random_circuits.h"
 #include "support/simulator.h"
 
@@ -35,33 +36,6 @@ Tally optimized(const Circuit& source, Effort effort = Effort::steady,
   check_invariants(result);
   if (source.wires <= 6) CHECK(support::distance(source, result, inputs) < 1e-10);
   return tally_of(result);
-}
-
-/// Textbook QFT: h, controlled phases of pi/2^k, final swaps.
-Circuit fourier(std::uint32_t n) {
-  Circuit circuit = on(n);
-  for (std::uint32_t target = n; target-- > 0;) {
-    add(circuit, Kind::h, {target});
-    for (std::uint32_t control = target; control-- > 0;) {
-      add(circuit, Kind::p, {control, target}, {{pi / std::pow(2.0, target - control)}});
-    }
-  }
-  for (std::uint32_t q = 0; q < n / 2; ++q) add(circuit, Kind::swap, {q, n - 1 - q});
-  return circuit;
-}
-
-/// Any two-qubit unitary as the random words of a source: three interactions and locals are not assumed.
-Circuit haar_word(support::Random& random) {
-  Circuit circuit = on(2);
-  for (int layer = 0; layer < 12; ++layer) {
-    for (const std::uint32_t q : {0u, 1u}) {
-      // A Haar-random rotation: theta with density sin theta, the rest uniform.
-      add(circuit, Kind::u, {q},
-          {{std::acos(1 - 2 * random.real())}, {random.real(-pi, pi)}, {random.real(-pi, pi)}});
-    }
-    if (layer < 11) add(circuit, Kind::xx, {0, 1}, {{random.real(-pi, pi)}, {0}, {0}});
-  }
-  return circuit;
 }
 
 std::vector<std::pair<std::uint32_t, std::uint32_t>> random_edges(support::Random& random, int qubits,
@@ -169,7 +143,7 @@ TEST_CASE("random two-qubit stretches: 3 xx, mean total 1.50 units, 1.2722 with 
   double renamed = 0;
   constexpr int samples = 1000;
   for (int i = 0; i < samples; ++i) {
-    const Circuit circuit = haar_word(random);
+    const Circuit circuit = support::random_pair(random);
     const Tally tally = optimized(circuit);
     CHECK(tally.xx == 3);
     renamed += tally.xx_units;
@@ -194,7 +168,7 @@ TEST_CASE("QFT: n(n-1)/2 xx and n - 2 + 2^(1-n) units (computed)") {
   for (std::uint32_t n = 2; n <= 32; ++n) {
     for (const Effort effort : {Effort::quick, Effort::steady}) {
       if (effort == Effort::steady && n > 16 && n != 32) continue;
-      const Tally tally = optimized(fourier(n), effort);
+      const Tally tally = optimized(support::fourier(n), effort);
       CAPTURE(n);
       CHECK(tally.xx == n * (n - 1) / 2);
       CHECK(tally.xx_units == doctest::Approx(n - 2 + std::pow(2.0, 1.0 - n)).epsilon(1e-9));
@@ -271,7 +245,7 @@ TEST_CASE("a known start and a final measurement save what they can (computed)")
   context.promise.zero_start = true;
   // Any state of two qubits takes one interaction.
   support::Random random(24);
-  const Circuit word = haar_word(random);
+  const Circuit word = support::random_pair(random);
   const Circuit made = optimize(word, context);
   CHECK(tally_of(made).xx == 1);
   CHECK(support::distance_from_zero(word, made) < 1e-10);

@@ -12,6 +12,7 @@
 #include "passes/greedy_network.h"
 #include "passes/local_rotations.h"
 #include "passes/rotation_networks.h"
+#include "support/families_textbook.h"
 #include "support/random_circuits.h"
 #include "support/simulator.h"
 
@@ -143,22 +144,10 @@ TEST_CASE("random Clifford circuits come out with the fewest interactions on two
         support::random_circuit(random, {qubits, 10 + 2 * round, 1, support::Family::clifford});
     const Circuit result = synthesize_rotation_networks(source, {});
     CHECK(support::distance(source, result) < 1e-8);
-    Circuit copy = source;
-    std::vector<LocalRotation> rotations;
-    for (const Operation& op : source.body()) REQUIRE(append_rotations(copy, op, rotations));
-    std::vector<Turn> turns;
-    for (const LocalRotation& r : rotations) {
-      turns.push_back({static_cast<std::uint8_t>(r.wire[0]),
-                       static_cast<std::uint8_t>(r.wire[1]),
-                       r.letter[0],
-                       r.letter[1],
-                       false,
-                       r.angle,
-                       {}});
-    }
-    const Network network = network_of(turns, static_cast<unsigned>(qubits));
-    REQUIRE(network.exponentials.empty());
-    CHECK(static_cast<int>(tally_of(result).xx) == clifford_distance(network.rows, true));
+    const std::optional<Network> network = support::network_of_circuit(source);
+    REQUIRE(network);
+    REQUIRE(network->exponentials.empty());
+    CHECK(static_cast<int>(tally_of(result).xx) == clifford_distance(network->rows, true));
   }
 }
 
